@@ -1,0 +1,26 @@
+"""The `output` section of a recipe: where the result goes and in which form."""
+
+from __future__ import annotations
+
+from typing import Literal
+
+from pydantic import Field
+
+from gridcarb.settings import Settings
+
+
+class OutputSettings(Settings):
+    """One folder holds everything a run leaves: stores, maps and the journal."""
+
+    folder: str = Field(description="the result folder, relative to the recipe; it appears when the run is complete")
+    replace: bool = Field(False, description="true: a result of this name is replaced once the new one is complete")
+    zarr: bool = Field(True, description="keep the Zarr store")
+    zarr_format: Literal[2, 3] = Field(3, description="Zarr format of the store")
+    netcdf: bool = Field(True, description="export a NetCDF-4 file")
+    precision: Literal["float32", "float64"] = Field("float32", description="how fields are stored")
+    amounts: Literal["per mass", "per volume"] = Field(
+        "per mass", description="'per volume': amounts in mol m-3, with the density of the input"
+    )
+    attributes: dict[str, str | float | int] = Field(
+        default_factory=dict, description="global attributes of your own: institution, license, creator_name ..."
+    )

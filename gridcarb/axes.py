@@ -1,11 +1,19 @@
 """Finding the axes of a dataset by its CF attributes, never by the order of dimensions.
 
 Used by every stage, so that all of them agree on which dimension is time, which is the vertical, and what is left.
+The evidence is weighed as the CF conventions rank it: standard_name and the `axis` attribute, then units and
+`positive`, and names only where nothing else speaks (CF 1.11, chapters 4 and 5).
 """
 from __future__ import annotations
 
+import re
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Literal
+
+import xarray as xr
+
+from gridcarb.errors import InputError
 
 GridKind = Literal["rectilinear", "curvilinear", "unstructured", "column"]
 
@@ -32,3 +40,233 @@ class Axes:
     def order(self) -> tuple[str, ...]:
         """Time, vertical, horizontal: the canonical order of dimensions."""
         return tuple(dim for dim in (self.time, self.vertical, *self.horizontal) if dim)
+
+
+@dataclass(frozen=True)
+class _Marks:
+    """What gives a coordinate of one kind away; units are compared in lower case, names too."""
+
+    axis: str
+    standard_names: frozenset[str]
+    units: re.Pattern[str]
+    names: frozenset[str]
+
+
+_NEVER = re.compile(r"(?!)")
+
+_TIME = _Marks(
+    axis="T", standard_names=frozenset({"time"}), units=re.compile(r"^\w+\s+since\s"),
+    names=frozenset({"time", "t", "time_counter", "time_centered", "times", "date", "month", "months", "year", "record"}),
+)
+_VERTICAL = _Marks(
+    axis="Z",
+    standard_names=frozenset({
+        "depth", "height", "altitude", "sea_water_pressure", "sea_water_pressure_due_to_sea_water",
+        "depth_below_geoid", "height_above_geopotential_datum", "height_above_reference_ellipsoid",
+        "height_above_mean_sea_level", "ocean_sigma_coordinate",
+        "ocean_s_coordinate", "ocean_s_coordinate_g1", "ocean_s_coordinate_g2", "ocean_sigma_z_coordinate",
+        "ocean_double_sigma_coordinate",
+    }),
+    units=re.compile(r"^(deci|hecto|kilo|m|d|h|k)?(bar|bars|pascal|pa)$"),
+    names=frozenset({
+        "depth", "depths", "deptht", "lev", "level", "levels", "olevel", "z", "z_t", "zt", "zlev", "z_l", "st_ocean",
+        "gdept", "gdept_1d", "nav_lev", "s_rho", "sigma", "rc", "pressure", "pres", "height", "nz", "k", "layer",
+    }),
+)
+_LATITUDE = _Marks(
+    axis="", standard_names=frozenset({"latitude"}), units=re.compile(r"^degrees?_?n(orth)?$"),
+    names=frozenset({
+        "lat", "latitude", "nav_lat", "lats", "latitudes", "yc", "geolat", "geolat_t", "tlat", "lat_rho", "yt_ocean",
+    }),
+)
+_LONGITUDE = _Marks(
+    axis="", standard_names=frozenset({"longitude"}), units=re.compile(r"^degrees?_?e(ast)?$"),
+    names=frozenset({
+        "lon", "longitude", "nav_lon", "lons", "longitudes", "xc", "geolon", "geolon_t", "tlong", "lon_rho", "xt_ocean",
+    }),
+)
+_Y = _Marks(
+    axis="Y", standard_names=frozenset({"projection_y_coordinate", "grid_latitude"}), units=_NEVER,
+    names=frozenset({"y", "j", "ny", "nj", "jm", "yh", "eta_rho", "nlat", "rlat"}) | _LATITUDE.names,
+)
+_X = _Marks(
+    axis="X", standard_names=frozenset({"projection_x_coordinate", "grid_longitude"}), units=_NEVER,
+    names=frozenset({"x", "i", "nx", "ni", "im", "xh", "xi_rho", "nlon", "rlon"}) | _LONGITUDE.names,
+)
+_CELL_DIMS = frozenset({
+    "cell", "cells", "ncell", "ncells", "node", "nodes", "nnode", "nnodes", "nod2", "nod2d", "face", "faces", "nface",
+    "nfaces", "nmesh2d_face", "nmesh2d_node", "station", "stations", "profile", "profiles", "cast", "casts", "column",
+    "site",
+})
+
+_NAMED_ALONE = 1
+"""The rank of a candidate for which only its name speaks."""
+
+
+def find_axes(ds: xr.Dataset) -> Axes:
+    """The axes of `ds`, which may be decoded or raw; only its header is read.
+
+    The dimensions that must find a place are those of the data variables (coordinates, bounds and what other
+    variables refer to are left aside). Dimensions of size 1 that are no axis are passed over.
+
+    Raises
+    ------
+    InputError : a dimension of more than one step is neither time, nor vertical, nor horizontal.
+    """
+    survey = _Survey(ds)
+    dims = survey.dims
+    time_coordinate = survey.best(_TIME, dims, most=1)
+    time = _dim_of(ds, time_coordinate) or _dim_named(dims, _TIME)
+    rest = [dim for dim in dims if dim != time]
+    latitude = survey.best(_LATITUDE, rest, most=2)
+    longitude = survey.best(_LONGITUDE, rest, most=2)
+    spherical = _join(ds, latitude, longitude)
+    level_dims = [dim for dim in rest if dim not in spherical]
+    vertical_coordinate = survey.best(_VERTICAL, level_dims, most=1) or survey.best_field(_VERTICAL, dims, level_dims)
+    vertical = next((dim for dim in _dims(ds, vertical_coordinate) if dim in level_dims), None)
+    vertical = vertical or _dim_named(level_dims, _VERTICAL)
+    left = [dim for dim in level_dims if dim != vertical]
+    horizontal = _horizontal(survey, spherical, left)
+    _refuse_strangers(survey, [dim for dim in left if dim not in horizontal])
+    return Axes(time, vertical, horizontal, time_coordinate, vertical_coordinate, latitude, longitude)
+
+
+def grid_kind(ds: xr.Dataset, axes: Axes) -> GridKind:
+    """Which kind of horizontal grid `axes` describes."""
+    if not axes.horizontal:
+        return "column"
+    if len(axes.horizontal) == 1:
+        return "unstructured"
+    plane = axes.latitude is not None and ds[axes.latitude].ndim == 2
+    return "curvilinear" if plane else "rectilinear"
+
+
+class _Survey:
+    """What the header of a dataset says, gathered once."""
+
+    def __init__(self, ds: xr.Dataset) -> None:
+        self.ds = ds
+        self.names = [str(name) for name in ds.variables]
+        self.bounds = set(_referred(ds, ("bounds", "climatology")))
+        self.pointed = set(_referred(ds, ("coordinates",)))
+        aside = self.bounds | self.pointed | {str(name) for name in ds.coords}
+        aside |= set(_referred(ds, ("cell_measures", "grid_mapping", "formula_terms", "ancillary_variables")))
+        aside |= {name for name in self.names if self._is_coordinate(name)}
+        self.data = [name for name in self.names if name not in aside and ds[name].ndim]
+        basis = self.data or [name for name in self.names if name not in self.bounds]
+        self.dims = list(dict.fromkeys(str(dim) for name in basis for dim in ds[name].dims))
+
+    def _is_coordinate(self, name: str) -> bool:
+        """A coordinate that no variable points at, known by more than its name."""
+        variable = self.ds[name]
+        marks = (_TIME, _VERTICAL) if variable.ndim == 1 else ()
+        planes = (_LATITUDE, _LONGITUDE) if variable.ndim in (1, 2) else ()
+        return any(self.rank(name, kind) > _NAMED_ALONE for kind in (*marks, *planes))
+
+    def rank(self, name: str, marks: _Marks) -> int:
+        """How strongly the variable looks like a coordinate of this kind; 0: not at all."""
+        variable = self.ds[name]
+        attrs = {**variable.encoding, **variable.attrs}
+        standard_name = str(attrs.get("standard_name", "")).strip()
+        if standard_name in marks.standard_names:
+            return 5
+        if marks.axis and str(attrs.get("axis", "")).strip().upper() == marks.axis:
+            return 4
+        stranger = bool(standard_name) and standard_name not in marks.standard_names
+        if not stranger and marks.units.match(str(attrs.get("units", "")).strip().lower()):
+            return 3
+        if marks is _TIME and not stranger and _holds_dates(variable):
+            return 3
+        if marks is _VERTICAL and "positive" in attrs and (name in variable.dims or name in self.ds.coords):
+            return 2
+        known = name in variable.dims or name in self.ds.coords or name in self.pointed or marks in (_LATITUDE, _LONGITUDE)
+        return _NAMED_ALONE if known and not stranger and name.lower() in marks.names else 0
+
+    def best(self, marks: _Marks, dims: list[str], most: int) -> str | None:
+        """The likeliest coordinate with at most `most` dimensions, all among `dims`; scalars come last.
+
+        Time is told by the coordinate of its own dimension; elsewhere such a coordinate may be a bare counter, and
+        one that the data variables point at goes first.
+        """
+        found = []
+        for place, name in enumerate(self.names):
+            variable = self.ds[name]
+            rank = 0 if name in self.bounds else self.rank(name, marks)
+            if rank and variable.ndim <= most and set(variable.dims) <= set(dims):
+                own, pointed = name in variable.dims, name in self.pointed
+                first, last = (own, pointed) if marks is _TIME else (pointed, own)
+                found.append((variable.ndim > 0, first, rank, variable.ndim, last, -place, name))
+        return max(found)[-1] if found else None
+
+    def best_field(self, marks: _Marks, dims: list[str], level_dims: list[str]) -> str | None:
+        """A vertical coordinate with several dimensions (depths that differ from column to column)."""
+        for name in self.names:
+            own = set(self.ds[name].dims)
+            pointed = name in self.pointed or name in self.ds.coords
+            if pointed and self.rank(name, marks) and own <= set(dims) and len(own & set(level_dims)) == 1:
+                return name
+        return None
+
+
+def _referred(ds: xr.Dataset, keys: Iterable[str]) -> list[str]:
+    """Names of variables that attributes of others point at."""
+    words: list[str] = []
+    for variable in ds.variables.values():
+        for key in keys:
+            text = variable.attrs.get(key, variable.encoding.get(key))
+            words += re.split(r"\s+", text.strip()) if isinstance(text, str) else []
+    return [word for word in words if word in ds.variables]
+
+
+def _holds_dates(variable: xr.DataArray) -> bool:
+    index = variable.indexes.get(variable.name) if variable.name in variable.dims else None
+    return variable.dtype.kind == "M" or isinstance(index, xr.CFTimeIndex)
+
+
+def _dims(ds: xr.Dataset, name: str | None) -> tuple[str, ...]:
+    return tuple(str(dim) for dim in ds[name].dims) if name else ()
+
+
+def _dim_of(ds: xr.Dataset, name: str | None) -> str | None:
+    dims = _dims(ds, name)
+    return dims[0] if dims else None
+
+
+def _dim_named(dims: list[str], marks: _Marks) -> str | None:
+    """A dimension without a coordinate variable that bears a name of this kind."""
+    return next((dim for dim in dims if dim.lower() in marks.names), None)
+
+
+def _join(ds: xr.Dataset, latitude: str | None, longitude: str | None) -> tuple[str, ...]:
+    return tuple(dict.fromkeys((*_dims(ds, latitude), *_dims(ds, longitude))))
+
+
+def _horizontal(survey: _Survey, spherical: tuple[str, ...], left: list[str]) -> tuple[str, ...]:
+    """(y, x), (cell,) or (): from latitude and longitude, else from what is known of the dimensions left over."""
+    if spherical:
+        return spherical
+    sides = {dim: _side(survey, dim) for dim in left}
+    return tuple(sorted((dim for dim in left if sides[dim] is not None), key=lambda dim: sides[dim] or 0))
+
+
+def _side(survey: _Survey, dim: str) -> int | None:
+    """0 for y or cells, 1 for x, None for a dimension that is not known to be horizontal."""
+    for side, marks in enumerate((_Y, _X)):
+        marked = dim in survey.names and survey.rank(dim, marks) > 0
+        if marked or dim.lower() in marks.names:
+            return side
+    return 0 if dim.lower() in _CELL_DIMS else None
+
+
+def _refuse_strangers(survey: _Survey, left: list[str]) -> None:
+    strangers = [dim for dim in left if survey.ds.sizes[dim] > 1]
+    if not strangers:
+        return
+    dim = strangers[0]
+    holders = [name for name in survey.data if dim in survey.ds[name].dims]
+    raise InputError(
+        f"the dimension '{dim}' (size {survey.ds.sizes[dim]}) is neither time, nor vertical, nor horizontal",
+        where="variable " + ", ".join(holders[:6]) if holders else "",
+        mend=f"give files that hold one step of '{dim}' each, or a coordinate variable '{dim}' with an `axis` attribute "
+        "(T, Z, Y or X) if it is one of these",
+    )

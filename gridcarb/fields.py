@@ -34,6 +34,7 @@ class Field:
     key : the word used in recipes, datasets and stores.
     long_name, units : as written to files (units that UDUNITS can read).
     standard_name : only where the official CF table has one for these units; None otherwise.
+    volume_standard_name : the CF standard name of the amount per volume (mol m-3), where the table has one.
     scale : the pH scale or measurement scale, where there is one.
     extent : one value a cell, a column, or a piece of surface.
     part : input, derived or status.
@@ -51,6 +52,7 @@ class Field:
     sane_range: tuple[float, float]
     digits: int
     standard_name: str | None = None
+    volume_standard_name: str | None = None
     scale: str | None = None
     extent: Extent = "cell"
     part: Part = "derived"
@@ -100,22 +102,26 @@ declare(Field(
 ))
 declare(Field(
     key="dic", long_name="dissolved inorganic carbon", units="umol kg-1",
-    standard_name="moles_of_dissolved_inorganic_carbon_per_unit_mass_in_sea_water", part="input",
+    standard_name="moles_of_dissolved_inorganic_carbon_per_unit_mass_in_sea_water",
+    volume_standard_name="mole_concentration_of_dissolved_inorganic_carbon_in_sea_water", part="input",
     sane_range=(200.0, 5000.0), digits=1, ink=Ink("viridis"),
 ))
 declare(Field(
     key="alkalinity", long_name="total alkalinity", units="umol kg-1",
-    standard_name="sea_water_alkalinity_per_unit_mass_expressed_as_mole_equivalent", part="input",
+    standard_name="sea_water_alkalinity_per_unit_mass_expressed_as_mole_equivalent",
+    volume_standard_name="sea_water_alkalinity_expressed_as_mole_equivalent", part="input",
     sane_range=(0.0, 5000.0), digits=1, ink=Ink("viridis"), citations=("dickson1981",),
 ))
 declare(Field(
     key="phosphate", long_name="total dissolved inorganic phosphate", units="umol kg-1",
-    standard_name="moles_of_phosphate_per_unit_mass_in_sea_water", part="input", sane_range=(0.0, 20.0), digits=2,
+    standard_name="moles_of_phosphate_per_unit_mass_in_sea_water",
+    volume_standard_name="mole_concentration_of_phosphate_in_sea_water", part="input", sane_range=(0.0, 20.0), digits=2,
     ink=Ink("viridis"),
 ))
 declare(Field(
     key="silicate", long_name="total dissolved inorganic silicate", units="umol kg-1",
-    standard_name="moles_of_silicate_per_unit_mass_in_sea_water", part="input", sane_range=(0.0, 400.0), digits=1,
+    standard_name="moles_of_silicate_per_unit_mass_in_sea_water",
+    volume_standard_name="mole_concentration_of_silicate_in_sea_water", part="input", sane_range=(0.0, 400.0), digits=1,
     ink=Ink("viridis"),
 ))
 

@@ -1,0 +1,69 @@
+"""How a field is stored: dimensions, data type, chunks, codecs and checksums, decided in one place."""
+
+from __future__ import annotations
+
+import zlib
+from collections.abc import Mapping
+from typing import Literal
+
+import numcodecs
+import numpy as np
+from numpy.typing import NDArray
+from zarr.codecs import BloscCodec
+
+from gridcarb.axes import Axes
+from gridcarb.fields import Field
+
+Precision = Literal["float32", "float64"]
+
+
+def dims_of(field: Field, axes: Axes) -> tuple[str, ...]:
+    """The dimensions of `field`, in canonical order: those of the grid, without the vertical unless it has one value a cell."""
+    return tuple(dim for dim in axes.order if field.extent == "cell" or dim != axes.vertical)
+
+
+def dtype_of(field: Field, precision: Precision) -> np.dtype[np.generic]:
+    """Floats of the wanted precision; a status is a signed byte."""
+    return np.dtype("int8" if field.part == "status" else precision)
+
+
+def chunks_of(shape: Mapping[str, int], chunks: Mapping[str, int]) -> tuple[int, ...]:
+    """The chunk lengths along each dimension of `shape`: as in `chunks`, the whole length where nothing is said."""
+    return tuple(max(1, min(chunks.get(dim, size), size)) for dim, size in shape.items())
+
+
+def fill_of(dtype: np.dtype[np.generic], zarr_format: Literal[2, 3], *, missing: bool) -> object:
+    """What an array holds where nothing was written; with `missing`, readers take it for missing data: then it is NaN.
+
+    A status or a coordinate has no missing data. Readers of format 2 take any fill for missing, so there it is None;
+    format 3 demands one, and the lowest integer is none of the flags, so an unwritten status is not read as solved.
+    """
+    if missing:
+        return np.nan
+    if zarr_format == 2:
+        return None
+    if dtype == object:
+        return ""
+    return np.nan if dtype.kind == "f" else int(np.iinfo(dtype).min)
+
+
+def compressor(zarr_format: Literal[2, 3]) -> BloscCodec | numcodecs.Blosc:
+    """Zstandard at level 3 behind a byte shuffle, in the Blosc container.
+
+    Blosc is the one codec with a shuffle that the core of both Zarr formats specifies, so every implementation reads it;
+    plain Zstandard has no shuffle there, and smooth floats then take a third more room.
+    """
+    if zarr_format == 2:
+        return numcodecs.Blosc(cname="zstd", clevel=3, shuffle=numcodecs.Blosc.SHUFFLE)
+    return BloscCodec(cname="zstd", clevel=3, shuffle="shuffle")
+
+
+def stored(values: NDArray[np.generic], dtype: np.dtype[np.generic]) -> NDArray[np.generic]:
+    """`values` as they are kept: float64 is rounded to float32 here and nowhere else."""
+    with np.errstate(over="ignore"):  # beyond the float32 range: infinity is what that format has
+        return np.asarray(values, dtype=dtype, order="C")
+
+
+def checksum(values: NDArray[np.generic]) -> str:
+    """A CRC-32 of the bytes of C-ordered `values` in little-endian order, to find damage, not malice."""
+    return f"crc32:{zlib.crc32(values.astype(values.dtype.newbyteorder('<'), copy=False).data):08x}"

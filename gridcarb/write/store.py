@@ -1,0 +1,152 @@
+"""The Zarr store of a result: all metadata made once, then filled block by block, in any order and from any thread.
+
+Opening it asks nothing special of xarray: metadata are consolidated as a courtesy to readers, and never relied on here.
+"""
+
+from __future__ import annotations
+
+import warnings
+from collections.abc import Mapping, Sequence
+from pathlib import Path
+from typing import Any, Literal
+
+import numpy as np
+import xarray as xr
+import zarr
+from zarr.errors import ZarrUserWarning
+
+from gridcarb.axes import Axes
+from gridcarb.errors import BlockError, OutputError
+from gridcarb.fields import Field
+from gridcarb.write.attributes import field_attributes, inherited_attributes
+from gridcarb.write.coordinates import clean_coordinates
+from gridcarb.write.disk import room_for
+from gridcarb.write.encoding import Precision, checksum, chunks_of, compressor, dims_of, dtype_of, fill_of, stored
+
+_DIMS_V2 = "_ARRAY_DIMENSIONS"
+"""Where format 2 keeps the names of dimensions; format 3 has a place of its own for them."""
+
+
+def create(
+    path: Path, *, template: xr.Dataset, fields: Sequence[Field], axes: Axes, chunks: Mapping[str, int],
+    attributes: Mapping[str, object], zarr_format: Literal[2, 3] = 3, precision: Precision = "float32",
+) -> None:
+    """Make the whole store at `path`, which must not exist: coordinates with their numbers, fields still empty.
+
+    Parameters
+    ----------
+    template : the grid: loaded raw coords (bounds among them) and sizes. Attributes of its data variables that hold for
+        every field (cell_methods, cell_measures, grid_mapping) are carried over.
+    fields : what will be written, each under its key.
+    axes : the axes of `template`.
+    chunks : chunk length by dimension; a dimension not named is one chunk.
+    attributes : the global attributes.
+    """
+    coordinates = clean_coordinates(template, axes)
+    for field in fields:
+        if field.key in coordinates:
+            raise OutputError(
+                f"the grid has a coordinate called '{field.key}', the name of a field to be written", where=str(path),
+                mend=f"rename the coordinate in the input files, or leave '{field.key}' out of `fields` in the recipe",
+            )
+    inherited = inherited_attributes(template)
+    status = next((field.key for field in fields if field.part == "status"), None)
+    with room_for(path, sum(variable.nbytes for variable in coordinates.values())):
+        group = zarr.open_group(path, mode="w-", zarr_format=zarr_format, attributes=_plain(attributes))
+        for name, variable in coordinates.items():
+            _put_coordinate(group, name, variable)
+        for field in fields:
+            dims = dims_of(field, axes)
+            shape = {dim: template.sizes[dim] for dim in dims}
+            attrs = field_attributes(field, dims, coordinates, inherited, status)
+            dtype = dtype_of(field, precision)
+            _make(group, field.key, shape, dtype, chunks_of(shape, chunks), attrs, missing=dtype.kind == "f")
+        _consolidate(path)
+
+
+def write_block(path: Path, region: Mapping[str, slice], block: xr.Dataset) -> dict[str, str]:
+    """Write the data variables of `block` into their place and give back the checksum of each, as stored.
+
+    region : dimension -> slice of the whole grid; a dimension not named is taken whole. The region must consist of
+        whole chunks, since two writers in one chunk lose data silently: anything else is a `BlockError`, before a byte
+        is written. Writing the same block twice leaves the same bytes.
+    """
+    group = zarr.open_group(path, mode="r+", use_consolidated=False)
+    work = []
+    for key, variable in block.data_vars.items():
+        array = _array(group, str(key), path)
+        dims = _dims(array)
+        if set(dims) != set(variable.dims):
+            raise BlockError(f"'{key}' has dimensions {tuple(variable.dims)}, the store has {dims}", where=str(path))
+        selection = _aligned(array, dims, region, f"{path}: {key}")
+        values = stored(variable.transpose(*dims).values, array.dtype)
+        expected = tuple(part.stop - part.start for part in selection)
+        if values.shape != expected:
+            raise BlockError(f"a block of shape {values.shape} does not fit a region of {expected}", where=f"{path}: {key}")
+        work.append((array, selection, values))
+    with room_for(path, sum(values.nbytes for *_, values in work)):
+        for array, selection, values in work:
+            array[selection] = values
+    return {array.basename: checksum(values) for array, _, values in work}
+
+
+def _array(group: zarr.Group, key: str, path: Path) -> zarr.Array[Any]:
+    found = group.get(key)
+    if not isinstance(found, zarr.Array):
+        raise BlockError(f"the store has no field '{key}'", where=str(path))
+    return found
+
+
+def _aligned(
+    array: zarr.Array[Any], dims: Sequence[str], region: Mapping[str, slice], where: str
+) -> tuple[slice, ...]:
+    selection = []
+    for dim, size, chunk in zip(dims, array.shape, array.chunks, strict=True):
+        start, stop, step = region.get(dim, slice(None)).indices(size)
+        if step != 1 or start % chunk or (stop % chunk and stop != size) or start >= stop:
+            raise BlockError(
+                f"region {start}:{stop} along '{dim}' is not made of whole chunks of {chunk} (length {size})", where=where
+            )
+        selection.append(slice(start, stop))
+    return tuple(selection)
+
+
+def _put_coordinate(group: zarr.Group, name: str, variable: xr.Variable) -> None:
+    shape = {str(dim): size for dim, size in variable.sizes.items()}
+    # One chunk: coordinates are read whole.
+    array = _make(group, name, shape, variable.dtype, chunks_of(shape, {}), variable.attrs, missing=False)
+    array[...] = variable.values
+
+
+def _make(
+    group: zarr.Group, name: str, shape: Mapping[str, int], dtype: np.dtype[np.generic], chunks: tuple[int, ...],
+    attributes: Mapping[str, object], *, missing: bool,
+) -> zarr.Array[Any]:
+    dims = list(shape)
+    third = group.metadata.zarr_format == 3
+    return group.create_array(
+        name, shape=tuple(shape.values()), dtype=str if dtype == object else dtype, chunks=chunks,
+        fill_value=fill_of(dtype, group.metadata.zarr_format, missing=missing),
+        compressors=compressor(group.metadata.zarr_format), dimension_names=dims if third else None,
+        attributes=_plain(attributes if third else {**attributes, _DIMS_V2: dims}),
+    )
+
+
+def _dims(array: zarr.Array[Any]) -> tuple[str, ...]:
+    if array.metadata.zarr_format == 3:
+        return tuple(str(dim) for dim in array.metadata.dimension_names or ())
+    return tuple(array.attrs[_DIMS_V2])
+
+
+def _consolidate(path: Path) -> None:
+    with warnings.catch_warnings():
+        # Format 3 does not specify consolidated metadata yet; xarray looks for them and complains where there are none.
+        warnings.simplefilter("ignore", ZarrUserWarning)
+        zarr.consolidate_metadata(str(path))
+
+
+def _plain(attributes: Mapping[str, object]) -> dict[str, Any]:
+    """Attributes as JSON has them: NumPy numbers and arrays become plain ones."""
+    return {
+        key: value.tolist() if isinstance(value, (np.generic, np.ndarray)) else value for key, value in attributes.items()
+    }

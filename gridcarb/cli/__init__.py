@@ -1,0 +1,1 @@
+"""The command line: words on a terminal, nothing else."""

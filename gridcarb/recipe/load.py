@@ -79,7 +79,7 @@ def _read(path: Path) -> str:
         what, mend = "this is not a text file (UTF-8)", "name the recipe, not a data file: gridcarb run RECIPE --input DATA"
     except OSError as error:
         what, mend = f"the recipe cannot be read ({error.strerror})", "look at its permissions"
-    raise _error(str(path), [Fault(0, "", what, mend)])
+    raise RecipeError("no recipe was read", where=str(path), faults=(Fault(0, "", what, mend),))
 
 
 def _neighbours(path: Path) -> str:

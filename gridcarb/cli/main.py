@@ -1,0 +1,32 @@
+"""The command `gridcarb`. Light to import: what is heavy is imported by the command that needs it."""
+
+from __future__ import annotations
+
+import click
+
+from gridcarb.cli.listings import fields, keys
+from gridcarb.cli.terminal import Door, debug_option, exit_codes
+from gridcarb.cli.work import plan, run
+
+
+_SETTINGS = {"help_option_names": ["-h", "--help"], "max_content_width": 100}
+
+
+@click.group(cls=Door, epilog=exit_codes(), context_settings=_SETTINGS)
+@click.version_option(package_name="gridcarb", prog_name="gridcarb", message="%(prog)s %(version)s")
+@debug_option
+def main() -> None:
+    """Marine carbonate chemistry on gridded ocean data.
+
+    A recipe names the files and the fields wanted; gridcarb computes them cell by cell and writes Zarr, NetCDF and maps.
+
+    \b
+    gridcarb plan recipes/first_look.yaml     what would be done, from headers only
+    gridcarb run recipes/first_look.yaml      do it
+    gridcarb fields                           what can be computed
+    gridcarb keys                             what a recipe may say
+    """
+
+
+for command in (run, plan, fields, keys):
+    main.add_command(command)

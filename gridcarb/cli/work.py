@@ -1,0 +1,84 @@
+"""`gridcarb run` and `gridcarb plan`."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, TypeVar
+
+import click
+
+from gridcarb.cli import faces, progress, show
+from gridcarb.cli.terminal import debug_option, json_option, quiet_option, terminal
+
+if TYPE_CHECKING:
+    from gridcarb.recipe import Recipe
+
+Command = TypeVar("Command", bound=Callable[..., Any])
+
+_SPOKEN = (
+    click.argument("recipe", type=click.Path(path_type=Path)),
+    click.option("--input", "inputs", multiple=True, metavar="PATH", help=(
+        "A file, a glob in quotes, or a Zarr store to read instead of the recipe's `inputs: files`; "
+        "may be given several times. Relative to the working directory.")),
+    click.option("--result", "folder", metavar="FOLDER", help=(
+        "The result folder, instead of the recipe's `output: folder`. Relative to the working directory.")),
+    click.option("--replace", is_flag=True, help="Replace a result of that name once the new one is complete."),
+    click.option("--workers", type=int, metavar="N", help="Blocks computed at the same time."),
+    click.option("--memory", metavar="TEXT", help="Memory all workers share, such as '2 GB'."),
+    quiet_option,
+    json_option,
+    debug_option,
+)
+
+
+def _spoken(command: Command) -> Command:
+    """The argument and the options that run and plan share, so that a plan can be made of just what will be run."""
+    for decorate in reversed(_SPOKEN):
+        command = decorate(command)
+    return command
+
+
+@click.command()
+@_spoken
+def plan(**words: Any) -> None:
+    """Show what RECIPE would do, without doing it.
+
+    Reads headers only: which files and variables are taken and how they are understood, blocks, bytes in and out, memory
+    for each worker. The checks are those of a run, so a plan without an error is a run that can begin.
+    With --quiet only the exit code tells.
+    """
+    _tell(faces.prepare(_recipe(**words)).report())
+
+
+@click.command()
+@_spoken
+def run(**words: Any) -> None:
+    """Do what RECIPE says.
+
+    \b
+    gridcarb run recipes/first_look.yaml
+    gridcarb run global_state.yaml --input 'model/*.nc' --result results/model
+
+    The result folder appears when the run is complete, never before.
+    """
+    prepared = faces.prepare(_recipe(**words))
+    watcher = progress.watcher(quiet=terminal().quiet)
+    try:
+        outcome = faces.conduct(prepared, watcher)
+    finally:
+        watcher.stop()
+    _tell(outcome.summary())
+
+
+def _recipe(recipe: Path, **words: Any) -> Recipe:
+    from gridcarb.recipe import load
+
+    return load(recipe, **words)
+
+
+def _tell(shown: faces.Report) -> None:
+    if terminal().as_json:
+        show.document(shown.as_dict())
+    elif not terminal().quiet:
+        show.report(shown)

@@ -1,0 +1,109 @@
+"""From values to colours: palettes, limits, norms and the colour bar."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import matplotlib
+import numpy as np
+import numpy.typing as npt
+from matplotlib.axes import Axes as Panel
+from matplotlib.cm import ScalarMappable
+from matplotlib.colorbar import Colorbar
+from matplotlib.colors import BoundaryNorm, Colormap, ListedColormap, Normalize, TwoSlopeNorm
+from matplotlib.ticker import MaxNLocator
+
+from gridcarb.fields import Ink
+from gridcarb.figures.drawing import theme
+
+Floats = npt.NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class Scale:
+    """How values become colours; `low` and `high` say whether data pass the ends."""
+
+    palette: Colormap
+    norm: Normalize
+    ticks: tuple[float, ...]
+    low: bool = False
+    high: bool = False
+
+    def colours(self, values: Floats) -> Floats:
+        """(..., 4) RGBA; values that are not finite are transparent."""
+        colours = np.asarray(self.palette(self.norm(np.ma.masked_invalid(values))), dtype=np.float64)
+        colours[~np.isfinite(values)] = 0.0
+        return colours
+
+    def bar(self, panel: Panel, label: str) -> Colorbar:
+        """A horizontal colour bar with arrows at the ends that data pass."""
+        extend = {(False, False): "neither", (True, False): "min", (False, True): "max", (True, True): "both"}
+        bar = Colorbar(
+            panel, ScalarMappable(self.norm, self.palette), orientation="horizontal", extend=extend[self.low, self.high],
+            extendfrac=0.035, ticks=list(self.ticks),
+        )
+        bar.set_label(label, size=theme.TEXT, labelpad=5, parse_math=False)
+        bar.outline.set(linewidth=0.6, edgecolor=theme.FRAME)
+        panel.tick_params(length=3, width=0.6, color=theme.FRAME)
+        panel.minorticks_off()
+        return bar
+
+
+def scale_of(values: Floats, ink: Ink, limits: tuple[float, float] | None) -> Scale:
+    """The scale for the finite ones of `values`: `limits` as given, else round numbers about the middle 96 %.
+
+    A centred palette keeps its middle at `ink.centre`, whatever the limits.
+    """
+    known = values[np.isfinite(values)]
+    low, high = limits or _robust(known)
+    palette, norm = matplotlib.colormaps[ink.palette], Normalize(low, high)
+    ticks = _ticks(low, high, 8)
+    if ink.centre is not None and low < ink.centre < high:
+        norm = TwoSlopeNorm(ink.centre, low, high)
+        ticks = tuple(sorted({*_ticks(low, ink.centre, 4), ink.centre, *_ticks(ink.centre, high, 4)}))
+    elif ink.centre is not None:
+        palette, norm, ticks = _one_side(palette, ink.centre, low, high, stated=limits is not None)
+    return Scale(palette, norm, ticks, bool((known < norm.vmin).any()), bool((known > norm.vmax).any()))
+
+
+def _one_side(
+    palette: Colormap, centre: float, low: float, high: float, stated: bool
+) -> tuple[Colormap, Normalize, tuple[float, ...]]:
+    """The half of a centred palette that values on one side of the centre use.
+
+    Unless limits were stated the scale starts at the centre, as long as that leaves the values a third of it.
+    """
+    above = low >= centre
+    if not stated and max(abs(low - centre), abs(high - centre)) <= 3 * (high - low):
+        low, high = (centre, high) if above else (low, centre)
+    half = np.linspace(0.5, 1.0, 256) if above else np.linspace(0.0, 0.5, 256)
+    return ListedColormap(palette(half)).with_extremes(under=palette(half[0]), over=palette(half[-1])), Normalize(
+        low, high
+    ), _ticks(low, high, 8)
+
+
+def kinds(flags: tuple[tuple[int, str], ...]) -> tuple[Scale, dict[int, str]]:
+    """A scale for a status field, and the colour of each flag."""
+    colours = {value: theme.CATEGORIES[place % len(theme.CATEGORIES)] for place, (value, _) in enumerate(flags)}
+    ordered = sorted(colours)
+    edges = [value - 0.5 for value in ordered] + [ordered[-1] + 0.5]
+    palette = ListedColormap([colours[value] for value in ordered])
+    return Scale(palette, BoundaryNorm(edges, palette.N), ()), colours
+
+
+def _robust(known: Floats) -> tuple[float, float]:
+    """The 2nd and 98th percentile moved out to round numbers; never equal."""
+    if known.size == 0:
+        return 0.0, 1.0
+    low, high = (float(end) for end in np.percentile(known, [2, 98]))
+    if high - low <= 1e-9 * max(abs(low), abs(high), 1e-300):
+        half = max(abs(low) * 0.01, 1e-12)
+        low, high = low - half, high + half
+    steps = MaxNLocator(nbins=10, steps=[1, 2, 2.5, 5, 10]).tick_values(low, high)
+    return float(steps[0]), float(steps[-1])
+
+
+def _ticks(low: float, high: float, most: int) -> tuple[float, ...]:
+    ticks = MaxNLocator(nbins=most, steps=[1, 2, 2.5, 5, 10]).tick_values(low, high)
+    slack = 1e-9 * (high - low)
+    return tuple(float(tick) for tick in ticks if low - slack <= tick <= high + slack)

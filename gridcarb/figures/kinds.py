@@ -1,0 +1,30 @@
+"""The shelf of the kinds of figure. A new kind is one new file in this folder that puts itself here."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import xarray as xr
+
+from gridcarb.figures.settings import FigureSettings
+from gridcarb.shelf import Shelf
+
+
+@dataclass(frozen=True)
+class FigureKind:
+    """One kind of figure.
+
+    settings : the class of its section in a recipe.
+    check : `check(header, settings)` raises InputError for what cannot be drawn; reads no field.
+    draw : `draw(result, settings, folder)` writes one PNG and gives its path.
+    """
+
+    settings: type[FigureSettings]
+    check: Callable[[xr.Dataset, Any], None]
+    draw: Callable[[xr.Dataset, Any, Path], Path]
+
+
+FIGURES: Shelf[FigureKind] = Shelf("figure")

@@ -58,12 +58,15 @@ def _words_after_colons(value: object) -> list[str]:
     return re.findall(r":\s*(\S+)", str(value))
 
 
-_POINTERS = {"bounds": _one, "climatology": _one, "formula_terms": _words_after_colons, "cell_measures": _words_after_colons}
+_POINTERS = {
+    "bounds": _one, "climatology": _one, "formula_terms": _words_after_colons, "cell_measures": _words_after_colons,
+}
+"""Attributes that name other variables, and how to read the names."""
 
 
 def _clean(variable: xr.Variable) -> xr.Variable:
     values = np.asarray(variable.values)
-    dims = variable.dims
+    dims = tuple(str(dim) for dim in variable.dims)
     fills = [variable.attrs[key] for key in ("_FillValue", "missing_value") if key in variable.attrs]
     if values.dtype.kind in "mM":
         raise TypeError("coordinates are stored as the raw numbers of the source, not as decoded times")
@@ -92,7 +95,7 @@ def _stated(found: Mapping[str, xr.Variable], axes: Axes) -> dict[str, dict[str,
              (axes.latitude, "Y", "latitude"), (axes.longitude, "X", "longitude"))
     stated: dict[str, dict[str, str]] = {}
     for name, axis, standard_name in roles:
-        if name in found:
+        if name and name in found:
             entry = stated.setdefault(name, {})
             if standard_name:
                 entry["standard_name"] = standard_name

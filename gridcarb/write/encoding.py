@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import zlib
 from collections.abc import Mapping
-from typing import Literal
+from typing import Any, Literal
 
 import numcodecs
 import numpy as np
@@ -18,7 +18,7 @@ Precision = Literal["float32", "float64"]
 
 
 def dims_of(field: Field, axes: Axes) -> tuple[str, ...]:
-    """The dimensions of `field`, in canonical order: those of the grid, without the vertical unless it has one value a cell."""
+    """The dimensions of `field`: those of the grid, without the vertical unless it has one value a cell."""
     return tuple(dim for dim in axes.order if field.extent == "cell" or dim != axes.vertical)
 
 
@@ -32,7 +32,7 @@ def chunks_of(shape: Mapping[str, int], chunks: Mapping[str, int]) -> tuple[int,
     return tuple(max(1, min(chunks.get(dim, size), size)) for dim, size in shape.items())
 
 
-def fill_of(dtype: np.dtype[np.generic], zarr_format: Literal[2, 3], *, missing: bool) -> object:
+def fill_of(dtype: np.dtype[Any], zarr_format: Literal[2, 3], *, missing: bool) -> object:
     """What an array holds where nothing was written; with `missing`, readers take it for missing data: then it is NaN.
 
     A status or a coordinate has no missing data. Readers of format 2 take any fill for missing, so there it is None;
@@ -42,7 +42,7 @@ def fill_of(dtype: np.dtype[np.generic], zarr_format: Literal[2, 3], *, missing:
         return np.nan
     if zarr_format == 2:
         return None
-    if dtype == object:
+    if dtype.kind == "O":
         return ""
     return np.nan if dtype.kind == "f" else int(np.iinfo(dtype).min)
 

@@ -35,12 +35,13 @@ class Holder:
         if self.host != socket.gethostname():
             return False
         try:
-            # The system's boot time, and with it the birth of a process, may shift by a fraction of a second.
-            return abs(psutil.Process(self.pid).create_time() - self.born) > 2
+            born = float(psutil.Process(self.pid).create_time())
         except psutil.NoSuchProcess:
             return True
         except psutil.AccessDenied:
             return False
+        # Births are reckoned from the boot time, which may shift by a fraction of a second.
+        return abs(born - self.born) > 2
 
     def __str__(self) -> str:
         return f"process {self.pid} on {self.host}, since {self.since}"

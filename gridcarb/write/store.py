@@ -8,7 +8,7 @@ from __future__ import annotations
 import warnings
 from collections.abc import Mapping, Sequence
 from pathlib import Path
-from typing import Any, Literal
+from typing import Any, Literal, cast
 
 import numpy as np
 import xarray as xr
@@ -60,7 +60,8 @@ def create(
             shape = {dim: template.sizes[dim] for dim in dims}
             attrs = field_attributes(field, dims, coordinates, inherited, status)
             dtype = dtype_of(field, precision)
-            _make(group, field.key, shape, dtype, chunks_of(shape, chunks), attrs, missing=dtype.kind == "f")
+            _make(group, field.key, shape=shape, dtype=dtype, chunks=chunks_of(shape, chunks), attributes=attrs,
+                  missing=dtype.kind == "f")
         _consolidate(path)
 
 
@@ -114,18 +115,19 @@ def _aligned(
 def _put_coordinate(group: zarr.Group, name: str, variable: xr.Variable) -> None:
     shape = {str(dim): size for dim, size in variable.sizes.items()}
     # One chunk: coordinates are read whole.
-    array = _make(group, name, shape, variable.dtype, chunks_of(shape, {}), variable.attrs, missing=False)
+    array = _make(group, name, shape=shape, dtype=variable.dtype, chunks=chunks_of(shape, {}),
+                  attributes=variable.attrs, missing=False)
     array[...] = variable.values
 
 
 def _make(
-    group: zarr.Group, name: str, shape: Mapping[str, int], dtype: np.dtype[np.generic], chunks: tuple[int, ...],
-    attributes: Mapping[str, object], *, missing: bool,
+    group: zarr.Group, name: str, *, shape: Mapping[str, int], dtype: np.dtype[Any], chunks: tuple[int, ...],
+    attributes: Mapping[str, object], missing: bool,
 ) -> zarr.Array[Any]:
     dims = list(shape)
     third = group.metadata.zarr_format == 3
     return group.create_array(
-        name, shape=tuple(shape.values()), dtype=str if dtype == object else dtype, chunks=chunks,
+        name, shape=tuple(shape.values()), dtype=str if dtype.kind == "O" else dtype, chunks=chunks,
         fill_value=fill_of(dtype, group.metadata.zarr_format, missing=missing),
         compressors=compressor(group.metadata.zarr_format), dimension_names=dims if third else None,
         attributes=_plain(attributes if third else {**attributes, _DIMS_V2: dims}),
@@ -135,7 +137,7 @@ def _make(
 def _dims(array: zarr.Array[Any]) -> tuple[str, ...]:
     if array.metadata.zarr_format == 3:
         return tuple(str(dim) for dim in array.metadata.dimension_names or ())
-    return tuple(array.attrs[_DIMS_V2])
+    return tuple(str(dim) for dim in cast(list[str], array.attrs[_DIMS_V2]))
 
 
 def _consolidate(path: Path) -> None:

@@ -1,0 +1,130 @@
+"""Ranges: for each field how many values, their extremes and mean, and how many lie outside the sane range.
+
+One pass, float64 throughout. Sums are kept as exact integers, so that the order in which blocks are merged changes nothing,
+not even the last bit. (The sum *within* a block is a float64 sum: another block size may move the last digits of a mean.)
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from gridcarb.fields import Field
+from gridcarb.products.shelf import PRODUCTS, Product
+
+_BITS = 1074
+"""Every finite float64 is a whole multiple of 2**-1074."""
+
+
+@dataclass
+class Range:
+    """What is known of one field so far; `total` is the sum of its values in units of 2**-1074."""
+
+    low: float
+    high: float
+    cells: int = 0
+    values: int = 0
+    minimum: float = math.inf
+    maximum: float = -math.inf
+    total: int = 0
+    below: int = 0
+    above: int = 0
+
+    def add(self, values: NDArray[np.float64]) -> None:
+        """Count in `values`; NaN or infinity is a cell without a value."""
+        self.cells += values.size
+        values = values[np.isfinite(values)]
+        if not values.size:
+            return
+        self.values += values.size
+        self.minimum = min(self.minimum, float(values.min()))
+        self.maximum = max(self.maximum, float(values.max()))
+        self.total += _exact(float(values.sum()))
+        self.below += int(np.count_nonzero(values < self.low))
+        self.above += int(np.count_nonzero(values > self.high))
+
+    def merge(self, other: Range) -> None:
+        """Count in another share of the same field."""
+        self.cells += other.cells
+        self.values += other.values
+        self.minimum = min(self.minimum, other.minimum)
+        self.maximum = max(self.maximum, other.maximum)
+        self.total += other.total
+        self.below += other.below
+        self.above += other.above
+
+    def report(self) -> dict[str, Any]:
+        """Counts and extremes; None for the extremes and the mean of nothing."""
+        some = self.values > 0
+        return {
+            "cells": self.cells, "values": self.values,
+            "minimum": self.minimum if some else None, "maximum": self.maximum if some else None,
+            "mean_of_cells": float(Fraction(self.total, self.values << _BITS)) if some else None,
+            "sane_range": [self.low, self.high], "below_sane_range": self.below, "above_sane_range": self.above,
+        }
+
+
+@dataclass
+class Flags:
+    """How often each value of a status occurs, by value; `words` names them."""
+
+    words: tuple[tuple[int, str], ...]
+    counts: dict[int, int] = field(default_factory=dict)
+
+    def add(self, values: NDArray[np.generic]) -> None:
+        """Count in the values of a status field."""
+        for value, count in zip(*np.unique(values, return_counts=True), strict=True):
+            self.counts[int(value)] = self.counts.get(int(value), 0) + int(count)
+
+    def merge(self, other: Flags) -> None:
+        """Count in another share of the same status."""
+        for value, count in other.counts.items():
+            self.counts[value] = self.counts.get(value, 0) + count
+
+    def report(self) -> dict[str, Any]:
+        """Counts by word; a value that was never declared appears as the number it is."""
+        words = dict(self.words)
+        strangers = {str(value): self.counts[value] for value in sorted(self.counts.keys() - words.keys())}
+        return {word: self.counts.get(value, 0) for value, word in self.words} | strangers
+
+
+class Ranges:
+    """The ranges of several fields, and the counts of a status."""
+
+    def __init__(self, fields: Sequence[Field]) -> None:
+        self.shares: dict[str, Range | Flags] = {
+            entry.key: Flags(entry.flags) if entry.part == "status" else Range(*entry.sane_range) for entry in fields
+        }
+
+    def add(self, block: xr.Dataset) -> None:
+        """Count in the fields of a block; every field must be there."""
+        for key, share in self.shares.items():
+            values = block[key].values
+            share.add(values if isinstance(share, Flags) else values.astype(np.float64, copy=False))
+
+    def merge(self, other: Ranges) -> None:
+        """Count in the shares of another tally of the same fields."""
+        for key, share in self.shares.items():
+            share.merge(other.shares[key])  # type: ignore[arg-type]
+
+    def report(self) -> dict[str, Any]:
+        """Field key -> its counts and extremes, or its counts by flag."""
+        return {key: share.report() for key, share in self.shares.items()}
+
+
+def _exact(value: float) -> int:
+    """A finite float64 as a whole number of 2**-1074."""
+    top, bottom = value.as_integer_ratio()
+    return top << (_BITS + 1 - bottom.bit_length())
+
+
+PRODUCTS.put("ranges", Product(
+    "ranges", "number of values, extremes, mean over cells, and how many lie outside the sane range", Ranges,
+))

@@ -1,0 +1,94 @@
+"""Where and when a grid lies, in the terms of ACDD 1.3, derived from its coordinates and their bounds."""
+
+from __future__ import annotations
+
+import warnings
+
+import cftime
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from gridcarb.axes import Axes
+
+_GREGORIAN = ("standard", "gregorian", "proleptic_gregorian")
+_DAY = 86400.0
+
+
+def geospatial(template: xr.Dataset, axes: Axes) -> dict[str, object]:
+    """The attributes ``geospatial_*``: extremes of latitude, longitude and the vertical, bounds included where present."""
+    found: dict[str, object] = {}
+    for word, name, units in (("lat", axes.latitude, "degrees_north"), ("lon", axes.longitude, "degrees_east")):
+        values = _numbers(template, name)
+        if name and values.size:
+            if str(template[name].attrs.get("units", "")).startswith("rad"):
+                values = np.degrees(values)
+            found |= _extremes(word, values) | {f"geospatial_{word}_units": units}
+    values = _numbers(template, axes.vertical_coordinate)
+    if axes.vertical_coordinate and values.size:
+        attrs = template[axes.vertical_coordinate].attrs
+        found |= _extremes("vertical", values)
+        found |= {f"geospatial_vertical_{key}": str(attrs[key]) for key in ("units", "positive") if key in attrs}
+    return found
+
+
+def time_coverage(template: xr.Dataset, axes: Axes) -> dict[str, object]:
+    """The attributes ``time_coverage_*``, in the calendar of the input; none where its times cannot be dated."""
+    name = axes.time_coordinate
+    if name is None or name not in template.coords:
+        return {}
+    attrs = template[name].attrs
+    units, calendar = str(attrs.get("units", "")), str(attrs.get("calendar", "standard")).lower()
+    steps = _numbers(template, name, bounds=False)
+    reach = _numbers(template, name)
+    if not reach.size:
+        return {}
+    try:
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")  # year zero, a base date before the Gregorian reform: still a date
+            first, last = cftime.num2date([reach.min(), reach.max()], units, calendar)
+            dates = cftime.num2date(np.sort(steps), units, calendar)
+            days = np.diff(cftime.date2num(dates, "days since 2000-01-01", calendar))
+    except (ValueError, OverflowError):
+        return {}
+    found: dict[str, object] = {
+        "time_coverage_start": _iso(first), "time_coverage_end": _iso(last),
+        "time_coverage_duration": _duration((last - first).total_seconds()),
+    }
+    if days.size:
+        found["time_coverage_resolution"] = _resolution(float(np.median(days)))
+    if calendar not in _GREGORIAN:
+        found["time_coverage_comment"] = f"dates are of the {calendar} calendar, durations nominal"
+    return found
+
+
+def _numbers(template: xr.Dataset, name: str | None, *, bounds: bool = True) -> NDArray[np.float64]:
+    """All finite numbers of a coordinate, and of its bounds if wanted; fills of the source are left out."""
+    if name is None or name not in template.coords:
+        return np.empty(0)
+    attrs = template[name].attrs
+    fills = [float(attrs[key]) for key in ("_FillValue", "missing_value") if key in attrs]
+    names = [name, *(str(attrs[key]) for key in ("bounds", "climatology") if bounds and key in attrs)]
+    parts = [np.asarray(template[key].values, dtype=np.float64).ravel() for key in names if key in template]
+    flat: NDArray[np.float64] = np.concatenate(parts)
+    return flat[np.isfinite(flat) & ~np.isin(flat, fills)]
+
+
+def _extremes(word: str, values: NDArray[np.float64]) -> dict[str, object]:
+    return {f"geospatial_{word}_min": float(values.min()), f"geospatial_{word}_max": float(values.max())}
+
+
+def _iso(date: cftime.datetime) -> str:
+    return f"{date.year:04d}-{date.month:02d}-{date.day:02d}T{date.hour:02d}:{date.minute:02d}:{date.second:02d}Z"
+
+
+def _duration(seconds: float) -> str:
+    days = seconds / _DAY
+    return f"P{days:.0f}D" if days >= 1 or days == 0 else f"PT{seconds:.0f}S"
+
+
+def _resolution(days: float) -> str:
+    for name, least, most in (("P1D", 0.999, 1.001), ("P1M", 27.9, 31.1), ("P1Y", 359.9, 366.1)):
+        if least <= days <= most:
+            return name
+    return _duration(days * _DAY)

@@ -1,0 +1,153 @@
+"""One NetCDF-4 file from a finished store, streamed chunk by chunk.
+
+A NetCDF file has one writer: it is filled under a temporary name in the folder of its target and renamed when it is
+whole. The lock of the HDF5 library is held for each piece written, not while the store is read.
+"""
+
+from __future__ import annotations
+
+import itertools
+import os
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from contextlib import suppress
+from pathlib import Path
+from typing import Any
+
+import netCDF4
+import numpy as np
+import xarray as xr
+
+from gridcarb.axes import find_axes
+from gridcarb.netcdf_lock import NETCDF_LOCK
+from gridcarb.write.coordinates import pointed_at
+from gridcarb.write.disk import room_for, settle
+
+_CHUNK_BYTES = 2 * 2**20
+_DEFLATE_LEVEL = 4
+_TYPED = frozenset({
+    "flag_values", "flag_masks", "valid_min", "valid_max", "valid_range", "actual_range",
+})
+"""Attributes which CF wants in the type of their variable; the store keeps them as plain numbers."""
+
+Selection = tuple[slice, ...]
+
+
+def export(
+    store: Path, target: Path, *, attributes: Mapping[str, object] | None = None,
+    progress: Callable[[int, int], None] | None = None,
+) -> None:
+    """Write the finished Zarr `store` as the NetCDF-4 file `target`, replacing one that is there only when whole.
+
+    Never holds more than one chunk of one field. NaN stays the fill of the fields, so that file and store hold the same
+    bits; coordinates, bounds and the status have none. The time dimension is unlimited.
+
+    Parameters
+    ----------
+    attributes : global attributes that win over those of the store.
+    progress : called with the bytes copied and the bytes in all, after each piece.
+    """
+    temporary = target.with_name(f".{target.name}.{os.getpid()}")
+    source = xr.open_dataset(store, engine="zarr", consolidated=False, decode_cf=False, chunks=None, cache=False)
+    try:
+        with room_for(target, sum(file.stat().st_size for file in store.rglob("*") if file.is_file())):
+            _copy(source, temporary, source.attrs | dict(attributes or {}), progress)
+            settle(temporary, target)
+    finally:
+        source.close()
+        temporary.unlink(missing_ok=True)
+
+
+def _copy(
+    source: xr.Dataset, path: Path, attributes: Mapping[str, object], progress: Callable[[int, int], None] | None
+) -> None:
+    with NETCDF_LOCK:
+        file = netCDF4.Dataset(path, "w", format="NETCDF4")
+    try:
+        with NETCDF_LOCK:
+            time = find_axes(source).time
+            for dim, size in source.sizes.items():
+                file.createDimension(str(dim), None if dim == time else size)
+            file.setncatts(_typed(attributes, None))
+            fields = _fields(source)
+            coordinates = [str(name) for name in source.variables if name not in fields]
+            for name in (*coordinates, *fields):
+                _declare(file, name, source.variables[name], time, is_field=name in fields)
+        total = sum(source.variables[name].nbytes for name in (*coordinates, *fields))
+        done = 0
+        for name in (*coordinates, *fields):
+            variable = source.variables[name]
+            for selection in _pieces(variable.shape, variable.encoding["chunks"]):
+                values = variable[selection].values
+                with NETCDF_LOCK:
+                    file.variables[name][selection] = values
+                done += values.nbytes
+                if progress:
+                    progress(done, total)
+        with NETCDF_LOCK:
+            file.close()
+    except BaseException:
+        with NETCDF_LOCK, suppress(RuntimeError):  # the first error is the one to tell
+            if file.isopen():
+                file.close()
+        raise
+
+
+def _fields(source: xr.Dataset) -> list[str]:
+    """The variables that are neither coordinates nor pointed to as bounds, terms or the mapping of the grid."""
+    attrs = [variable.attrs for variable in source.variables.values()]
+    lists = (str(entry.get(key, "")).split() for entry in attrs for key in ("coordinates", "grid_mapping"))
+    helpers = pointed_at(attrs).union(*lists)
+    return [str(name) for name in source.data_vars if name not in helpers]
+
+
+def _declare(file: netCDF4.Dataset, name: str, variable: xr.Variable, time: str | None, *, is_field: bool) -> None:
+    options: dict[str, Any] = {}
+    if is_field and variable.ndim:
+        options = {"zlib": True, "complevel": _DEFLATE_LEVEL, "shuffle": True,
+                   "chunksizes": chunk_shape(variable.shape, variable.encoding["chunks"], variable.dtype.itemsize)}
+    elif time in variable.dims:
+        options = {"chunksizes": [max(1, size) for size in variable.shape]}
+    text = variable.dtype.kind in "OUT"
+    fill = np.nan if is_field and variable.dtype.kind == "f" else None
+    # A vlen string has no fill to switch off; for numbers, no fill means no attribute and no prefilling.
+    made = file.createVariable(name, str if text else variable.dtype, [str(dim) for dim in variable.dims],
+                               fill_value=fill if text or fill is not None else False, **options)
+    made.set_auto_maskandscale(False)
+    made.setncatts(_typed({key: value for key, value in variable.attrs.items() if key != "_FillValue"}, variable.dtype))
+
+
+def chunk_shape(shape: Sequence[int], block: Sequence[int], itemsize: int) -> tuple[int, ...]:
+    """The chunk of a NetCDF field: part of one chunk of the store, at most two MiB.
+
+    Each NetCDF chunk is then compressed once, when it is whole. A field is mostly opened to look at one moment, so time is
+    split first, and then the vertical, whatever is left last. A split must divide the store's chunk evenly, unless that
+    chunk spans the whole dimension.
+    """
+    chunk = [max(1, min(size, length)) for size, length in zip(block, shape, strict=True)]
+    for axis, length in enumerate(shape):
+        while chunk[axis] > 1 and np.prod(chunk) * itemsize > _CHUNK_BYTES:
+            chunk[axis] = _split(chunk[axis], whole=block[axis] >= length)
+    return tuple(chunk)
+
+
+def _split(size: int, *, whole: bool) -> int:
+    if whole:
+        return -(-size // 2)
+    return size // next(factor for factor in range(2, size + 1) if size % factor == 0)
+
+
+def _pieces(shape: Sequence[int], chunks: Sequence[int]) -> Iterator[Selection]:
+    starts = (range(0, size, chunk) for size, chunk in zip(shape, chunks, strict=True))
+    for corner in itertools.product(*starts):
+        yield tuple(slice(at, min(at + chunk, size)) for at, chunk, size in zip(corner, chunks, shape, strict=True))
+
+
+def _typed(attributes: Mapping[Any, object], dtype: np.dtype[Any] | None) -> dict[str, object]:
+    """Attributes in the types CF wants: those tied to a variable in its type, small integers in 32 bits."""
+    tied = dtype is not None and dtype.kind in "iuf"
+    return {
+        str(key): np.asarray(value, dtype=dtype) if tied and key in _TYPED
+        else np.int32(value) if isinstance(value, int) and abs(value) < 2**31
+        else value
+        for key, value in attributes.items()
+    }

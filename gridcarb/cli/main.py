@@ -8,7 +8,6 @@ from gridcarb.cli.listings import fields, keys
 from gridcarb.cli.terminal import Door, debug_option, exit_codes
 from gridcarb.cli.work import plan, run
 
-
 _SETTINGS = {"help_option_names": ["-h", "--help"], "max_content_width": 100}
 
 

@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
-from gridcarb.errors import Fault
-from gridcarb.fields import FIELDS, REQUIRED_ROLES
-from gridcarb.recipe.model import resolved
+from gridcarb.errors import Fault, did_you_mean
+from gridcarb.fields import REQUIRED_ROLES
+from gridcarb.recipe.model import derived_fields, resolved
 from gridcarb.recipe.text import KeyPath, Parsed, dotted
 
 Finding = tuple[KeyPath, str, str]
@@ -36,16 +36,20 @@ def _no_files(data: Mapping[str, Any]) -> Iterator[Finding]:
 def _uncomputed_figures(data: Mapping[str, Any]) -> Iterator[Finding]:
     chemistry = data.get("chemistry")
     wanted = chemistry.get("fields") if isinstance(chemistry, Mapping) else None
-    computed = [wanted] if isinstance(wanted, str) else wanted
+    computed = derived_fields() if wanted == "all" else [wanted] if isinstance(wanted, str) else wanted
     figures = data.get("figures")
-    if not isinstance(computed, list) or not isinstance(figures, list) or wanted == "all":
+    if not isinstance(computed, Sequence) or not isinstance(figures, list):
         return
     for number, figure in enumerate(figures):
         key = figure.get("field") if isinstance(figure, Mapping) else None
-        if isinstance(key, str) and key in FIELDS and key not in computed:
-            yield ("figures", number, "field"), f"'{key}' is drawn but not computed", (
-                f"add {key} to `chemistry: {{fields: ...}}`" if FIELDS[key].part == "derived" else "draw a computed field"
-            )
+        if not isinstance(key, str) or key in computed:
+            continue
+        place = ("figures", number, "field")
+        if key in derived_fields():
+            yield place, f"'{key}' is drawn but not computed", f"add {key} to `fields` of `chemistry`"
+        else:
+            known = [word for word in computed if isinstance(word, str)]
+            yield place, f"'{key}' is not a field of the result", did_you_mean(key, known)
 
 
 def _folder_in_the_way(data: Mapping[str, Any], base: Path) -> Iterator[Finding]:

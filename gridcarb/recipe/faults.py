@@ -48,7 +48,8 @@ def _written_path(detail: ErrorDetails, data: Any) -> KeyPath:
     for part in detail["loc"]:
         entry = isinstance(data, list) and isinstance(part, int) and part < len(data)
         if not entry and not (isinstance(data, Mapping) and part in data):
-            return (*path, part) if detail["type"] == "missing" and part == detail["loc"][-1] else tuple(path)
+            lacking = detail["type"] == "missing" and isinstance(part, str) and part == detail["loc"][-1]
+            return (*path, part) if lacking else tuple(path)
         data = data[part]
         path.append(part)
     return tuple(path)
@@ -70,7 +71,7 @@ def _tell(path: KeyPath, detail: ErrorDetails, data: object) -> tuple[str, str]:
         words, name = _BOUNDS[kind]
         return f"{_shown(value)} is out of range: it must be {words} {context[name]}", _meaning(path, data)
     tellers: dict[str, Callable[[], tuple[str, str]]] = {
-        "missing": lambda: _missing(path, data),
+        "missing": lambda: _missing(path, detail["loc"][-1], data),
         "extra_forbidden": lambda: _unknown_key(path, data),
         "string_pattern_mismatch": lambda: (f"{_shown(value)} cannot be understood here", _meaning(path, data)),
         "too_short": lambda: (_count(value, context["min_length"], "at least"), _meaning(path, data)),
@@ -96,6 +97,8 @@ def _wrong_kind(path: KeyPath, details: list[ErrorDetails], data: object) -> tup
         return f"{_shown(value)} is not accepted here", _suggest(str(value), words)
     if asked == ["text"] and not words and not isinstance(value, (list, dict)):
         return f"{_shown(value)} is not text", f'put it in quotes: "{_shown(value)}"'
+    if wanted == "a list":
+        return f"{_shown(value)} is not a list", "begin each entry with '- ', or put the entries in brackets [ ]"
     return f"{_shown(value)} is not {wanted}", _meaning(path, data)
 
 
@@ -105,13 +108,15 @@ def _suggest(word: str, words: list[str]) -> str:
     return f"{suggestion}accepted: {', '.join(words)}"
 
 
-def _missing(path: KeyPath, data: object) -> tuple[str, str]:
+def _missing(path: KeyPath, name: str | int, data: object) -> tuple[str, str]:
+    if isinstance(name, int):
+        return "the list has too few entries", _meaning(path, data)
     section = section_at(path, data)
-    what = f"'{path[-1]}' is missing in {dotted(path[:-1]) or 'the recipe'}"
+    what = f"'{name}' is missing in {dotted(path[:-1]) or 'the recipe'}"
     if section:
         needed = [name for name, field in section.model_fields.items() if field.is_required()]
-        return what, f"write the section `{path[-1]}:` with at least: {', '.join(needed)}"
-    return what, f"write `{path[-1]}: ...`, {_meaning(path, data).partition(': ')[2]}"
+        return what, f"write the section `{name}:` with at least: {', '.join(needed)}"
+    return what, f"write `{name}: ...`, {_meaning(path, data).partition(': ')[2]}"
 
 
 def _unknown_key(path: KeyPath, data: object) -> tuple[str, str]:

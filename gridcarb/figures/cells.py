@@ -145,27 +145,33 @@ def mesh(grid: Grid, centre: float) -> Mesh:
     return Mesh(x_edges, y_edges, x_cells, y_cells)
 
 
-def outlines(grid: Grid, centre: float) -> Outlines:
-    """The cells of any grid as rings; those that meet the outer meridian or hold a pole are cut in longitude and latitude."""
+def outlines(grid: Grid, centre: float, uncut: bool) -> Outlines:
+    """The cells of any grid as rings, (corners, 2) degrees.
+
+    Those that meet the outer meridian or hold a pole are cut there, unless `uncut` (a view of a pole has no outer meridian).
+    """
     start = (grid.longitudes[:, :1] - centre + 180) % 360 - 180
     steps = (np.diff(grid.longitudes, axis=1, append=grid.longitudes[:, :1]) + 180) % 360 - 180
     lon = np.concatenate([start, start + np.cumsum(steps, axis=1)], axis=1)
     lat = np.concatenate([grid.latitudes, grid.latitudes[:, :1]], axis=1)
-    valid = np.isfinite(lon).all(axis=1) & np.isfinite(lat).all(axis=1) & (np.ptp(lat, axis=1) > 0)
+    valid = np.isfinite(lon).all(axis=1) & np.isfinite(lat).all(axis=1)
+    rings = np.stack([lon, lat], axis=-1)
+    if uncut:
+        rings[..., 0] = (rings[..., 0] + 180) % 360 - 180
+        return Outlines(tuple(rings[valid]), np.flatnonzero(valid))
     around = valid & (np.abs(lon[:, -1] - lon[:, 0]) > 180)
-    crossing = valid & ~around & ((lon.min(axis=1) < -180) | (lon.max(axis=1) > 180))
-    plain = np.flatnonzero(valid & ~around & ~crossing)
-    rings = [np.stack([lon[i], lat[i]], axis=1) for i in plain]
-    cells = list(plain)
-    for i in np.flatnonzero(around | crossing):
-        ring = np.stack([lon[i], lat[i]], axis=1)
-        if around[i]:
-            pole = float(np.copysign(90.0, lat[i].mean()))
-            ring = np.concatenate([ring, [[lon[i, -1], pole], [lon[i, 0], pole]]])
-        pieces = _cut(ring)
-        rings += pieces
-        cells += [i] * len(pieces)
-    return Outlines(tuple(rings), np.asarray(cells, dtype=np.intp))
+    split = around | (valid & ((lon.min(axis=1) < -180) | (lon.max(axis=1) > 180)))
+    whole = np.flatnonzero(valid & ~split)
+    pieces, cells = list(rings[whole]), [int(cell) for cell in whole]
+    for cell in np.flatnonzero(split):
+        ring = rings[cell]
+        if around[cell]:
+            pole = float(np.copysign(90.0, ring[:, 1].mean()))
+            ring = np.concatenate([ring, [[ring[-1, 0], pole], [ring[0, 0], pole]]])
+        parts = _cut(ring)
+        pieces += parts
+        cells += [int(cell)] * len(parts)
+    return Outlines(tuple(pieces), np.asarray(cells, dtype=np.intp))
 
 
 def _cut(ring: Floats) -> list[Floats]:

@@ -98,7 +98,9 @@ def draw(result: xr.Dataset, settings: MapSettings, folder: Path) -> Path:
     UnknownWordError, InputError : as `check`, or the result does not hold the field.
     OutputError : the file cannot be written.
     """
-    from gridcarb.figures.drawing.plates import plate_of, publish  # late: matplotlib is slow to load, and most commands draw nothing
+    # Late, because matplotlib is slow to load and most commands draw nothing.
+    from gridcarb.figures.drawing.chart import publish
+    from gridcarb.figures.drawing.plates import plate_of
 
     if settings.field not in result:
         known = [str(name) for name in result.data_vars]

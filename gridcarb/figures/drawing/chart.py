@@ -10,11 +10,10 @@ from pathlib import Path
 import numpy as np
 import numpy.typing as npt
 from cartopy.mpl.geoaxes import GeoAxes
-from matplotlib.artist import Artist
 from matplotlib.collections import PolyCollection, QuadMesh
 from matplotlib.colors import to_rgba
 from matplotlib.figure import Figure
-from matplotlib.patches import PathPatch
+from matplotlib.patches import Patch, PathPatch
 from matplotlib.path import Path as Outline
 
 from gridcarb.figures.drawing import coastline, theme
@@ -25,8 +24,8 @@ from gridcarb.figures.drawing.views import View
 Floats = npt.NDArray[np.float64]
 Mask = npt.NDArray[np.bool_]
 
-_SIDE, _HEAD, _FOOT = 0.62, 0.98, 1.12
-"""Margins round the map, in inches: left and right, above for a title of one line, below."""
+_SIDE = 0.62
+"""Margin left and right of the map, in inches."""
 
 
 @dataclass(frozen=True)
@@ -36,6 +35,7 @@ class Plate:
     values : (y, x) or (cell,), NaN where there is none.
     ground, missing : cells without a value, by reason; same shape.
     label : beside the colour bar; empty: no bar.
+    ground_word : what solid ground is called in the legend.
     entries : legend entries (label -> colour) of a field of kinds.
     """
 
@@ -49,24 +49,27 @@ class Plate:
     subtitle: str
     label: str
     entries: Sequence[tuple[str, str]]
+    ground_word: str
     coast: bool
 
 
 def publish(plate: Plate, path: Path) -> Path:
     """Draw the map and write it to `path`."""
     with theme.drawing():
-        width = {"globe": 8.6, "window": 8.0, "disc": 5.9}[plate.view.shape]
-        height = min(width / plate.view.aspect, 7.2)
-        width = min(width, height * plate.view.aspect)
-        page_width = max(width, 5.4) + 2 * _SIDE
-        lines = textwrap.wrap(plate.title, int(page_width * 7.6)) or [""]
-        top = _HEAD + 0.27 * (len(lines) - 1)
-        figure = theme.page(page_width, height + top + _FOOT)
-        left = (page_width - width) / 2
-        ax = figure.add_axes(theme.box(figure, left, _FOOT, width, height), projection=plate.view.projection)
-        _fill(ax, plate)
+        room = {"globe": 8.6, "window": 8.0, "disc": 5.9}[plate.view.shape]
+        height = min(room / plate.view.aspect, 7.2)
+        width = height * plate.view.aspect
+        across = max(width, 5.4) + 2 * _SIDE
+        lines = textwrap.wrap(plate.title, int(across * 7.6)) or [""]
+        notes = _shades(plate)
+        top = 0.45 + theme.LINE * len(lines) + (0.26 if plate.subtitle or notes else 0.0)
+        foot = 1.12 if plate.label else 0.8
+        figure = theme.page(across, foot + height + top)
+        frame = theme.box(figure, (across - width) / 2, foot, width, height)
+        _fill(figure.add_axes(frame, projection=plate.view.projection), plate)
         theme.head(figure, lines, plate.subtitle, _SIDE, 0.24)
-        _explain(figure, plate, height)
+        theme.legend(figure, notes, across - _SIDE, foot + height + 0.24)
+        _explain(figure, plate)
         return theme.save(figure, path, plate.title, ", ".join(part for part in (plate.label, plate.subtitle) if part))
 
 
@@ -89,7 +92,7 @@ def _paint(ax: GeoAxes, plate: Plate, colours: Floats) -> None:
     view = plate.view
     if plate.grid.rectilinear:
         net = mesh(plate.grid, view.centre)
-        east, north = np.meshgrid(net.x_edges, np.clip(net.y_edges, *_hemisphere(view)))
+        east, north = np.meshgrid(net.x_edges, np.clip(net.y_edges, *_reach(view)))
         nodes = view.place(east, north)
         quads = np.stack([nodes[:-1, :-1], nodes[:-1, 1:], nodes[1:, 1:], nodes[1:, :-1]], axis=2)
         ax.add_collection(QuadMesh(
@@ -97,8 +100,8 @@ def _paint(ax: GeoAxes, plate: Plate, colours: Floats) -> None:
         ), autolim=False)
         _hatch(ax, quads[net.spread(plate.missing, False).astype(bool)])
         return
-    pieces = outlines(plate.grid, view.centre)
-    rings = [view.place(ring[:, 0], np.clip(ring[:, 1], *_hemisphere(view))) for ring in pieces.rings]
+    pieces = outlines(plate.grid, view.centre, uncut=view.shape == "disc")
+    rings = [view.place(ring[:, 0], np.clip(ring[:, 1], *_reach(view))) for ring in pieces.rings]
     ax.add_collection(PolyCollection(
         rings, facecolors=colours.reshape(-1, 4)[pieces.cells], antialiaseds=False, edgecolors="none", zorder=2
     ), autolim=False)
@@ -106,10 +109,11 @@ def _paint(ax: GeoAxes, plate: Plate, colours: Floats) -> None:
     _hatch(ax, [ring for ring, missing in zip(rings, hidden, strict=True) if missing])
 
 
-def _hemisphere(view: View) -> tuple[float, float]:
-    """Latitudes that can be shown: a disc needs no cells of the other side of the Earth."""
-    return (view.south - 5, 90.0) if view.shape == "disc" and view.north > 0 else (
-        (-90.0, view.north + 5) if view.shape == "disc" else (-90.0, 90.0))
+def _reach(view: View) -> tuple[float, float]:
+    """Latitudes worth placing: a disc needs no cells of the other side of the Earth."""
+    if view.shape != "disc":
+        return -90.0, 90.0
+    return max(view.south - 5, -90.0), min(view.north + 5, 90.0)
 
 
 def _hatch(ax: GeoAxes, rings: Sequence[Floats] | Floats) -> None:
@@ -123,19 +127,17 @@ def _hatch(ax: GeoAxes, rings: Sequence[Floats] | Floats) -> None:
     ax.add_patch(patch)
 
 
-def _explain(figure: Figure, plate: Plate, height: float) -> None:
-    """The colour bar below the map and the legend beside the subtitle."""
+def _explain(figure: Figure, plate: Plate) -> None:
+    """The colour bar, or the legend of a field of kinds, below the map."""
     across, _ = figure.get_size_inches()
     if plate.label:
         length = 0.68 * (across - 2 * _SIDE)
-        panel = figure.add_axes(theme.box(figure, (across - length) / 2, 0.68, length, 0.15))
-        plate.scale.bar(panel, plate.label)
-    kinds: list[Artist] = [theme.swatch(colour, label) for label, colour in plate.entries]
-    if kinds:
-        theme.legend(figure, kinds, across - _SIDE, 0.3, columns=3)
-    shades: list[Artist] = []
-    if plate.ground.any():
-        shades.append(theme.swatch(theme.LAND, "land or sea floor"))
-    if plate.missing.any():
-        shades.append(theme.swatch(theme.MISSING, "no value", hatched=True))
-    theme.legend(figure, shades, across - _SIDE, _FOOT + height + 0.14)
+        plate.scale.bar(figure.add_axes(theme.box(figure, (across - length) / 2, 0.68, length, 0.15)), plate.label)
+    kinds = [theme.swatch(colour, word) for word, colour in plate.entries]
+    theme.legend(figure, kinds, across / 2, 0.26, anchor="lower center")
+
+
+def _shades(plate: Plate) -> list[Patch]:
+    """Legend entries of the cells without a value; only those on the map."""
+    shades = [theme.swatch(theme.LAND, plate.ground_word)] if plate.ground.any() else []
+    return shades + ([theme.swatch(theme.MISSING, "no value", hatched=True)] if plate.missing.any() else [])

@@ -10,15 +10,13 @@ from gridcarb.axes import Axes
 from gridcarb.fields import FIELDS, Ink
 from gridcarb.figures.cells import Grid, grid_of
 from gridcarb.figures.drawing import views
-from gridcarb.figures.drawing.chart import Plate, publish
+from gridcarb.figures.drawing.chart import Plate
 from gridcarb.figures.drawing.scales import Scale, kinds, scale_of
 from gridcarb.figures.ground import MISSING_INPUT, solid_ground
 from gridcarb.figures.lettering import sentence, with_units
 from gridcarb.figures.levels import Level
 from gridcarb.figures.map import POLAR_EDGE, MapSettings
 from gridcarb.figures.moments import Moment
-
-__all__ = ["plate_of", "publish"]
 
 Floats = npt.NDArray[np.float64]
 Mask = npt.NDArray[np.bool_]
@@ -43,8 +41,14 @@ def plate_of(result: xr.Dataset, axes: Axes, level: Level, moment: Moment, setti
     return Plate(
         grid=grid, values=values, ground=ground, missing=empty & ~ground, view=view, scale=scale,
         title=settings.title or sentence(name), subtitle=", ".join(part for part in (level.label, moment.label) if part),
-        label=label, entries=entries, coast=settings.coastline and result.attrs.get("geography") != "invented",
+        label=label, entries=entries, ground_word="land" if _on_top(result, axes, level) else "land or sea floor",
+        coast=settings.coastline and result.attrs.get("geography") != "invented",
     )
+
+
+def _on_top(result: xr.Dataset, axes: Axes, level: Level) -> bool:
+    """Whether no level lies above this one, so that all solid ground in it is land."""
+    return level.index is None or axes.vertical is None or len(level.below) == result.sizes[axes.vertical] - 1
 
 
 def _slice(result: xr.Dataset, axes: Axes, level: Level, moment: Moment, key: str) -> tuple[Floats, str]:

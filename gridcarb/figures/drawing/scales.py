@@ -99,7 +99,7 @@ def _robust(known: Floats) -> tuple[float, float]:
     if high - low <= 1e-9 * max(abs(low), abs(high), 1e-300):
         half = max(abs(low) * 0.01, 1e-12)
         low, high = low - half, high + half
-    steps = MaxNLocator(nbins=10, steps=[1, 2, 2.5, 5, 10]).tick_values(low, high)
+    steps = MaxNLocator(nbins=16, steps=[1, 2, 2.5, 5, 10]).tick_values(low, high)
     return float(steps[0]), float(steps[-1])
 
 

@@ -35,6 +35,8 @@ CATEGORIES = ("#0072b2", "#e69f00", "#56b4e9", "#d55e00", "#cc79a7", "#009e73")
 
 DPI = 200
 TITLE, TEXT, SMALL = 14.0, 10.5, 8.5
+LINE = 0.27
+"""Distance between the lines of a title, in inches."""
 
 _STYLE = {
     "font.family": ["DejaVu Sans"], "font.size": TEXT, "text.color": INK, "axes.labelcolor": INK,
@@ -70,7 +72,7 @@ def head(figure: Figure, title: Sequence[str], subtitle: str, left: float, top: 
     at = up - top
     for line in title:
         figure.text(left / across, at / up, line, size=TITLE, weight="bold", va="top", parse_math=False)
-        at -= 0.27
+        at -= LINE
     figure.text(left / across, (at - 0.03) / up, subtitle, size=TEXT, color=SOFT_INK, va="top", parse_math=False)
 
 
@@ -80,12 +82,12 @@ def swatch(color: str, label: str, hatched: bool = False) -> Patch:
     return Patch(facecolor=color, label=label, linewidth=0.5, **hatching)
 
 
-def legend(figure: Figure, entries: Sequence[Artist], right: float, bottom: float, columns: int = 6) -> None:
-    """Entries in a row that ends at `right` (inches from the left edge) and stands on `bottom` (from the lower edge)."""
-    across, up = figure.get_size_inches()
+def legend(figure: Figure, entries: Sequence[Artist], across: float, up: float, anchor: str = "lower right") -> None:
+    """Entries in a row whose `anchor` lies at (`across`, `up`), inches from the lower left corner."""
     if entries:
+        left, bottom, _, _ = box(figure, across, up, 0, 0)
         figure.legend(
-            handles=entries, loc="lower right", bbox_to_anchor=(right / across, bottom / up), ncols=columns, frameon=False,
+            handles=entries, loc=anchor, bbox_to_anchor=(left, bottom), ncols=len(entries), frameon=False,
             fontsize=9.0, handlelength=1.5, handleheight=1.0, columnspacing=1.3, borderpad=0, borderaxespad=0,
         )
 

@@ -118,7 +118,8 @@ class View:
 
     def _letter_globe(self, ax: GeoAxes, meridians: list[float], parallels: list[float]) -> None:
         for lat in parallels:
-            self._text(ax, parallel(lat), -180.0, lat, (-5, 0), "right", "center")
+            heights = "center" if lat == 0 else "bottom" if lat > 0 else "top"
+            self._text(ax, parallel(lat), -180.0, lat, (-4, 0), "right", heights)
         for lon in meridians:
             if abs(lon) < 179:
                 self._text(ax, meridian(self.centre + lon), lon, -90.0, (0, -4), "center", "top")

@@ -28,8 +28,12 @@ class ReadingSettings(Settings):
     )
     phosphate: Amount | None = Field(None, description="'assume zero' or one amount everywhere, such as '0.5 umol kg-1'")
     silicate: Amount | None = Field(None, description="'assume zero' or one amount everywhere, such as '2 umol kg-1'")
-    depth: Literal["surface"] | None = Field(None, description="'surface': data without a vertical coordinate lie at 0 dbar")
-    units: dict[str, str] = Field(default_factory=dict, description="role: units, where the file gives none or the wrong ones")
+    depth: Literal["surface"] | None = Field(
+        None, description="'surface': data without a vertical coordinate lie at 0 dbar"
+    )
+    units: dict[str, str] = Field(
+        default_factory=dict, description="role (or depth): units, where the file gives none or the wrong ones"
+    )
     unusual_values: Literal["refuse", "accept"] = Field(
         "refuse", description="'accept': water far from sea water (rivers, brines, dosing) is meant"
     )

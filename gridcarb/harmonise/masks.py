@@ -1,0 +1,195 @@
+"""Missing values: recognised by attributes, by the defaults of the file format, and by physics; packed numbers unpacked.
+
+Rules, in the order they are applied to a value (the first that fits counts it): `nan`, `fill_value`, `missing_value`,
+`default_fill` (the NetCDF default of the type, declared or not), `usual_fill` (-999, -9999), `valid_range`,
+`beyond_physics` (1e15 and more in size); and for a whole cell `land`: salinity <= 0 together with alkalinity <= 0.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+import xarray as xr
+
+from gridcarb.errors import InputError
+
+RULES = ("nan", "fill_value", "missing_value", "default_fill", "usual_fill", "valid_range", "beyond_physics", "land")
+"""The rules by which a value or a cell is masked, in order."""
+
+DEFAULT_FILLS = {
+    "f4": 9.969209968386869e36, "f8": 9.969209968386869e36, "i2": -32767, "i4": -2147483647, "i8": -9223372036854775806,
+    "u2": 65535, "u4": 4294967295, "u8": 18446744073709551614,
+}
+"""NetCDF default fill values by type; bytes have none."""
+
+_RANGE_KEYS = ("valid_range", "valid_min", "valid_max")
+_USUAL = (-999.0, -9999.0)
+_BEYOND = 1e15
+
+Numbers = npt.NDArray[np.float64]
+Flags = npt.NDArray[np.bool_]
+
+
+@dataclass(frozen=True)
+class MaskReading:
+    """How one variable marks missing values, and how it is packed.
+
+    fills : (rule, value) in the packed numbers.
+    low, high : valid range, None where open; `range_unpacked` says in which numbers it is given.
+    scale, offset : unpacked = packed * scale + offset.
+    unsigned : the packed integers are to be taken as unsigned.
+    """
+
+    fills: tuple[tuple[str, float], ...] = ()
+    low: float | None = None
+    high: float | None = None
+    range_unpacked: bool = False
+    scale: float = 1.0
+    offset: float = 0.0
+    unsigned: bool = False
+
+
+def read_mask(variable: xr.DataArray, where: str) -> MaskReading:
+    """The mask and packing of a raw variable, from its type and attributes.
+
+    Raises InputError for attributes that are no numbers, and for text data.
+    """
+    dtype, attrs = variable.dtype, variable.attrs
+    if dtype.kind not in "fiu":
+        raise InputError(f"the data are of type {dtype}, not numbers", where=where,
+                         mend="name another variable in the recipe")
+    fills: dict[float, str] = {}
+    for rule, key in (("fill_value", "_FillValue"), ("missing_value", "missing_value")):
+        for value in _numbers(attrs, key, where):
+            fills.setdefault(value, rule)
+    code = f"{dtype.kind}{dtype.itemsize}"
+    if code in DEFAULT_FILLS and (dtype.kind == "f" or "_FillValue" not in attrs):
+        fills.setdefault(DEFAULT_FILLS[code], "default_fill")
+    low, high = _valid_range(attrs, where)
+    scale, offset = _one(attrs, "scale_factor", 1.0, where), _one(attrs, "add_offset", 0.0, where)
+    whole = not any(np.asarray(attrs[key]).dtype.kind == "f" for key in _RANGE_KEYS if key in attrs)
+    if whole and dtype.kind == "f":  # unpacked by the reader before it came here; the range still is in packed numbers
+        packing = variable.encoding
+        low, high = (
+            None if edge is None
+            else edge * _one(packing, "scale_factor", 1.0, where) + _one(packing, "add_offset", 0.0, where)
+            for edge in (low, high)
+        )
+    return MaskReading(
+        fills=tuple((rule, value) for value, rule in fills.items()), low=low, high=high, range_unpacked=not whole,
+        scale=scale, offset=offset, unsigned=dtype.kind == "i" and str(attrs.get("_Unsigned")).lower() == "true",
+    )
+
+
+def unmask(raw: npt.NDArray[Any], reading: MaskReading) -> tuple[Numbers, dict[str, Flags]]:
+    """Unpacked float64 numbers, NaN where missing, and for every rule met where it applied.
+
+    `raw` is any numeric array; a rule that met nothing is left out.
+    """
+    if reading.unsigned:
+        raw = raw.view(raw.dtype.str.replace("i", "u"))
+    packed = raw.astype(np.float64)
+    with np.errstate(over="ignore"):
+        numbers = packed if (reading.scale, reading.offset) == (1.0, 0.0) else packed * reading.scale + reading.offset
+    found: dict[str, Flags] = {}
+    gone = np.zeros(raw.shape, dtype=bool)
+    for rule, hit in _hits(raw, packed, numbers, reading):
+        fresh = hit & ~gone
+        if fresh.any():
+            found[rule] = found[rule] | fresh if rule in found else fresh
+            gone |= fresh
+    numbers[gone] = np.nan
+    return numbers, found
+
+
+def unmask_roles(
+    raw: xr.Dataset, readings: Mapping[str, MaskReading], roles: tuple[str, ...]
+) -> tuple[dict[str, xr.DataArray], dict[str, int]]:
+    """The roles of a loaded block as float64 numbers in the units of the file, land set to NaN in those that vary with it.
+
+    Returns them with the count for each of `RULES`: of the cells in which it took away the value of any role.
+    """
+    clean: dict[str, xr.DataArray] = {}
+    flags: dict[str, xr.DataArray] = {}
+    for role in roles:
+        variable = raw[role]
+        numbers, found = unmask(np.asarray(variable.values), readings[role])
+        clean[role] = xr.DataArray(numbers, dims=variable.dims)
+        for rule, hit in found.items():
+            mask = xr.DataArray(hit, dims=variable.dims)
+            flags[rule] = flags[rule] | mask if rule in flags else mask
+    land = (clean["salinity"] <= 0) & (clean["alkalinity"] <= 0)
+    if land.any():
+        flags["land"] = land
+        clean = {role: values.where(~land) if set(land.dims) <= set(values.dims) else values for role, values in clean.items()}
+    return clean, {rule: int(flags[rule].sum()) if rule in flags else 0 for rule in RULES}
+
+
+def _hits(
+    raw: npt.NDArray[Any], packed: Numbers, numbers: Numbers, reading: MaskReading
+) -> Iterator[tuple[str, Flags]]:
+    """Rule by rule, where it applies; rules that cannot apply to any of the numbers cost nothing."""
+    lowest = np.fmin.reduce(packed, axis=None, initial=np.inf)
+    highest = np.fmax.reduce(packed, axis=None, initial=-np.inf)
+    yield "nan", np.isnan(packed)
+    for rule, value in reading.fills:
+        if reading.unsigned or lowest - abs(value) * 1e-6 <= value <= highest + abs(value) * 1e-6:
+            yield rule, _equal(raw, value)
+    for value in _USUAL:
+        if raw.dtype.kind == "f" and lowest <= value:
+            yield "usual_fill", packed == value
+    judged = numbers if reading.range_unpacked else packed
+    if reading.low is not None:
+        yield "valid_range", judged < reading.low
+    if reading.high is not None:
+        yield "valid_range", judged > reading.high
+    if numbers is not packed or max(highest, -lowest) >= _BEYOND:
+        yield "beyond_physics", np.abs(numbers) >= _BEYOND
+
+
+def _equal(raw: npt.NDArray[Any], fill: float) -> Flags:
+    """Where packed numbers are the fill value, in their own type or as both round to single precision.
+
+    1e20 is not the same number in single and double precision, and files mix the two.
+    """
+    if raw.dtype.kind in "iu":
+        if not float(fill).is_integer():
+            return np.zeros(raw.shape, dtype=bool)
+        information = np.iinfo(raw.dtype)
+        whole = int(fill)
+        if whole < 0 and raw.dtype.kind == "u":
+            whole += 2 ** (8 * raw.dtype.itemsize)  # a signed fill on numbers taken as unsigned
+        inside = information.min <= whole <= information.max
+        return np.asarray(raw == whole) if inside else np.zeros(raw.shape, dtype=bool)
+    with np.errstate(over="ignore"):
+        return np.asarray(raw.astype(np.float32) == np.float32(fill)) if fill else np.asarray(raw == 0)
+
+
+def _numbers(attrs: Mapping[Any, Any], key: str, where: str) -> list[float]:
+    if key not in attrs or attrs[key] is None:
+        return []
+    try:
+        values = np.atleast_1d(np.asarray(attrs[key])).ravel()
+        found = [value.item() if value.dtype.kind in "iu" else float(value) for value in values]
+    except (TypeError, ValueError):
+        raise InputError(
+            f"the attribute {key} = {attrs[key]!r} is not a number", where=where, mend=f"correct {key} in the file"
+        ) from None
+    return [value for value in found if not np.isnan(value)]
+
+
+def _one(attrs: Mapping[Any, Any], key: str, default: float, where: str) -> float:
+    found = _numbers(attrs, key, where)
+    return float(found[0]) if found else default
+
+
+def _valid_range(attrs: Mapping[Any, Any], where: str) -> tuple[float | None, float | None]:
+    pair = _numbers(attrs, "valid_range", where)
+    if len(pair) == 2:
+        return pair[0], pair[1]
+    low, high = _numbers(attrs, "valid_min", where), _numbers(attrs, "valid_max", where)
+    return (low[0] if low else None), (high[0] if high else None)

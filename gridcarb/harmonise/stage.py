@@ -1,0 +1,200 @@
+"""The two steps of harmonising: `understand` a collection once, then `clothe` its blocks.
+
+After `clothe` every number is in the catalogue's units: in-situ temperature, practical salinity, sea pressure, amounts
+per kilogram of sea water.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Hashable, Mapping
+from typing import Any
+
+import numpy as np
+import xarray as xr
+
+from gridcarb.axes import Axes, find_axes
+from gridcarb.errors import InputError, Notice, did_you_mean
+from gridcarb.fields import FIELDS, REQUIRED_ROLES, ROLES
+from gridcarb.harmonise import amounts, depth, masks, nutrients, plausibility, salinity, temperature
+from gridcarb.harmonise.decisions import Decided, Understanding
+from gridcarb.harmonise.settings import ReadingSettings
+
+
+def understand(
+    raw: xr.Dataset, settings: ReadingSettings, *, file_attributes: Mapping[Hashable, Any] | None = None
+) -> Understanding:
+    """Decide how a collection is read, from its headers, its coordinates and a small sample.
+
+    Parameters
+    ----------
+    raw : variables named by role, numbers and attributes as in the files (lazy or loaded), coordinates loaded.
+    settings : the section `reading` of the recipe.
+    file_attributes : global attributes of the files; those of `raw` if left out.
+
+    Raises
+    ------
+    InputError, UnitsError : for whatever cannot be read safely; the message says which recipe line settles it.
+    """
+    attributes = raw.attrs if file_attributes is None else file_attributes
+    axes = find_axes(raw)
+    present = _present(raw, axes, settings)
+    draft, decided = _read_headers(raw, axes, present, settings, attributes)
+    decisions = [decision for part in decided for decision in part.decisions]
+    notices = [notice for part in decided for notice in part.notices]
+    sampled = _check_sample(raw, draft, settings)
+    return dataclasses.replace(draft, decisions=tuple(decisions), notices=(*notices, *sampled))
+
+
+def clothe(raw: xr.Dataset, understanding: Understanding) -> xr.Dataset:
+    """A loaded block, or any slice of the grid, as float64 numbers in canonical units.
+
+    Gives the keys temperature (degC, in situ), salinity (practical), pressure (dbar), dic, alkalinity, phosphate, silicate
+    (umol/kg) and, where amounts per volume were met, density (kg m-3); NaN where masked; dims in the order time, vertical,
+    horizontal. Pressure, a constant density and an assumed nutrient have no more dims than they vary over, down to none.
+    `attrs["masked_cells"]` counts the masked cells by rule. A cell's numbers do not depend on the slice it comes in.
+    """
+    clean, counts = masks.unmask_roles(raw, understanding.masks, _roles_read(understanding))
+    place = depth.locate(raw, understanding.axes, understanding.masks, understanding.place)
+    fields = _fields(clean, place, understanding)
+    order = [dim for dim in understanding.axes.order if dim in raw.dims]
+    variables = {
+        key: values.transpose(*(dim for dim in order if dim in values.dims)).assign_attrs(_attributes(key))
+        for key, values in fields.items()
+    }
+    return xr.Dataset(variables, coords=raw.coords, attrs={"masked_cells": counts})
+
+
+def _fields(clean: Mapping[str, xr.DataArray], place: depth.Place, understanding: Understanding) -> dict[str, xr.DataArray]:
+    kind_s, kind_t, rho = understanding.salinity.kind, understanding.temperature.kind, understanding.density
+    salt = understanding.salinity.to_grams_or_practical(clean["salinity"])
+    absolute = None
+    if kind_t != "in situ" or rho.kind == "in situ":
+        absolute = salinity.absolute_salinity(salt, kind_s, place)
+    celsius = understanding.temperature.to_celsius(clean["temperature"])
+    warm = temperature.in_situ(celsius, kind_t, absolute, place.pressure)
+    of_water = amounts.density(rho, absolute, warm, place.pressure)
+    fields = {
+        "temperature": warm,
+        "salinity": salinity.practical_salinity(salt, kind_s, place),
+        "pressure": place.pressure,
+    }
+    for role, reading in understanding.amounts.items():
+        fields[role] = amounts.per_kilogram(clean[role], reading, of_water)
+    for role, assumed in understanding.nutrients.items():
+        fields[role] = nutrients.constant(assumed, of_water)
+    if of_water is not None:
+        fields["density"] = of_water
+    return fields
+
+
+def _attributes(key: str) -> dict[str, object]:
+    if key == "density":
+        return {"long_name": "density by which amounts per volume were divided", "units": "kg m-3"}
+    return FIELDS[key].attributes()
+
+
+def _present(raw: xr.Dataset, axes: Axes, settings: ReadingSettings) -> tuple[str, ...]:
+    """The roles the data give; refuse missing ones, strange dims, and units stated for what is no role."""
+    present = tuple(role for role in ROLES if role in raw.data_vars)
+    absent = [role for role in REQUIRED_ROLES if role not in present]
+    if absent:
+        raise InputError(f"the data give no {' and no '.join(absent)}", where=", ".join(absent),
+                         mend=f"name the variable by `inputs: {{{absent[0]}: ...}}` in the recipe")
+    for role in present:
+        strange = [str(dim) for dim in raw[role].dims if dim not in axes.order]
+        if strange:
+            raise InputError(f"its dimension '{strange[0]}' is neither time nor vertical nor horizontal", where=role,
+                             mend="select one place along it, or give it a coordinate with CF attributes")
+    for word in settings.units:
+        if word not in (*ROLES, "depth"):
+            raise InputError(f"units are stated for '{word}', which is no role", where="reading.units",
+                             mend=did_you_mean(word, (*ROLES, "depth")))
+    return present
+
+
+def _read_headers(
+    raw: xr.Dataset, axes: Axes, present: tuple[str, ...], settings: ReadingSettings, attributes: Mapping[Hashable, Any]
+) -> tuple[Understanding, tuple[Decided[Any], ...]]:
+    """The understanding as far as headers and coordinates go, and what was decided, in order."""
+    marks = {role: masks.read_mask(raw[role], role) for role in present}
+    marks.update(depth.coordinate_masks(raw, axes))
+    names = {str(raw[role].attrs.get("standard_name", "")) for role in present}
+    place = depth.read_place(raw, axes, marks, settings, names)
+    deepest = place.reading.vertical.deepest
+    warm = temperature.read_temperature(raw["temperature"].attrs, settings, deepest, attributes)
+    salt = salinity.read_salinity(raw["salinity"].attrs, settings)
+    assumed = nutrients.read_nutrients(present, settings, deepest)
+    given = [role for role in present[2:] if role not in assumed.reading]
+    tracers = {role: amounts.read_amount(role, raw[role].attrs, settings) for role in given}
+    per_volume = {role: raw[role].attrs for role in given if tracers[role].reading.per_volume}
+    per_volume |= {role: {} for role, reading in assumed.reading.items() if reading.amount.per_volume}
+    rho = amounts.read_density(per_volume, settings, attributes)
+    draft = Understanding(
+        axes=axes, masks=marks, place=place.reading, temperature=warm.reading, salinity=salt.reading,
+        amounts={role: part.reading for role, part in tracers.items()}, density=rho.reading, nutrients=assumed.reading,
+    )
+    return draft, (warm, salt, place, *tracers.values(), rho, assumed)
+
+
+def _check_sample(
+    raw: xr.Dataset, draft: Understanding, settings: ReadingSettings
+) -> tuple[Notice, ...]:
+    """Look at small samples of the first time step, and refuse what is not plausible."""
+    roles = _roles_read(draft)
+    samples = _wet_samples(raw[list(roles)], draft)
+    pieces = [masks.unmask_roles(sample, draft.masks, roles) for sample in samples]
+    missing = [xr.broadcast(*(clean[role].isnull() for role in roles)) for clean, _ in pieces]
+    flat = {role: np.concatenate([part[n].values.ravel() for part in missing]) for n, role in enumerate(roles)}
+    notices = plausibility.check_masks(flat, settings)
+    clothed = [clothe(sample, draft) for sample in samples]
+    medians: dict[str, float] = {}
+    for role in roles:
+        values = np.concatenate([part[role].values.ravel() for part in clothed])
+        if not np.isnan(values).all():
+            medians[role] = float(np.nanmedian(values))
+    shallowest = min(float(part["pressure"].min()) for part in clothed)
+    plausibility.check_values(medians, shallowest, draft.amounts, settings)
+    return (*notices, *_mask_notices([counts for _, counts in pieces]))
+
+
+def _mask_notices(counts: list[dict[str, int]]) -> tuple[Notice, ...]:
+    """What was taken as missing although no attribute says so."""
+    notices: list[Notice] = []
+    if any(count["usual_fill"] for count in counts):
+        notices.append(Notice("usual_fill", "values of exactly -999 or -9999 are taken as missing; no attribute says so"))
+    if any(count["land"] for count in counts):
+        notices.append(Notice("land_by_physics", "cells with neither salinity nor alkalinity (both zero or less) are taken "
+                              "as land; no attribute says so"))
+    return tuple(notices)
+
+
+def _wet_samples(raw: xr.Dataset, draft: Understanding) -> list[xr.Dataset]:
+    """Loaded patches with water in them, or the first slab with any; InputError if the whole first step has none."""
+    axes = draft.axes
+    top = depth.top_level(raw, axes, draft.masks, draft.place)
+    spread = [_wet(raw, window, draft) for window in plausibility.patches(axes, raw.sizes, top)]
+    found = [piece for piece in spread if piece is not None]
+    if found:
+        return found
+    for window in plausibility.slabs(axes, raw.sizes):
+        piece = _wet(raw, window, draft)
+        if piece is not None:
+            return [piece]
+    raise InputError("no cell of the first time step has temperature, salinity, DIC and alkalinity: all is missing",
+                     where=", ".join(REQUIRED_ROLES), mend="check the variables, their fill values and their land masks")
+
+
+def _wet(raw: xr.Dataset, window: Mapping[str, slice], draft: Understanding) -> xr.Dataset | None:
+    """The loaded slice, if any cell of it has all required roles."""
+    piece = raw.isel({dim: part for dim, part in window.items() if dim in raw.dims}).load()
+    clean, _ = masks.unmask_roles(piece, draft.masks, REQUIRED_ROLES)
+    wet = xr.DataArray(True)
+    for values in clean.values():
+        wet = wet & values.notnull()
+    return piece if bool(wet.any()) else None
+
+
+def _roles_read(understanding: Understanding) -> tuple[str, ...]:
+    """The roles whose numbers come from the files."""
+    return tuple(role for role in ROLES if role in ("temperature", "salinity") or role in understanding.amounts)

@@ -63,7 +63,8 @@ def run(**words: Any) -> None:
     The result folder appears when the run is complete, never before.
     """
     prepared = faces.prepare(_recipe(**words))
-    watcher = progress.watcher(quiet=terminal().quiet)
+    wishes = terminal()
+    watcher = progress.watcher(quiet=wishes.quiet or wishes.as_json)  # a machine reads standard error too
     try:
         outcome = faces.conduct(prepared, watcher)
     finally:

@@ -58,47 +58,56 @@ def changed(old: str, new: str) -> str:
     ("{variable: thetao}", "{variabel: thetao}", 5, "inputs.temperature.variabel", "no key", "'variable'"),
     ("{variable: thetao}", "7", 5, "inputs.temperature", "7 is not a section", "files, variable"),
     ("temperature: potential", "temperature: potental", 7, "reading.temperature", "'potental' is not", "mean 'potential'"),
-    ("temperature: potential", "density: heavy", 7, "reading.density", "'heavy' cannot be understood", "1026 kg m-3"),
-    ("temperature: potential", "mask_difference: 2", 7, "reading.mask_difference", "at most 1", "share of wet cells"),
-    ("temperature: potential", "mask_difference: -1", 7, "reading.mask_difference", "at least 0", "share of wet cells"),
-    ("temperature: potential", "mask_difference: few", 7, "reading.mask_difference", "'few' is not a number", "share"),
-    ("temperature: potential", "units: [mol m-3]", 7, "reading.units", "a list is not a section", "role: units"),
-    ("temperature: potential", "units: {dic: [1]}", 7, "reading.units.dic", "a list is not text", "role: units"),
+    ("temperature: potential", "density: heavy", 7, "reading.density", "'heavy' cannot be understood", "density: "),
+    ("temperature: potential", "mask_difference: 2", 7, "reading.mask_difference", "at most 1", "mask_difference: "),
+    ("temperature: potential", "mask_difference: -1", 7, "reading.mask_difference", "at least 0", "mask_difference: "),
+    ("temperature: potential", "mask_difference: few", 7, "reading.mask_difference", "'few' is not a number", "mask_"),
+    ("temperature: potential", "units: [mol m-3]", 7, "reading.units", "a list is not a section", "units: "),
+    ("temperature: potential", "units: {dic: [1]}", 7, "reading.units.dic", "a list is not text", "units: "),
     ("guide2007", "guide2070", 9, "chemistry.constants", "no set of constants 'guide2070'", "'guide2007'"),
     ("[ph_total_scale,", "[ph_total_scal, ph_total_scale,", 10, "chemistry.fields[0]", "no field", "'ph_total_scale'"),
     ("[ph_total_scale,", "[dic, ph_total_scale,", 10, "chemistry.fields[0]", "an input", "remove"),
     ("[ph_total_scale,", "[ph_total_scale, ph_total_scale,", 10, "chemistry.fields", "more than once", "once"),
     ("  fields: [ph_total_scale, aragonite_saturation]\n", "", 8, "chemistry.fields", "missing in chemistry", "'all'"),
-    ("  folder: ../results/first", "  netcdf: false", 11, "output.folder", "missing in output", "result folder"),
+    ("  folder: ../results/first", "  netcdf: false", 11, "output.folder", "missing in output", "write `folder: ...`"),
     ("  folder: ../results/first", "  folder:", 12, "output.folder", "nothing is written", "write text"),
     ("  folder: ../results/first", "  folder: .", 12, "output.folder", "holds the recipe", "folder of the result's own"),
     ("  folder: ../results/first", "  folder: ..", 12, "output.folder", "holds the recipe", "folder of the result's own"),
-    ("  folder: ../results/first", "  folder: x\n  netcdf: maybe", 13, "output.netcdf", "not true or false", "export"),
+    ("  folder: ../results/first", "  folder: x\n  netcdf: maybe", 13, "output.netcdf", "not true or false", "netcdf: "),
     ("  folder: ../results/first", "  folder: x\n  zarr_format: 4", 13, "output.zarr_format", "4 is not accepted", "2, 3"),
-    ("  folder: ../results/first", "  folder: x\n  attributes: {a: [1]}", 13, "output.attributes.a", "or a number", "global"),
+    ("  folder: ../results/first", "  folder: x\n  attributes: {a: []}", 13, "output.attributes.a", "or a number", "attributes"),
     ("kind: map, ", "", 14, "figures[0]", "kind of figure is missing", "one of: map"),
     ("kind: map", "kind: mapp", 14, "figures[0].kind", "no figure 'mapp'", "'map'"),
     ("  - {kind: map, field: ph_total_scale, depth: 0}", "  - map", 14, "figures[0]", "'map' is not a section", "figures"),
     ("  - {kind: map, field: ph_total_scale, depth: 0}", "  kind: map", 13, "figures", "not a list", "- "),
     ("depth: 0", "depht: 0", 14, "figures[0].depht", "no key 'depht' in figures[0]", "'depth'"),
-    ("depth: 0", "depth: deep", 14, "figures[0].depth", "'deep' is not a number", "below the surface"),
-    ("depth: 0", "time: [1]", 14, "figures[0].time", "a list is not text or a whole number", "'first'"),
-    ("depth: 0", "region: [1, 2]", 14, "figures[0].region", "too few", "west, east"),
-    ("depth: 0", "region: [1, 2, 3, 4, 5]", 14, "figures[0].region", "at most 4", "west, east"),
-    ("depth: 0", "region: [1, 2, 30, 4]", 14, "figures[0].region", "south < north", "west, east"),
+    ("depth: 0", "depth: deep", 14, "figures[0].depth", "'deep' is not a number", "depth: "),
+    ("depth: 0", "time: [1]", 14, "figures[0].time", "a list is not text or a whole number", "time: "),
+    ("depth: 0", "region: [1, 2]", 14, "figures[0].region", "too few", "region: "),
+    ("depth: 0", "region: [1, 2, 3, 4, 5]", 14, "figures[0].region", "at most 4", "region: "),
+    ("depth: 0", "region: [1, 2, 30, 4]", 14, "figures[0].region", "south < north", "region: "),
     ("field: ph_total_scale, ", "field: co2_fugacity, ", 14, "figures[0].field", "not computed", "add co2_fugacity"),
     ("field: ph_total_scale, ", "field: ph_totalscale, ", 14, "figures[0].field", "not a field of", "'ph_total_scale'"),
-    ("workers: 2", "workers: 0", 16, "engine.workers", "at least 1", "blocks computed"),
-    ("workers: 2", "workers: 1.5", 16, "engine.workers", "1.5 is not a whole number", "blocks computed"),
-    ("workers: 2", "workers: true", 16, "engine.workers", "true is not a whole number", "blocks computed"),
-    ("workers: 2", "memory: much", 16, "engine.memory", "'much' cannot be understood", "'2 GB'"),
-    ("workers: 2", "block: {time: 0}", 16, "engine.block.time", "at least 1", "time steps"),
+    ("workers: 2", "workers: 0", 16, "engine.workers", "at least 1", "workers: "),
+    ("workers: 2", "workers: 1.5", 16, "engine.workers", "1.5 is not a whole number", "workers: "),
+    ("workers: 2", "workers: true", 16, "engine.workers", "true is not a whole number", "workers: "),
+    ("workers: 2", "memory: much", 16, "engine.memory", "'much' cannot be understood", "memory: "),
+    ("workers: 2", "block: {time: 0}", 16, "engine.block.time", "at least 1", "time: "),
 ])
 def test_each_kind_of_fault(*, old, new, line, key, what, mend):
     faults = faults_of(changed(old, new))
     assert [(fault.line, fault.key) for fault in faults] == [(line, key)]
     assert what in faults[0].what
     assert mend in faults[0].mend
+
+
+@pytest.mark.parametrize(("wrong", "key"), [
+    ("output: {netcdf: maybe}", "output.netcdf"), ("reading: {density: heavy}", "reading.density"),
+    ("engine: {block: {time: 0}}", "engine.block.time"), ("figures: [{kind: map, depth: deep}]", "figures[map].depth"),
+])
+def test_the_mend_speaks_with_the_declaration(wrong, key):
+    description = next(row.description for row in reference() if row.key == key)
+    assert any(fault.mend.endswith(f": {description}") for fault in faults_of(f"recipe: 1\n{wrong}\n"))
 
 
 def test_sections_that_must_be_there():

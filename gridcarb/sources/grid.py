@@ -1,0 +1,132 @@
+"""Whether two files lie on the same grid: positions within 1e-4 degrees, levels within 1e-3 of their depth."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from gridcarb.axes import Axes
+from gridcarb.errors import InputError
+from gridcarb.sources.headers import Header
+
+_DEGREES = 1e-4
+_DEPTH = 1e-3
+_MISSING = 1e10
+"""Positions beyond this are fill values, whatever the attributes say."""
+
+_METRES = frozenset({"m", "meter", "meters", "metre", "metres"})
+
+
+@dataclass(frozen=True)
+class Grid:
+    """One variable on the grid of one file."""
+
+    header: Header
+    variable: str
+    axes: Axes
+
+    @classmethod
+    def of(cls, header: Header, variable: str) -> Grid:
+        """The grid a variable lies on, from the header of its file."""
+        return cls(header, variable, header.axes_of(variable))
+
+    def size(self, dim: str | None) -> int:
+        """Number of steps along a dimension of the variable; 0 if there is none."""
+        head = self.header.heads[self.variable]
+        return head.shape[head.dims.index(dim)] if dim in head.dims else 0
+
+    def values(self, name: str | None) -> npt.NDArray[Any] | None:
+        """Values of a coordinate (whole or sampled), as float64."""
+        found = self.header.values.get(name) if name else None
+        return None if found is None else found.astype(np.float64)
+
+    def attribute(self, name: str | None, key: str) -> str:
+        """An attribute of a coordinate, '' where absent."""
+        return str(self.header.heads[name].attrs.get(key, "")).strip() if name else ""
+
+
+def refuse_difference(role: str, grid: Grid, reference_name: str, reference: Grid) -> None:
+    """Refuse `grid` unless it agrees with `reference` in everything both of them say.
+
+    A file without positions of its own is taken to lie on the reference grid when the sizes agree.
+
+    Raises
+    ------
+    InputError : other dimensions, sizes, positions, levels, or units of the levels.
+    """
+    what = _other_shape(grid, reference) or _other_positions(grid, reference) or _other_levels(grid, reference)
+    if what:
+        raise InputError(
+            f"the grid differs from that of {reference_name} in {reference.header.path}: {what}",
+            where=f"{grid.header.path}: {grid.variable} ({role})",
+            mend=f"give {role} on the grid of {reference_name}; gridcarb does not interpolate",
+        )
+
+
+def _other_shape(grid: Grid, reference: Grid) -> str:
+    ours, theirs = grid.axes, reference.axes
+    if bool(ours.vertical) != bool(theirs.vertical):
+        bare, full = (grid, reference) if theirs.vertical else (reference, grid)
+        return f"'{bare.variable}' has no levels, '{full.variable}' has {full.size(full.axes.vertical)}"
+    if len(ours.horizontal) != len(theirs.horizontal):
+        return f"horizontal dimensions are {ours.horizontal or 'none'}, not {theirs.horizontal or 'none'}"
+    pairs = [("levels", ours.vertical, theirs.vertical)]
+    pairs += [("cells along " + str(b), a, b) for a, b in zip(ours.horizontal, theirs.horizontal, strict=True)]
+    for noun, own, other in pairs:
+        if grid.size(own) != reference.size(other):
+            return f"{grid.size(own)} {noun}, not {reference.size(other)}"
+    return ""
+
+
+def _other_positions(grid: Grid, reference: Grid) -> str:
+    for noun, own, other in (
+        ("latitudes", grid.axes.latitude, reference.axes.latitude),
+        ("longitudes", grid.axes.longitude, reference.axes.longitude),
+    ):
+        ours, theirs = grid.values(own), reference.values(other)
+        if ours is None or theirs is None:
+            continue
+        if ours.shape != theirs.shape:
+            return f"{noun} have the shape {ours.shape}, not {theirs.shape}"
+        both = _present(ours) & _present(theirs)
+        off = np.abs(ours - theirs)[both]
+        if off.size and float(off.max()) > _DEGREES:
+            return f"{noun} are up to {float(off.max()):.6g} degrees off{_likely_reason(ours, theirs)}"
+    return ""
+
+
+def _likely_reason(ours: npt.NDArray[Any], theirs: npt.NDArray[Any]) -> str:
+    """Words for the usual ways in which the same positions stand in another order."""
+    if np.allclose(ours[::-1], theirs, rtol=0, atol=_DEGREES):
+        return " (they run the other way)"
+    if np.allclose(ours % 360.0, theirs % 360.0, rtol=0, atol=_DEGREES):
+        return " (they are counted from another meridian)"
+    if np.allclose(np.sort(ours % 360.0, axis=None), np.sort(theirs % 360.0, axis=None), rtol=0, atol=_DEGREES):
+        return " (they begin at another meridian)"
+    return ""
+
+
+def _other_levels(grid: Grid, reference: Grid) -> str:
+    own, other = grid.axes.vertical_coordinate, reference.axes.vertical_coordinate
+    ours, theirs = grid.values(own), reference.values(other)
+    if ours is None or theirs is None:
+        return ""
+    if ours.shape != theirs.shape:
+        return f"levels have the shape {ours.shape}, not {theirs.shape}"
+    for key in ("units", "positive"):
+        one, two = grid.attribute(own, key).lower(), reference.attribute(other, key).lower()
+        if one and two and one != two and not {one, two} <= _METRES:
+            return f"levels have {key} '{one}', not '{two}'"
+    both = _present(ours) & _present(theirs)
+    off = np.abs(ours - theirs)[both] > _DEPTH * np.maximum(np.abs(theirs[both]), 1.0)
+    if not np.any(off):
+        return ""
+    level = int(np.argmax(off))
+    return f"level {level + 1} is {ours[both][level]:.6g}, not {theirs[both][level]:.6g}"
+
+
+def _present(values: npt.NDArray[Any]) -> npt.NDArray[np.bool_]:
+    return np.asarray(np.isfinite(values) & (np.abs(values) < _MISSING))

@@ -1,0 +1,104 @@
+"""A bounded number of open files for the whole process, and the one way to read from them.
+
+Nothing here is ever pickled: arrays carry paths, and a worker process fills its own handles.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import os
+import threading
+from collections import OrderedDict
+from collections.abc import Iterator
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+import xarray as xr
+
+from gridcarb.errors import InputError
+from gridcarb.netcdf_lock import NETCDF_LOCK
+from gridcarb.sources.storage import open_raw, stamp, storage_kind, unreadable
+
+LIMIT = 32
+"""Most files of one kind held open at a time."""
+
+Key = tuple[Any, ...]
+"""One integer, slice or 1-D integer array for each dimension; arrays select each dimension by itself."""
+
+
+class Handles:
+    """Open datasets by path, the least recently used closed first; a file that changed since is opened anew."""
+
+    def __init__(self, lock: threading.RLock, limit: int = LIMIT) -> None:  # type: ignore[valid-type, unused-ignore]
+        self.lock = lock
+        self.limit = limit
+        self._open: OrderedDict[str, tuple[tuple[int, int], xr.Dataset]] = OrderedDict()
+
+    def __len__(self) -> int:
+        return len(self._open)
+
+    def dataset(self, path: str) -> xr.Dataset:
+        """The open dataset; the caller holds the lock while it uses it, unless the kind needs none."""
+        with self.lock:
+            now = stamp(path)
+            held = self._open.pop(path, None)
+            if held is not None and held[0] != now:
+                held[1].close()
+                held = None
+            while len(self._open) >= self.limit:
+                self._open.popitem(last=False)[1][1].close()
+            self._open[path] = held or (now, open_raw(path))
+            return self._open[path][1]
+
+    def close(self) -> None:
+        """Close everything."""
+        with self.lock:
+            while self._open:
+                self._open.popitem()[1][1].close()
+
+    def forget(self) -> None:
+        """After a fork: the parent's handles are not the child's to use or to close."""
+        self._open = OrderedDict()
+
+
+NETCDF_HANDLES = Handles(NETCDF_LOCK)
+ZARR_HANDLES = Handles(threading.RLock())
+if hasattr(os, "register_at_fork"):
+    os.register_at_fork(after_in_child=NETCDF_HANDLES.forget)
+    os.register_at_fork(after_in_child=ZARR_HANDLES.forget)
+
+
+def read(path: str, variable: str, key: Key) -> npt.NDArray[Any]:
+    """The part `key` of one variable, as stored.
+
+    Raises
+    ------
+    InputError : the file is gone, damaged, or no longer holds the variable.
+    """
+    try:
+        zarr = os.path.isdir(path)
+        handles = ZARR_HANDLES if zarr else NETCDF_HANDLES
+        # NetCDF is read under the lock of the whole process; Zarr reads run side by side.
+        with contextlib.nullcontext() if zarr else handles.lock:
+            return np.asarray(handles.dataset(path).variables[variable][key].values)
+    except InputError:
+        raise
+    except KeyError:
+        raise InputError(f"the variable '{variable}' is no longer there", where=path, mend="run again") from None
+    except (OSError, RuntimeError, ValueError) as error:
+        raise unreadable(f"{path}: {variable}", error) from error
+
+
+def close_all() -> None:
+    """Close every file this process still holds open for reading."""
+    NETCDF_HANDLES.close()
+    ZARR_HANDLES.close()
+
+
+@contextlib.contextmanager
+def opened(path: str) -> Iterator[xr.Dataset]:
+    """The dataset behind `path` for a look at its header, closed afterwards."""
+    zarr = storage_kind(path) == "zarr"
+    with ZARR_HANDLES.lock if zarr else NETCDF_LOCK, open_raw(path) as dataset:
+        yield dataset

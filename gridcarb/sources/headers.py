@@ -1,0 +1,144 @@
+"""What the header of one file says, as plain data, with the coordinate values needed to compare grids."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+import xarray as xr
+
+from gridcarb.axes import Axes, find_axes
+from gridcarb.errors import InputError
+from gridcarb.sources.collection import FileRecord
+from gridcarb.sources.handles import opened
+from gridcarb.sources.storage import fingerprint, stamp
+
+_SMALL = 20_000
+_LINE = 1_000_000
+"""Coordinates up to so many values are read whole (of one dimension, or with two bounds); larger ones are sampled."""
+
+POINTERS = ("coordinates", "bounds", "climatology")
+
+
+@dataclass(frozen=True)
+class Head:
+    """One variable without its values."""
+
+    name: str
+    dims: tuple[str, ...]
+    shape: tuple[int, ...]
+    dtype: np.dtype[Any]
+    attrs: Mapping[str, Any]
+    chunks: tuple[int, ...] | None = None
+
+
+@dataclass(frozen=True)
+class Header:
+    """One file: its variables, global attributes, and the values (whole or sampled) of its small coordinates."""
+
+    path: str
+    heads: Mapping[str, Head]
+    attrs: Mapping[str, Any]
+    values: Mapping[str, npt.NDArray[Any]]
+    record: FileRecord
+
+    def place(self, variable: str) -> str:
+        """File and variable, for errors; a dataset in memory has no path."""
+        return f"{self.path}: {variable}" if self.path else variable
+
+    def whole(self, name: str) -> npt.NDArray[Any] | None:
+        """The values of a coordinate, if all of them were read."""
+        found = self.values.get(name)
+        return found if found is not None and found.shape == self.heads[name].shape else None
+
+    def coordinates_of(self, variable: str) -> list[str]:
+        """Variables that may be coordinates (or bounds) of `variable`: pointed at, or small enough in dimensions."""
+        own = self.heads[variable]
+        pointed = {*words(own.attrs.get("coordinates")), *own.dims}
+        found = [
+            name for name, head in self.heads.items()
+            if name != variable and set(head.dims) <= set(own.dims) and (name in pointed or len(head.dims) <= 2)
+        ]
+        bounds = [words(self.heads[name].attrs.get(key)) for name in found for key in POINTERS[1:]]
+        return list(dict.fromkeys([*found, *(name for names in bounds for name in names if name in self.heads)]))
+
+    def skeleton(self, variable: str) -> xr.Dataset:
+        """`variable` and its possible coordinates, without values and without room for them."""
+        names = self.coordinates_of(variable)
+        hollow = {name: _hollow(self.heads[name], keep_pointers=name == variable) for name in (variable, *names)}
+        return xr.Dataset({variable: hollow.pop(variable)}).assign_coords(_without_indexes(hollow))
+
+    def axes_of(self, variable: str) -> Axes:
+        """The axes of one variable; errors name the file too."""
+        try:
+            return find_axes(self.skeleton(variable))
+        except InputError as error:
+            raise InputError(error.what, where=self.place(variable), mend=error.mend) from None
+
+
+def words(text: object) -> list[str]:
+    """The words of an attribute that lists variables."""
+    return text.split() if isinstance(text, str) else []
+
+
+def read_header(path: str) -> Header:
+    """Open a file, note what its header says and the values of its coordinates, close it.
+
+    Raises
+    ------
+    InputError : missing, not NetCDF or Zarr, damaged or cut short.
+    """
+    with opened(path) as dataset:
+        heads = heads_of(dataset)
+        values = {name: _values(dataset.variables[name]) for name in _coordinate_names(heads)}
+        size, changed = stamp(path)
+        record = FileRecord(path, size, changed, fingerprint(path))
+        return Header(path, heads, dict(dataset.attrs), values, record)
+
+
+def heads_of(dataset: xr.Dataset) -> dict[str, Head]:
+    """The variables of an open dataset, or of one in memory."""
+    found = {}
+    for name, variable in dataset.variables.items():
+        dims = tuple(str(dim) for dim in variable.dims)
+        chunks = variable.encoding.get("chunksizes") or variable.encoding.get("chunks")
+        attrs = {**_moved_by_decoding(variable), **variable.attrs}
+        found[str(name)] = Head(str(name), dims, variable.shape, variable.dtype, attrs, tuple(chunks) if chunks else None)
+    return found
+
+
+def _moved_by_decoding(variable: xr.Variable) -> dict[str, Any]:
+    return {key: variable.encoding[key] for key in ("coordinates", "grid_mapping") if key in variable.encoding}
+
+
+def _coordinate_names(heads: Mapping[str, Head]) -> list[str]:
+    """Variables whose values tell one grid or time axis from another."""
+    pointed = {word for head in heads.values() for key in POINTERS for word in words(head.attrs.get(key))}
+    spherical = {name for name, head in heads.items() if head.attrs.get("standard_name") in ("latitude", "longitude")}
+    return [
+        name for name, head in heads.items()
+        if head.dtype.kind in "iufb" and (len(head.dims) <= 1 or name in pointed | spherical)
+    ]
+
+
+def _values(variable: xr.Variable) -> npt.NDArray[Any]:
+    """All values, or three slabs of a large coordinate: first, middle, last."""
+    line = variable.ndim == 1 or (variable.ndim == 2 and variable.shape[-1] == 2)
+    if variable.size <= (_LINE if line else _SMALL):
+        return np.asarray(variable.values)
+    length, thick = variable.shape[0], 1000 if variable.ndim == 1 else 1
+    starts = (0, (length - thick) // 2, length - thick)
+    return np.concatenate([variable[start:start + thick].values for start in starts])
+
+
+def _hollow(head: Head, keep_pointers: bool) -> xr.Variable:
+    """A variable of the right shape and attributes that takes no memory."""
+    attrs = {key: value for key, value in head.attrs.items() if keep_pointers or key != "coordinates"}
+    return xr.Variable(head.dims, np.broadcast_to(np.zeros((), head.dtype), head.shape), attrs)
+
+
+def _without_indexes(variables: Mapping[str, xr.Variable]) -> xr.Coordinates:
+    return xr.Coordinates(variables, indexes={})

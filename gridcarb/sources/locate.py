@@ -1,0 +1,46 @@
+"""From the words of a recipe to paths."""
+
+from __future__ import annotations
+
+import glob
+import os
+from collections.abc import Sequence
+from pathlib import Path
+
+from gridcarb.errors import InputError
+
+
+def locate(patterns: Sequence[str], base: Path) -> list[str]:
+    """Absolute paths of all files and stores meant, each once, in the order given (globs sorted).
+
+    Parameters
+    ----------
+    patterns : paths or globs (`**` crosses folders), relative to `base`; `~` is the home folder.
+
+    Raises
+    ------
+    InputError : a glob without a match, or a path with nothing there.
+    """
+    found: dict[str, None] = {}
+    for pattern in patterns:
+        full = str(base.absolute() / Path(pattern).expanduser())
+        if Path(full).exists():
+            matches = [full]
+        elif glob.has_magic(full):
+            matches = sorted(glob.glob(full, recursive=True))
+        else:
+            raise InputError("there is no such file", where=full, mend=_near(full))
+        if not matches:
+            raise InputError(f"no file matches '{pattern}'", where=full, mend=_near(full))
+        found.update(dict.fromkeys(str(Path(match).resolve()) for match in matches))
+    return list(found)
+
+
+def _near(full: str) -> str:
+    """What is there instead, as far up as something exists."""
+    folder = Path(full).parent
+    while glob.has_magic(str(folder)) or not folder.exists():
+        folder = folder.parent
+    names = sorted(name for name in os.listdir(folder) if not name.startswith("."))[:8] if folder.is_dir() else []
+    listing = f"; {folder} holds {', '.join(names)}" if names else f"; {folder} holds nothing"
+    return "correct `inputs: files` in the recipe (paths are relative to it)" + listing

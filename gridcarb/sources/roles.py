@@ -1,0 +1,205 @@
+"""Which variable plays which role: by CF standard name first, then by the names of the conventions, or as told."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import xarray as xr
+
+from gridcarb.errors import InputError, Notice, UnknownWordError, did_you_mean
+from gridcarb.fields import REQUIRED_ROLES, ROLES
+from gridcarb.sources.collection import FileRecord
+from gridcarb.sources.conventions import CONVENTIONS
+from gridcarb.sources.headers import POINTERS, Head, Header, heads_of, words
+
+TOLD = "as told"
+
+
+@dataclass(frozen=True)
+class Candidate:
+    """A variable that can play a role: how it was recognised, its levels (0: no vertical dimension), its files."""
+
+    variable: str
+    order: int
+    how: str
+    levels: int
+    headers: tuple[Header, ...]
+
+    @property
+    def head(self) -> Head:
+        """The variable as the first of its files has it."""
+        return self.headers[0].heads[self.variable]
+
+    def describe(self) -> str:
+        """For the question which of several it is to be."""
+        said = str(self.head.attrs.get("standard_name") or self.head.attrs.get("long_name") or "")
+        levels = f"{self.levels} levels" if self.levels else "no levels"
+        return f"'{self.variable}' ({said + ', ' if said else ''}{levels})"
+
+
+def role_of_standard_name(standard_name: object) -> str | None:
+    """The role a CF standard name stands for."""
+    for convention in CONVENTIONS.values():
+        if convention.attribute == "standard_name":
+            for role, known in convention.words.items():
+                if standard_name in known:
+                    return role
+    return None
+
+
+def candidates(role: str, headers: Sequence[Header]) -> list[Candidate]:
+    """The variables known best as `role` in any of the files; several if they are known equally well."""
+    found: dict[str, tuple[int, str]] = {}
+    for header in headers:
+        pointed = {word for head in header.heads.values() for key in POINTERS for word in words(head.attrs.get(key))}
+        for name, head in header.heads.items():
+            match = _match(role, head)
+            if match and name not in found and name not in pointed and name not in head.dims:
+                found[name] = match
+    best = min((order for order, _ in found.values()), default=0)
+    return [_candidate(name, order, how, headers) for name, (order, how) in found.items() if order == best]
+
+
+def _match(role: str, head: Head) -> tuple[int, str] | None:
+    """Rank and manner in which a variable is known as `role`; a standard name of something else rules names out."""
+    if head.dtype.kind not in "iuf":
+        return None
+    standard_name = head.attrs.get("standard_name")
+    for convention in sorted(CONVENTIONS.values(), key=lambda entry: entry.order):
+        by_name = convention.attribute == "name"
+        word = head.name.lower() if by_name else standard_name
+        if word in convention.words.get(role, ()) and not (by_name and standard_name):
+            return convention.order, convention.how()
+    return None
+
+
+def _candidate(name: str, order: int, how: str, headers: Sequence[Header]) -> Candidate:
+    holders = tuple(header for header in headers if name in header.heads)
+    vertical = holders[0].axes_of(name).vertical
+    head = holders[0].heads[name]
+    levels = head.shape[head.dims.index(vertical)] if vertical else 0
+    return Candidate(name, order, how, levels, holders)
+
+
+def told(role: str, name: str, headers: Sequence[Header]) -> Candidate:
+    """The variable the user named.
+
+    Raises
+    ------
+    InputError : it is in none of the files, or its standard_name says it is another role.
+    """
+    where = _files(headers)
+    if not any(name in header.heads for header in headers):
+        known = sorted({known for header in headers for known in _fields_of(header)})
+        raise InputError(
+            f"there is no variable '{name}' to be the {role}", where=where,
+            mend=f"correct `inputs: {{{role}: {name}}}` in the recipe; {did_you_mean(name, known)}",
+        )
+    candidate = _candidate(name, 0, TOLD, headers)
+    other = role_of_standard_name(candidate.head.attrs.get("standard_name"))
+    if other and other != role:
+        raise InputError(
+            f"the recipe says '{name}' is the {role}, but its standard_name "
+            f"'{candidate.head.attrs['standard_name']}' says {other}",
+            where=candidate.headers[0].place(name),
+            mend=f"write `inputs: {{{other}: {name}}}` (are two roles swapped?), or correct the standard_name",
+        )
+    return candidate
+
+
+def _fields_of(header: Header) -> list[str]:
+    """Variables that are no coordinates."""
+    pointed = {word for head in header.heads.values() for key in POINTERS for word in words(head.attrs.get(key))}
+    return [name for name, head in header.heads.items() if name not in pointed and head.dims and name not in head.dims]
+
+
+def settle(groups: Mapping[str, Sequence[Header]], names: Mapping[str, str]) -> tuple[dict[str, Candidate], list[Notice]]:
+    """One variable for every role that has one.
+
+    Parameters
+    ----------
+    groups : role -> headers of the files it may lie in.
+    names : role -> variable, as the user told.
+
+    Raises
+    ------
+    InputError : nothing is known as a role that is needed, or two variables are known equally well.
+    """
+    found = {
+        role: [told(role, names[role], headers)] if role in names else candidates(role, headers)
+        for role, headers in groups.items()
+    }
+    _refuse_missing([role for role in REQUIRED_ROLES if not found.get(role)], groups)
+    found, notices = _of_one_depth(found)
+    chosen = {role: _only(role, found[role]) for role in ROLES if found.get(role)}
+    notices += [
+        Notice("role-by-name", f"{role} is '{one.variable}', recognised {one.how}: it has no standard_name",
+               f"inputs: {{{role}: {one.variable}}}")
+        for role, one in chosen.items() if one.how.startswith("by name")
+    ]
+    return chosen, notices
+
+
+def _of_one_depth(found: dict[str, list[Candidate]]) -> tuple[dict[str, list[Candidate]], list[Notice]]:
+    """Water columns where every needed role has one, else surface fields: never a mixture."""
+    deep = all(any(one.levels for one in found[role]) for role in REQUIRED_ROLES)
+    kept, notices = {}, []
+    for role, several in found.items():
+        fitting = [one for one in several if bool(one.levels) == deep or one.how == TOLD]
+        aside = [one for one in several if one not in fitting]
+        kept[role] = several if role in REQUIRED_ROLES and not fitting else fitting
+        if aside and kept[role] is fitting:
+            names = ", ".join(f"'{one.variable}'" for one in aside)
+            reason = "has no levels while the other roles have" if deep else "has levels while other roles have none"
+            state = f"inputs: {{{role}: {fitting[0].variable}}}" if fitting else f"reading: {{{role}: ...}}"
+            notices.append(Notice("left-aside", f"{names} was not taken as {role}: it {reason}", state))
+    return kept, notices
+
+
+def _only(role: str, several: Sequence[Candidate]) -> Candidate:
+    if len(several) == 1:
+        return several[0]
+    lines = " or ".join(f"`inputs: {{{role}: {one.variable}}}`" for one in several)
+    raise InputError(
+        f"{len(several)} variables could be the {role}: " + ", ".join(one.describe() for one in several),
+        where="; ".join(dict.fromkeys(_files(one.headers) for one in several)), mend=f"write {lines} in the recipe",
+    )
+
+
+def _refuse_missing(missing: Sequence[str], groups: Mapping[str, Sequence[Header]]) -> None:
+    if not missing:
+        return
+    headers = [header for role in missing for header in groups[role]]
+    there = sorted({name for header in headers for name in _fields_of(header)})
+    raise InputError(
+        f"no variable is known as {' or '.join(missing)}", where=_files(headers),
+        mend="name it, for example `inputs: {" + missing[0] + ": NAME}` in the recipe, or add its files; the files hold: "
+        + ", ".join(there[:30]) + (" ..." if len(there) > 30 else ""),
+    )
+
+
+def _files(headers: Sequence[Header]) -> str:
+    paths = list(dict.fromkeys(header.path for header in headers if header.path))
+    return ", ".join(paths[:2]) + (f" and {len(paths) - 2} more" if len(paths) > 2 else "")
+
+
+def find_roles(ds: xr.Dataset, names: Mapping[str, str] | None = None) -> dict[str, str]:
+    """Role -> variable name in a dataset in memory (decoded or raw), by the same rules as for files.
+
+    Parameters
+    ----------
+    ds : any dataset; only its header is read.
+    names : role -> variable name where the rules do not find it.
+
+    Raises
+    ------
+    UnknownWordError : `names` speaks of something that is no role.
+    InputError : a needed role has no variable, two, or one whose standard_name contradicts.
+    """
+    for word in names or {}:
+        if word not in ROLES:
+            raise UnknownWordError(f"there is no role '{word}'", mend=did_you_mean(word, ROLES))
+    header = Header("", heads_of(ds), ds.attrs, {}, FileRecord("", 0, 0, ""))
+    chosen, _ = settle(dict.fromkeys(ROLES, (header,)), names or {})
+    return {role: one.variable for role, one in chosen.items()}

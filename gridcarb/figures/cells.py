@@ -7,6 +7,7 @@ a projection: longitudes are degrees east of the central meridian, cut at -180 a
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -39,7 +40,7 @@ class Mesh:
     x_cells: Indices
     y_cells: Indices
 
-    def spread(self, cells: npt.NDArray[np.generic], fill: object) -> npt.NDArray[np.generic]:
+    def spread(self, cells: npt.NDArray[Any], fill: float | bool) -> npt.NDArray[Any]:
         """(y, x, ...) values of cells laid out on the pieces, `fill` in gaps."""
         pieces = cells[np.ix_(self.y_cells, self.x_cells)]
         pieces[self.y_cells < 0] = fill
@@ -148,7 +149,7 @@ def mesh(grid: Grid, centre: float) -> Mesh:
 def outlines(grid: Grid, centre: float, uncut: bool) -> Outlines:
     """The cells of any grid as rings, (corners, 2) degrees.
 
-    Those that meet the outer meridian or hold a pole are cut there, unless `uncut` (a view of a pole has no outer meridian).
+    Those that meet the outer meridian or hold a pole are cut there, unless `uncut` (a view of a pole has no such meridian).
     """
     start = (grid.longitudes[:, :1] - centre + 180) % 360 - 180
     steps = (np.diff(grid.longitudes, axis=1, append=grid.longitudes[:, :1]) + 180) % 360 - 180
@@ -179,7 +180,7 @@ def _cut(ring: Floats) -> list[Floats]:
     window = shapely.box(-180, -90, 180, 90)
     parts: list[Floats] = []
     for turn in (-360.0, 0.0, 360.0):
-        shape = shapely.make_valid(shapely.Polygon(ring + [turn, 0.0]))
+        shape = shapely.make_valid(shapely.Polygon(ring + np.array([turn, 0.0])))
         for part in shapely.get_parts(shapely.intersection(shape, window)):
             if part.geom_type == "Polygon" and part.area > 0:
                 parts.append(shapely.get_coordinates(shapely.segmentize(part.exterior, _FINEST)))
@@ -214,7 +215,7 @@ def _pairs(coordinate: xr.DataArray, bounds: Floats | None, whole_turn: bool) ->
     if bounds is not None and bounds.shape == (centres.size, 2):
         if not whole_turn or centres.size == 1:
             return bounds
-        return centres[:, None] + (bounds - centres[:, None] + 180) % 360 - 180
+        return np.asarray(centres[:, None] + (bounds - centres[:, None] + 180) % 360 - 180)
     if centres.size == 1:
         return centres[:, None] + np.array([-0.5, 0.5])
     middles = (centres[:-1] + centres[1:]) / 2
@@ -232,7 +233,8 @@ def _bounds(ds: xr.Dataset, coordinate: xr.DataArray) -> Floats | None:
 
 def _degrees(coordinate: xr.DataArray) -> Floats:
     values: Floats = np.asarray(coordinate.values, dtype=np.float64)
-    return np.degrees(values) if str(coordinate.attrs.get("units", "")).startswith("rad") else values
+    turns: Floats = np.degrees(values) if str(coordinate.attrs.get("units", "")).startswith("rad") else values
+    return turns
 
 
 def _corners_between(longitude: Floats, latitude: Floats) -> tuple[Floats, Floats]:
@@ -241,7 +243,8 @@ def _corners_between(longitude: Floats, latitude: Floats) -> tuple[Floats, Float
     points = np.stack([np.cos(lat) * np.cos(lon), np.cos(lat) * np.sin(lon), np.sin(lat)], axis=-1)
     for axis in (0, 1):
         first, last = np.take(points, [0], axis), np.take(points, [-1], axis)
-        second, before = (np.take(points, [k], axis) if points.shape[axis] > 1 else np.take(points, [0], axis) for k in (1, -2))
+        inner = (1, -2) if points.shape[axis] > 1 else (0, 0)
+        second, before = (np.take(points, [place], axis) for place in inner)
         wide = np.concatenate([2 * first - second, points, 2 * last - before], axis)
         points = (np.take(wide, range(wide.shape[axis] - 1), axis) + np.take(wide, range(1, wide.shape[axis]), axis)) / 2
     node_lon = np.degrees(np.arctan2(points[..., 1], points[..., 0]))

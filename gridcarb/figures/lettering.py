@@ -32,7 +32,8 @@ def with_units(name: str, units: str) -> str:
 
 def sentence(text: str) -> str:
     """The text with a capital, unless its first word mixes cases on purpose ("pH")."""
-    return text if text.split(" ")[0][1:] != text.split(" ")[0][1:].lower() else text[:1].upper() + text[1:]
+    rest = text.split(" ", maxsplit=1)[0][1:]
+    return text[:1].upper() + text[1:] if rest == rest.lower() else text
 
 
 def meridian(longitude: float) -> str:

@@ -12,7 +12,7 @@ import xarray as xr
 from gridcarb.axes import Axes
 from gridcarb.errors import InputError
 
-_METRES = {"m": 1.0, "meter": 1.0, "meters": 1.0, "metre": 1.0, "metres": 1.0, "cm": 0.01, "centimeters": 0.01, "km": 1000.0}
+_METRES = {"m": 1.0, "meter": 1.0, "meters": 1.0, "metre": 1.0, "metres": 1.0, "cm": 0.01, "km": 1000.0}
 _DECIBARS = {"dbar": 1.0, "decibar": 1.0, "decibars": 1.0, "pa": 1e-4, "hpa": 1e-2, "bar": 10.0}
 
 
@@ -57,10 +57,10 @@ def choose_level(header: xr.Dataset, axes: Axes, wanted: float) -> Level:
     depths, unit = _depths(header[name])
     deepest = _deepest(depths)
     if not 0 <= wanted <= deepest:
-        shown = ", ".join(f"{depth:.6g}" for depth in depths[:40])
+        shown = ", ".join(f"{depth:.6g}" for depth in depths[:40]) + (" ..." if depths.size > 40 else "")
         raise InputError(
             f"a map at {wanted:g} m: the grid ends at {deepest:.6g} {unit}", where=f"figures: depth, coordinate '{name}'",
-            mend=f"write a depth near one of these levels in the recipe ({unit}): {shown}" + (" ..." if depths.size > 40 else ""),
+            mend=f"write a depth near one of these levels in the recipe ({unit}): {shown}",
         )
     index = int(np.argmin(np.abs(depths - wanted)))
     below = tuple(int(i) for i in np.flatnonzero(depths > depths[index]))

@@ -9,13 +9,10 @@ from typing import Literal
 import xarray as xr
 from pydantic import Field, field_validator
 
-from gridcarb.axes import Axes, find_axes
 from gridcarb.errors import InputError, did_you_mean
-from gridcarb.fields import FIELDS
 from gridcarb.figures.cells import grid_of
+from gridcarb.figures.choice import Choice, choose
 from gridcarb.figures.kinds import FIGURES, FigureKind
-from gridcarb.figures.levels import Level, choose_level
-from gridcarb.figures.moments import Moment, choose_moment
 from gridcarb.figures.settings import FigureSettings
 
 Region = tuple[float, float, float, float]
@@ -73,16 +70,14 @@ def check(header: xr.Dataset, settings: MapSettings) -> None:
     ------
     UnknownWordError, InputError : no such field, depth, time or place.
     """
-    FIELDS[settings.field]
-    axes = find_axes(header)
-    _select(header, axes, settings)
-    grid = grid_of(header, axes)
+    choice = _chosen(header, settings)
+    grid = grid_of(header, choice.axes)
     window = settings.window()
     if window and not grid.holds(*window):
         west, east, south, north = grid.extent()
         raise InputError(
             "the map would be empty: no cell of the grid lies in it", where="figures: region, projection",
-            mend=f"the grid reaches from {west:.4g} to {east:.4g} degrees east and from {south:.4g} to {north:.4g} degrees north; "
+            mend=f"the grid reaches from {west:.4g} to {east:.4g} degrees east, {south:.4g} to {north:.4g} degrees north; "
             "write another `region: [west, east, south, north]` or leave `projection` out in the recipe",
         )
 
@@ -109,30 +104,22 @@ def draw(result: xr.Dataset, settings: MapSettings, folder: Path) -> Path:
             mend=f"add it to `chemistry: {{fields: [...]}}` in the recipe; {did_you_mean(settings.field, known)}",
         )
     check(result, settings)
-    axes = find_axes(result)
-    level, moment = _select(result, axes, settings)
-    path = folder / (settings.file or _file_name(settings, level, moment))
-    return publish(plate_of(result, axes, level, moment, settings), path)
+    choice = _chosen(result, settings)
+    return publish(plate_of(result, choice, settings), folder / (settings.file or _file_name(settings, choice)))
 
 
-def _select(ds: xr.Dataset, axes: Axes, settings: MapSettings) -> tuple[Level, Moment]:
-    """The level and time step to draw; a field without that dimension needs none."""
-    field = ds.get(settings.field)
-    dims = (axes.time, axes.vertical) if field is None else field.dims
-    flat = FIELDS[settings.field].extent != "cell" or (axes.vertical is not None and axes.vertical not in dims)
-    timeless = axes.time is not None and axes.time not in dims
-    level = Level() if flat else choose_level(ds, axes, settings.depth)
-    return level, Moment() if timeless else choose_moment(ds, axes, settings.time)
+def _chosen(ds: xr.Dataset, settings: MapSettings) -> Choice:
+    return choose(ds, settings.field, settings.depth, settings.time)
 
 
-def _file_name(settings: MapSettings, level: Level, moment: Moment) -> str:
+def _file_name(settings: MapSettings, choice: Choice) -> str:
     """Field, depth, time, and how it is looked at when that was said."""
     place = ""
     if settings.region:
         place = "_".join(f"{edge:g}" for edge in settings.region)
     elif settings.projection != "automatic":
         place = settings.projection
-    return "_".join(part for part in (settings.field, level.slug, moment.slug, place) if part) + ".png"
+    return "_".join(part for part in (settings.field, choice.level.slug, choice.moment.slug, place) if part) + ".png"
 
 
 FIGURES.put("map", FigureKind(MapSettings, check, draw))

@@ -70,7 +70,7 @@ def _nearest(wanted: str, count: int, dates: Sequence[cftime.datetime]) -> int:
         if inside:
             return inside[0]
     try:
-        instant = cftime.datetime(*(given + [1, 1, 1][len(given):] if len(given) < 3 else given), calendar=dates[0].calendar)
+        instant = cftime.datetime(*given, *[1] * (3 - len(given)), calendar=dates[0].calendar)
     except ValueError:
         raise _no_such(f"there is no '{wanted}' in the calendar '{dates[0].calendar}'", count, dates) from None
     days = np.array([(date - instant).total_seconds() / 86400 for date in dates])
@@ -135,10 +135,8 @@ def _season(header: xr.Dataset, coordinate: xr.DataArray, dates: Sequence[cftime
 
 
 def _no_such(what: str, count: int, dates: Sequence[cftime.datetime]) -> InputError:
-    if dates:
-        known = f"dates from {dates[0].strftime('%Y-%m-%d')} to {dates[-1].strftime('%Y-%m-%d')}, "
-    else:
-        known = ""
+    ends = [date.strftime("%Y-%m-%d") for date in (dates[0], dates[-1])] if dates else []
+    known = f"dates from {' to '.join(ends)}, " if dates else ""
     steps = f"steps 0 to {count - 1}" if count > 1 else "a single step"
     return InputError(
         what, where="figures: time",

@@ -16,8 +16,8 @@ from matplotlib.figure import Figure
 from matplotlib.patches import Patch, PathPatch
 from matplotlib.path import Path as Outline
 
-from gridcarb.figures.drawing import coastline, theme
 from gridcarb.figures.cells import Grid, mesh, outlines
+from gridcarb.figures.drawing import coastline, theme
 from gridcarb.figures.drawing.scales import Scale
 from gridcarb.figures.drawing.views import View
 
@@ -68,7 +68,7 @@ def publish(plate: Plate, path: Path) -> Path:
         frame = theme.box(figure, (across - width) / 2, foot, width, height)
         _fill(figure.add_axes(frame, projection=plate.view.projection), plate)
         theme.head(figure, lines, plate.subtitle, _SIDE, 0.24)
-        theme.legend(figure, notes, across - _SIDE, foot + height + 0.24)
+        theme.legend(figure, notes, (across - _SIDE, foot + height + 0.24))
         _explain(figure, plate)
         return theme.save(figure, path, plate.title, ", ".join(part for part in (plate.label, plate.subtitle) if part))
 
@@ -134,7 +134,7 @@ def _explain(figure: Figure, plate: Plate) -> None:
         length = 0.68 * (across - 2 * _SIDE)
         plate.scale.bar(figure.add_axes(theme.box(figure, (across - length) / 2, 0.68, length, 0.15)), plate.label)
     kinds = [theme.swatch(colour, word) for word, colour in plate.entries]
-    theme.legend(figure, kinds, across / 2, 0.26, anchor="lower center")
+    theme.legend(figure, kinds, (across / 2, 0.26), anchor="lower center")
 
 
 def _shades(plate: Plate) -> list[Patch]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Literal
 
 import matplotlib
 import numpy as np
@@ -37,7 +38,9 @@ class Scale:
 
     def bar(self, panel: Panel, label: str) -> Colorbar:
         """A horizontal colour bar with arrows at the ends that data pass."""
-        extend = {(False, False): "neither", (True, False): "min", (False, True): "max", (True, True): "both"}
+        extend: dict[tuple[bool, bool], Literal["neither", "min", "max", "both"]] = {
+            (False, False): "neither", (True, False): "min", (False, True): "max", (True, True): "both",
+        }
         bar = Colorbar(
             panel, ScalarMappable(self.norm, self.palette), orientation="horizontal", extend=extend[self.low, self.high],
             extendfrac=0.035, ticks=list(self.ticks),
@@ -62,24 +65,24 @@ def scale_of(values: Floats, ink: Ink, limits: tuple[float, float] | None) -> Sc
         norm = TwoSlopeNorm(ink.centre, low, high)
         ticks = tuple(sorted({*_ticks(low, ink.centre, 4), ink.centre, *_ticks(ink.centre, high, 4)}))
     elif ink.centre is not None:
-        palette, norm, ticks = _one_side(palette, ink.centre, low, high, stated=limits is not None)
-    return Scale(palette, norm, ticks, bool((known < norm.vmin).any()), bool((known > norm.vmax).any()))
+        palette, low, high = _one_side(palette, ink.centre, (low, high), stated=limits is not None)
+        norm, ticks = Normalize(low, high), _ticks(low, high, 8)
+    return Scale(palette, norm, ticks, bool((known < low).any()), bool((known > high).any()))
 
 
 def _one_side(
-    palette: Colormap, centre: float, low: float, high: float, stated: bool
-) -> tuple[Colormap, Normalize, tuple[float, ...]]:
-    """The half of a centred palette that values on one side of the centre use.
+    palette: Colormap, centre: float, limits: tuple[float, float], stated: bool
+) -> tuple[Colormap, float, float]:
+    """The half of a centred palette for values on one side of the centre, and its limits.
 
     Unless limits were stated the scale starts at the centre, as long as that leaves the values a third of it.
     """
+    low, high = limits
     above = low >= centre
     if not stated and max(abs(low - centre), abs(high - centre)) <= 3 * (high - low):
         low, high = (centre, high) if above else (low, centre)
-    half = np.linspace(0.5, 1.0, 256) if above else np.linspace(0.0, 0.5, 256)
-    return ListedColormap(palette(half)).with_extremes(under=palette(half[0]), over=palette(half[-1])), Normalize(
-        low, high
-    ), _ticks(low, high, 8)
+    half = palette(np.linspace(0.5, 1.0, 256) if above else np.linspace(0.0, 0.5, 256))
+    return ListedColormap(half), low, high
 
 
 def kinds(flags: tuple[tuple[int, str], ...]) -> tuple[Scale, dict[int, str]]:

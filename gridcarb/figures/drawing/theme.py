@@ -11,9 +11,9 @@ import threading
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from pathlib import Path
+from typing import Literal
 
 import matplotlib.style
-from matplotlib.artist import Artist
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 from matplotlib.patches import Patch
@@ -37,6 +37,8 @@ DPI = 200
 TITLE, TEXT, SMALL = 14.0, 10.5, 8.5
 LINE = 0.27
 """Distance between the lines of a title, in inches."""
+
+Corner = Literal["lower right", "lower center"]
 
 _STYLE = {
     "font.family": ["DejaVu Sans"], "font.size": TEXT, "text.color": INK, "axes.labelcolor": INK,
@@ -78,16 +80,18 @@ def head(figure: Figure, title: Sequence[str], subtitle: str, left: float, top: 
 
 def swatch(color: str, label: str, hatched: bool = False) -> Patch:
     """One entry of a legend."""
-    hatching = {"hatch": HATCHING, "edgecolor": HATCH} if hatched else {"edgecolor": SOFT_INK}
-    return Patch(facecolor=color, label=label, linewidth=0.5, **hatching)
+    return Patch(
+        facecolor=color, edgecolor=HATCH if hatched else SOFT_INK, hatch=HATCHING if hatched else None, label=label,
+        linewidth=0.5,
+    )
 
 
-def legend(figure: Figure, entries: Sequence[Artist], across: float, up: float, anchor: str = "lower right") -> None:
-    """Entries in a row whose `anchor` lies at (`across`, `up`), inches from the lower left corner."""
+def legend(figure: Figure, entries: Sequence[Patch], at: tuple[float, float], anchor: Corner = "lower right") -> None:
+    """Entries in a row whose `anchor` lies at `at`, inches from the lower left corner."""
     if entries:
-        left, bottom, _, _ = box(figure, across, up, 0, 0)
+        left, bottom, _, _ = box(figure, *at, 0, 0)
         figure.legend(
-            handles=entries, loc=anchor, bbox_to_anchor=(left, bottom), ncols=len(entries), frameon=False,
+            handles=list(entries), loc=anchor, bbox_to_anchor=(left, bottom), ncols=len(entries), frameon=False,
             fontsize=9.0, handlelength=1.5, handleheight=1.0, columnspacing=1.3, borderpad=0, borderaxespad=0,
         )
 

@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
-from typing import Literal
+from typing import Any, Literal
 
 import cartopy.crs as ccrs
 import numpy as np
 import numpy.typing as npt
 from cartopy.mpl.geoaxes import GeoAxes
 from matplotlib.collections import LineCollection
-from matplotlib.patheffects import withStroke
 from matplotlib.path import Path as Outline
+from matplotlib.patheffects import withStroke
 from matplotlib.ticker import MaxNLocator
 
 from gridcarb.figures.drawing import theme
@@ -100,35 +101,39 @@ class View:
     def _lines(self) -> tuple[list[float], list[float]]:
         """Meridians (degrees east of the centre) and parallels to draw."""
         if self.shape == "globe":
-            turns = [lon - self.centre for lon in range(-180, 180, 60)]
-            return [(lon + 180) % 360 - 180 for lon in turns], [-60.0, -30.0, 0.0, 30.0, 60.0]
+            return self._turned(range(-180, 180, 60)), [-60.0, -30.0, 0.0, 30.0, 60.0]
         if self.shape == "disc":
             step = 10.0 if self.north - self.south <= 45 else 20.0
             sign = 1.0 if self.north > 0 else -1.0
             edge = min(abs(self.south), abs(self.north))
             rings = [sign * lat for lat in np.arange(90 - step, edge, -step)]
-            return [(lon - self.centre + 180) % 360 - 180 for lon in range(-180, 180, 45)], rings
+            return self._turned(range(-180, 180, 45)), rings
         steps = MaxNLocator(nbins=6, steps=[1, 1.5, 2, 3, 4.5, 5, 6, 9, 10])
-        lon = steps.tick_values(self.west + self.centre, self.east + self.centre) - self.centre
-        lat = steps.tick_values(self.south, self.north)
+        meridians = [float(x) - self.centre for x in steps.tick_values(self.west + self.centre, self.east + self.centre)]
+        parallels = [float(y) for y in steps.tick_values(self.south, self.north)]
         return (
-            [float(x) for x in lon if self.west - 1e-6 <= x <= self.east + 1e-6],
-            [float(y) for y in lat if self.south - 1e-6 <= y <= self.north + 1e-6],
+            [x for x in meridians if self.west - 1e-6 <= x <= self.east + 1e-6],
+            [y for y in parallels if self.south - 1e-6 <= y <= self.north + 1e-6],
         )
+
+    def _turned(self, longitudes: Iterable[int]) -> list[float]:
+        """Degrees east of the centre."""
+        return [(longitude - self.centre + 180) % 360 - 180 for longitude in longitudes]
 
     def _letter_globe(self, ax: GeoAxes, meridians: list[float], parallels: list[float]) -> None:
         for lat in parallels:
             heights = "center" if lat == 0 else "bottom" if lat > 0 else "top"
-            self._text(ax, parallel(lat), -180.0, lat, (-4, 0), "right", heights)
+            self._text(ax, parallel(lat), (-180.0, lat), xytext=(-4, 0), ha="right", va=heights)
         for lon in meridians:
             if abs(lon) < 179:
-                self._text(ax, meridian(self.centre + lon), lon, -90.0, (0, -4), "center", "top")
+                self._text(ax, meridian(self.centre + lon), (lon, -90.0), xytext=(0, -4), ha="center", va="top")
 
     def _letter_window(self, ax: GeoAxes, meridians: list[float], parallels: list[float]) -> None:
         for lat in parallels:
-            self._text(ax, parallel(round(lat, 6)), self.west, lat, (-5, 0), "right", "center")
+            self._text(ax, parallel(round(lat, 6)), (self.west, lat), xytext=(-5, 0), ha="right", va="center")
         for lon in meridians:
-            self._text(ax, meridian(round(self.centre + lon, 6)), lon, self.south, (0, -4), "center", "top")
+            label = meridian(round(self.centre + lon, 6))
+            self._text(ax, label, (lon, self.south), xytext=(0, -4), ha="center", va="top")
 
     def _letter_disc(self, ax: GeoAxes, meridians: list[float], parallels: list[float]) -> None:
         edge = self.south if self.north > 0 else self.north
@@ -136,20 +141,19 @@ class View:
             x, y = self.place(np.array([lon]), np.array([edge]))[0] / self._radius()
             sides = "center" if abs(x) < 0.1 else "left" if x > 0 else "right"
             heights = "center" if abs(y) < 0.1 else "bottom" if y > 0 else "top"
-            self._text(ax, meridian(self.centre + lon), lon, edge, (4 * x, 4 * y), sides, heights)
+            self._text(ax, meridian(self.centre + lon), (lon, edge), xytext=(4 * x, 4 * y), ha=sides, va=heights)
+        within: dict[str, Any] = {"ha": "center", "va": "center", "color": theme.INK}
+        within["path_effects"] = [withStroke(linewidth=2.0, foreground=(1, 1, 1, 0.75))]
         for lat in parallels:
-            self._text(ax, parallel(lat), 22.5, lat, (0, 0), "center", "center", halo=True)
+            self._text(ax, parallel(lat), (22.5, lat), xytext=(0, 0), **within)
 
-    def _text(
-        self, ax: GeoAxes, text: str, lon: float, lat: float, shift: tuple[float, float], ha: str, va: str, halo: bool = False
-    ) -> None:
-        """A small label beside a point of the map, `shift` in typographic points."""
-        effects = [withStroke(linewidth=2.0, foreground=(1, 1, 1, 0.75))] if halo else []
-        ax.annotate(
-            text, tuple(self.place(np.array([lon]), np.array([lat]))[0]), xytext=shift, textcoords="offset points", ha=ha, va=va,
-            fontsize=theme.SMALL, color=theme.INK if halo else theme.SOFT_INK, path_effects=effects, zorder=6,
-            annotation_clip=False,
-        )
+    def _text(self, ax: GeoAxes, text: str, place: tuple[float, float], **how: Any) -> None:
+        """A small label at a place (degrees east of the centre, latitude), shifted by `xytext` in typographic points."""
+        point = self.place(np.array(place[:1]), np.array(place[1:]))[0]
+        ax.annotate(text, tuple(point), **{
+            "textcoords": "offset points", "fontsize": theme.SMALL, "color": theme.SOFT_INK, "zorder": 6,
+            "annotation_clip": False, **how,
+        })
 
 
 def globe(centre: float) -> View:

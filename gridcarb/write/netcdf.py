@@ -52,9 +52,14 @@ def export(
         with room_for(target, sum(file.stat().st_size for file in store.rglob("*") if file.is_file())):
             _copy(source, temporary, source.attrs | dict(attributes or {}), progress)
             settle(temporary, target)
+    except BaseException:
+        if temporary.exists():
+            # On a full disk the HDF5 library cannot close the file; cut to nothing, it holds no space until the process ends.
+            os.truncate(temporary, 0)
+            temporary.unlink()
+        raise
     finally:
         source.close()
-        temporary.unlink(missing_ok=True)
 
 
 def _copy(
@@ -78,8 +83,8 @@ def _copy(
             variable = source.variables[name]
             for selection in _pieces(variable.shape, variable.encoding["chunks"]):
                 values = variable[selection].values
-                with NETCDF_LOCK:
-                    file.variables[name][selection] = values
+                with NETCDF_LOCK:  # which takes strings as objects only
+                    file.variables[name][selection] = values.astype(object) if values.dtype.kind == "T" else values
                 done += values.nbytes
                 if progress:
                     progress(done, total)
@@ -110,7 +115,7 @@ def _declare(file: netCDF4.Dataset, name: str, variable: xr.Variable, time: str 
     text = variable.dtype.kind in "OUT"
     fill = np.nan if is_field and variable.dtype.kind == "f" else None
     # A vlen string has no fill to switch off; for numbers, no fill means no attribute and no prefilling.
-    made = file.createVariable(name, str if text else variable.dtype, [str(dim) for dim in variable.dims],
+    made = file.createVariable(name, str if text else variable.dtype.newbyteorder("="), [str(dim) for dim in variable.dims],
                                fill_value=fill if text or fill is not None else False, **options)
     made.set_auto_maskandscale(False)
     made.setncatts(_typed({key: value for key, value in variable.attrs.items() if key != "_FillValue"}, variable.dtype))

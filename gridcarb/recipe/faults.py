@@ -8,7 +8,7 @@ from typing import Any
 from pydantic import ValidationError
 from pydantic_core import ErrorDetails
 
-from gridcarb.errors import Fault, GridcarbError, near_words
+from gridcarb.errors import Fault, GridcarbError, did_you_mean, near_words
 from gridcarb.recipe.reference import choices, field_at, reference, section_at, section_of
 from gridcarb.recipe.text import KeyPath, Parsed, dotted
 
@@ -74,6 +74,7 @@ def _tell(path: KeyPath, detail: ErrorDetails, data: object) -> tuple[str, str]:
         "missing": lambda: _missing(path, detail["loc"][-1], data),
         "extra_forbidden": lambda: _unknown_key(path, data),
         "string_pattern_mismatch": lambda: (f"{_shown(value)} cannot be understood here", _meaning(path, data)),
+        "string_too_short": lambda: (f"{_shown(value)} is too short", _meaning(path, data)),
         "too_short": lambda: (_count(value, context["min_length"], "at least"), _meaning(path, data)),
         "too_long": lambda: (_count(value, context["max_length"], "at most"), _meaning(path, data)),
         "value_error": lambda: _raised(context["error"], path, data),
@@ -103,8 +104,7 @@ def _wrong_kind(path: KeyPath, details: list[ErrorDetails], data: object) -> tup
 
 
 def _suggest(word: str, words: list[str]) -> str:
-    near = near_words(word, words)
-    suggestion = "did you mean " + " or ".join(f"'{word}'" for word in near) + "? " if near else ""
+    suggestion = f"{did_you_mean(word, words)} " if near_words(word, words) else ""
     return f"{suggestion}accepted: {', '.join(words)}"
 
 
@@ -123,14 +123,11 @@ def _unknown_key(path: KeyPath, data: object) -> tuple[str, str]:
     """Near words of the same section first; else the same word where it is known."""
     name, section = str(path[-1]), section_at(path[:-1], data)
     known = list(section.model_fields) if section else []
-    near = near_words(name, known)
     what = f"there is no key '{name}' in {dotted(path[:-1]) or 'a recipe'}"
-    if near:
-        return what, "did you mean " + " or ".join(f"'{word}'" for word in near) + "?"
     elsewhere = [row.key for row in reference() if row.key.rpartition(".")[2] == name]
-    if elsewhere:
+    if elsewhere and not near_words(name, known):
         return what, "it belongs elsewhere: did you mean " + " or ".join(f"`{key}`" for key in elsewhere[:3]) + "?"
-    return what, f"known here: {', '.join(known)}"
+    return what, did_you_mean(name, known)
 
 
 def _count(value: Any, bound: int, words: str) -> str:

@@ -6,7 +6,7 @@ import io
 import itertools
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from gridcarb.cli.progress import Bar, Lines, Silence, duration_words, rate_words, watcher
@@ -35,6 +35,7 @@ def watch(lines: Lines, blocks: int) -> None:
     lines.stop()
 
 
+@settings(deadline=None)
 @given(st.integers(min_value=1, max_value=400))
 def test_at_most_one_line_per_five_per_cent_and_always_the_last(blocks):
     stream = io.StringIO()

@@ -6,7 +6,7 @@ import contextlib
 import re
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from gridcarb.errors import Fault, RecipeError
@@ -75,7 +75,7 @@ def changed(old: str, new: str) -> str:
     ("  folder: ../results/first", "  folder: ..", 12, "output.folder", "holds the recipe", "folder of the result's own"),
     ("  folder: ../results/first", "  folder: x\n  netcdf: maybe", 13, "output.netcdf", "not true or false", "netcdf: "),
     ("  folder: ../results/first", "  folder: x\n  zarr_format: 4", 13, "output.zarr_format", "4 is not accepted", "2, 3"),
-    ("  folder: ../results/first", "  folder: x\n  attributes: {a: []}", 13, "output.attributes.a", "or a number", "attributes"),
+    ("  folder: ../results/first", "  folder: x\n  attributes: {a: []}", 13, "output.attributes.a", "or a number", "attr"),
     ("kind: map, ", "", 14, "figures[0]", "kind of figure is missing", "one of: map"),
     ("kind: map", "kind: mapp", 14, "figures[0].kind", "no figure 'mapp'", "'map'"),
     ("  - {kind: map, field: ph_total_scale, depth: 0}", "  - map", 14, "figures[0]", "'map' is not a section", "figures"),
@@ -83,6 +83,7 @@ def changed(old: str, new: str) -> str:
     ("depth: 0", "depht: 0", 14, "figures[0].depht", "no key 'depht' in figures[0]", "'depth'"),
     ("depth: 0", "depth: deep", 14, "figures[0].depth", "'deep' is not a number", "depth: "),
     ("depth: 0", "time: [1]", 14, "figures[0].time", "a list is not text or a whole number", "time: "),
+    ("depth: 0", "title: ''", 14, "figures[0].title", "'' is too short", "title: "),
     ("depth: 0", "region: [1, 2]", 14, "figures[0].region", "too few", "region: "),
     ("depth: 0", "region: [1, 2, 3, 4, 5]", 14, "figures[0].region", "at most 4", "region: "),
     ("depth: 0", "region: [1, 2, 30, 4]", 14, "figures[0].region", "south < north", "region: "),
@@ -153,6 +154,7 @@ VALUES = st.sampled_from(
 )
 
 
+@settings(deadline=None)
 @given(st.dictionaries(st.sampled_from(KEYS), VALUES, min_size=1, max_size=8))
 def test_no_fault_speaks_the_language_of_the_checker(wrong):
     tree: dict = {}
@@ -177,6 +179,7 @@ def _flow(tree: dict | str) -> str:
     return "{" + ", ".join(f"{key}: {_flow(value)}" for key, value in tree.items()) + "}"
 
 
+@settings(deadline=None)
 @given(st.one_of(
     st.text(), st.text(alphabet="ab:-[]{}'\"#&*!|>%@\n\t ?,.0\\"),
     st.lists(st.sampled_from(GOOD.splitlines()), max_size=20).map("\n".join),

@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import Any
 
 from gridcarb.errors import Fault, did_you_mean
-from gridcarb.fields import REQUIRED_ROLES
+from gridcarb.fields import FIELDS, REQUIRED_ROLES
 from gridcarb.recipe.model import derived_fields, resolved
 from gridcarb.recipe.text import KeyPath, Parsed, dotted
 
@@ -37,12 +37,13 @@ def _uncomputed_figures(data: Mapping[str, Any]) -> Iterator[Finding]:
     chemistry = data.get("chemistry")
     wanted = chemistry.get("fields") if isinstance(chemistry, Mapping) else None
     computed = derived_fields() if wanted == "all" else [wanted] if isinstance(wanted, str) else wanted
+    always = {key for key, field in FIELDS.items() if field.part == "status"}
     figures = data.get("figures")
     if not isinstance(computed, Sequence) or not isinstance(figures, list):
         return
     for number, figure in enumerate(figures):
         key = figure.get("field") if isinstance(figure, Mapping) else None
-        if not isinstance(key, str) or key in computed:
+        if not isinstance(key, str) or key in computed or key in always:
             continue
         place = ("figures", number, "field")
         if key in derived_fields():

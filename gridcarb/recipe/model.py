@@ -57,7 +57,7 @@ def _known_kind(key: object) -> object:
 
 FieldKey = Annotated[str, AfterValidator(_known_field)]
 SetKey = Annotated[str, AfterValidator(_known_set)]
-Memory = Annotated[str, StringConstraints(pattern=r"^\d+(\.\d+)? ?[kMGT]i?B$")]
+Memory = Annotated[str, StringConstraints(pattern=r"(?i)^\d+(\.\d+)? ?[kMGT]i?B$")]
 Count = Annotated[int, Field(ge=1, strict=True)]
 
 

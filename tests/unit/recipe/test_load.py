@@ -142,7 +142,9 @@ def test_every_set_of_constants_can_be_named(key):
     assert check(TEXT.replace("{fields:", f"{{constants: {key}, fields:")).chemistry.constants == key
 
 
-@pytest.mark.parametrize(("words", "size"), [("2 GB", 2 * 10**9), ("512MiB", 2**29), ("1.5 kB", 1500), ("1 TB", 10**12)])
+@pytest.mark.parametrize(("words", "size"), [("2 GB", 2 * 10**9), ("512MiB", 2**29), ("1.5 kB", 1500), ("1 TB", 10**12), ("2 gb", 2 * 10**9),
+    ("64 KiB", 2**16),
+])
 def test_memory(words, size):
     assert check(TEXT + f"engine: {{memory: {words}}}\n").engine.memory_bytes == size
 
@@ -152,6 +154,10 @@ def test_figures_take_the_settings_of_their_kind():
     (figure,) = recipe.figures
     assert type(figure) is FIGURES["map"].settings
     assert recipe.model_dump()["figures"][0]["field"] == "ph_total_scale"
+
+
+def test_the_status_is_always_there_to_be_drawn():
+    assert check(TEXT + "figures: [{kind: map, field: solution_status}]\n").figures
 
 
 def test_empty_sections_are_left_out():

@@ -142,8 +142,8 @@ def test_every_set_of_constants_can_be_named(key):
     assert check(TEXT.replace("{fields:", f"{{constants: {key}, fields:")).chemistry.constants == key
 
 
-@pytest.mark.parametrize(("words", "size"), [("2 GB", 2 * 10**9), ("512MiB", 2**29), ("1.5 kB", 1500), ("1 TB", 10**12), ("2 gb", 2 * 10**9),
-    ("64 KiB", 2**16),
+@pytest.mark.parametrize(("words", "size"), [
+    ("2 GB", 2 * 10**9), ("512MiB", 2**29), ("1.5 kB", 1500), ("1 TB", 10**12), ("2 gb", 2 * 10**9), ("64 KiB", 2**16),
 ])
 def test_memory(words, size):
     assert check(TEXT + f"engine: {{memory: {words}}}\n").engine.memory_bytes == size

@@ -1,0 +1,245 @@
+"""From a set of constants and a list of wanted fields to the steps that compute them on a tile.
+
+A step fills one row of a scratch table from other rows. The steps are found by asking for the wanted columns and
+following the names of each function's arguments; nothing that is not needed is computed.
+"""
+
+from __future__ import annotations
+
+import functools
+from collections.abc import Callable
+from dataclasses import asdict, dataclass, replace
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from gridcarb.chemistry import solver
+from gridcarb.chemistry.compiled import COMPILE_LOCK, TILE, arguments, plain, tile_loop
+from gridcarb.chemistry.constants_set import CONSTANTS, ConstantsSet
+from gridcarb.chemistry.declare import COLUMNS, DERIVED, Formula
+from gridcarb.chemistry.formulas.pressure import ln_pressure_factor
+from gridcarb.chemistry.reuse import assign_rows
+from gridcarb.fields import FIELDS
+
+Rows = npt.NDArray[np.float64]
+Call = tuple[Callable[..., Any], tuple[Any, ...]]
+
+INPUTS = ("t", "s", "p_bar", "dic", "alk", "pt", "sit")
+"""The rows a caller fills: degC, practical salinity, bar, and four amounts in mol/kg."""
+
+_ACIDS = ("k1", "k2", "kb", "kw", "kp1", "kp2", "kp3", "ksi")
+_SOLIDS = ("k_calcite", "k_aragonite")
+
+
+@dataclass(frozen=True)
+class Step:
+    """Fill row `out` from rows `reads` (a tile loop), or by a NumPy function of one row."""
+
+    run: Callable[..., Any]
+    out: int
+    reads: tuple[int, ...]
+    ufunc: bool = False
+
+    def bind(self, scratch: Rows) -> Call:
+        """The function and the arguments that take this step on `scratch`."""
+        if self.ufunc:
+            return self.run, (scratch[self.reads[0]], scratch[self.out])
+        return self.run, (scratch, self.out, *self.reads)
+
+    def moved(self, rows: dict[int, int]) -> Step:
+        """The same step with every row renumbered."""
+        return replace(self, out=rows[self.out], reads=tuple(rows[row] for row in self.reads))
+
+
+@dataclass(frozen=True)
+class Program:
+    """The steps for one set and one selection of fields.
+
+    rows : how many rows of scratch a tile needs; the inputs come first.
+    before, after : steps up to the equation's columns, and from its root to the fields.
+    unknowns : rows of the solver, in its order; hydrogen and step : the rows it fills.
+    outputs : field key -> row.
+    """
+
+    rows: int
+    before: tuple[Step, ...]
+    unknowns: tuple[int, ...]
+    hydrogen: int
+    step: int
+    after: tuple[Step, ...]
+    outputs: dict[str, int]
+
+    def bind(self, scratch: Rows) -> Bound:
+        """The calls that solve one tile held in `scratch` (rows x TILE)."""
+        return Bound(
+            [step.bind(scratch) for step in self.before],
+            [step.bind(scratch) for step in self.after],
+            (scratch[self.hydrogen], scratch[self.step], *(scratch[row] for row in self.unknowns)),
+        )
+
+
+@dataclass(frozen=True)
+class Bound:
+    """A program bound to its scratch: the input rows are filled, `run` overwrites all others."""
+
+    before: list[Call]
+    after: list[Call]
+    equation: tuple[Rows, ...]
+
+    def run(self) -> None:
+        """Solve the tile."""
+        for function, arguments_ in self.before:
+            function(*arguments_)
+        solver.sweep(*self.equation)
+        if not np.abs(self.equation[1]).max() < solver.SETTLED:
+            solver.settle(*self.equation)
+        for function, arguments_ in self.after:
+            function(*arguments_)
+
+
+class _Builder:
+    """Collects steps while columns are asked for by name."""
+
+    def __init__(self, constants: ConstantsSet) -> None:
+        self.constants = constants
+        self.formulas = constants.formulas()
+        self.rows: dict[str, int] = {}
+        self.steps: list[Step] = []
+        for name in INPUTS:
+            self.fresh(name)
+
+    def fresh(self, name: str) -> int:
+        """A new row under a name."""
+        self.rows[name] = len(self.rows)
+        return self.rows[name]
+
+    def row(self, name: str) -> int:
+        """The row of a column, with the steps that fill it appended if it is new."""
+        if name not in self.rows:
+            self._make(name)
+        return self.rows[name]
+
+    def _make(self, name: str) -> None:
+        if name in _ACIDS or name in _SOLIDS or name == "ks":
+            self._constant(name, self.formulas[name], pressure=name)
+        elif name in ("ks_surface", "kf_surface_given", "k0"):
+            key = {"ks_surface": "ks", "kf_surface_given": "kf"}.get(name, name)
+            self._constant(name, self.formulas[key], pressure=None)
+        elif name == "kf_pressure_factor":
+            self._loop(f"ln_{name}", self._pressure_columns(), self._pressure("kf"), {"factor": ln_pressure_factor})
+            self._ufunc(name, np.exp, f"ln_{name}")
+        elif name in ("kf_surface", "kf_surface_free"):
+            self._fluoride(name)
+        elif name in COLUMNS or name in DERIVED:
+            self._call(name, COLUMNS[name] if name in COLUMNS else DERIVED[name])
+        elif name in self.formulas:
+            self._call(name, self.formulas[name].cell)
+        elif name.startswith("ln_"):
+            self._ufunc(name, np.log, name.removeprefix("ln_"))
+        else:
+            self._ufunc(name, np.exp, f"ln_{name}")
+
+    def _loop(self, name: str, columns: tuple[str, ...], expression: str, uses: dict[str, Any]) -> None:
+        reads = tuple(self.row(column) for column in columns)
+        run = tile_loop(f"{name}_of_{self.constants.key}", columns, expression, uses)
+        self.steps.append(Step(run, self.fresh(name), reads))
+
+    def _call(self, name: str, cell: Any) -> None:
+        columns = arguments(cell)
+        reads = tuple(self.row(column) for column in columns)
+        self.steps.append(Step(_plain_loop(cell), self.fresh(name), reads))
+
+    def _ufunc(self, name: str, function: np.ufunc, argument: str) -> None:
+        reads = (self.row(argument),)
+        self.steps.append(Step(function, self.fresh(name), reads, ufunc=True))
+
+    def _pressure_columns(self) -> tuple[str, ...]:
+        return ("t", "p_bar", "tk")
+
+    def _pressure(self, constant: str) -> str:
+        numbers = ", ".join(repr(value) for value in asdict(self.constants.volumes[constant]).values())
+        return f"factor(t, p_bar, tk, {numbers})"
+
+    def _constant(self, name: str, formula: Formula, pressure: str | None) -> None:
+        """A constant on the scale the equation wants, at pressure: logarithms are summed before the one exp."""
+        columns = list(formula.columns)
+        expression = f"cell({', '.join(columns)})"
+        if pressure is not None:
+            expression += f" + {self._pressure(pressure)}"
+            columns += self._pressure_columns()
+        if name in _ACIDS:
+            shift = {"total": "ln_shift_total", "seawater": "ln_shift_seawater"}[formula.scale]
+            expression += f" + {shift}"
+            columns.append(shift)
+        unique = tuple(dict.fromkeys(columns))
+        self._loop(f"ln_{name}", unique, expression, {"cell": formula.cell, "factor": ln_pressure_factor})
+        self._ufunc(name, np.exp, f"ln_{name}")
+
+    def _fluoride(self, name: str) -> None:
+        """KF at the surface on the total scale (kf_surface) or the free scale, whichever the set's equation gives."""
+        given = {"kf_surface": "total", "kf_surface_free": "free"}[name]
+        if self.formulas["kf"].scale == given:
+            self.rows[name] = self.row("kf_surface_given")
+            return
+        sign = "*" if given == "total" else "/"
+        self._loop(name, ("kf_surface_given", "st", "ks_surface"), f"kf_surface_given {sign} (1.0 + st / ks_surface)", {})
+
+
+@functools.cache
+def _plain_loop(cell: Any) -> Any:
+    columns = arguments(cell)
+    return tile_loop(f"column_{plain(cell).__name__}", columns, f"cell({', '.join(columns)})", {"cell": cell})
+
+
+@functools.cache
+def program(constants: str, fields: tuple[str, ...]) -> Program:
+    """The compiled program for a set and a selection of derived fields (both by key).
+
+    Raises
+    ------
+    UnknownWordError : an unknown set or field.
+    """
+    chosen = CONSTANTS[constants]
+    for key in fields:
+        FIELDS[key], DERIVED[key]
+    with COMPILE_LOCK:
+        builder = _Builder(chosen)
+        unknowns = tuple(builder.row(name) for name in solver.UNKNOWNS)
+        before = tuple(builder.steps)
+        builder.steps = []
+        hydrogen, step = builder.fresh("h"), builder.fresh("newton_step")
+        outputs = {key: builder.row(key) for key in fields}
+        made = _compact(Program(len(builder.rows), before, unknowns, hydrogen, step, tuple(builder.steps), outputs))
+        _compile(made)
+    return made
+
+
+def _compact(made: Program) -> Program:
+    """The same program on as few rows as its steps allow."""
+    root = (made.hydrogen, made.step)
+    work = [
+        *(((step.out,), step.reads) for step in made.before),
+        (root, made.unknowns),
+        *(((step.out,), step.reads) for step in made.after),
+    ]
+    rows, count = assign_rows(work, len(INPUTS), (*root, *made.outputs.values()))
+    return Program(
+        count,
+        tuple(step.moved(rows) for step in made.before),
+        tuple(rows[row] for row in made.unknowns),
+        rows[made.hydrogen],
+        rows[made.step],
+        tuple(step.moved(rows) for step in made.after),
+        {key: rows[row] for key, row in made.outputs.items()},
+    )
+
+
+def _compile(made: Program) -> None:
+    """Run an ordinary tile once, so that all compiling is over before threads enter."""
+    scratch = np.full((made.rows, TILE), 1.0)
+    for row, value in enumerate((15.0, 35.0, 0.0, 2.1e-3, 2.3e-3, 0.0, 0.0)):
+        scratch[row] = value
+    bound = made.bind(scratch)
+    bound.run()
+    solver.settle(*bound.equation)

@@ -1,0 +1,56 @@
+"""The xarray face of the chemistry: clothed inputs in, solved fields with their attributes out."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+import xarray as xr
+
+from gridcarb.chemistry.constants_set import CONSTANTS
+from gridcarb.chemistry.tile import speciate
+from gridcarb.fields import FIELDS, ROLES
+
+_ARGUMENTS = (*ROLES, "pressure")
+
+
+def solve(clothed: xr.Dataset, fields: Sequence[str], constants: str) -> xr.Dataset:
+    """Solve the carbonate system of a block once, for all fields wanted.
+
+    Parameters
+    ----------
+    clothed : temperature (in situ, degC), salinity (practical), pressure (dbar), dic, alkalinity, phosphate, silicate
+        (umol/kg), broadcasting by dimension name; in memory. Dimensions come out in the order of the alkalinity.
+    fields : catalogue keys: derived fields, "solution_status", or inputs (passed through as they were understood).
+    constants : key of a set of constants.
+
+    Returns
+    -------
+    One variable a field (float64; the status int8) with the attributes of the catalogue, on the coordinates of the
+    input.
+
+    Raises
+    ------
+    UnknownWordError : an unknown field or set.
+    """
+    wanted = [FIELDS[key] for key in fields]
+    values = dict(zip(_ARGUMENTS, xr.broadcast(*(clothed[name] for name in _ARGUMENTS)), strict=True))
+    order = _dimension_order(clothed)
+    arrays = {name: value.transpose(*order).values for name, value in values.items()}
+    computed = [field.key for field in wanted if field.part != "input"]
+    results = speciate(**arrays, fields=computed, constants=constants) if computed else {}
+    solved = xr.Dataset(coords=clothed.coords)
+    for field in wanted:
+        data = np.array(arrays[field.key]) if field.part == "input" else results[field.key]
+        solved[field.key] = (order, data, {**field.attributes(), **_provenance(field.part, constants)})
+    return solved
+
+
+def _dimension_order(clothed: xr.Dataset) -> tuple[str, ...]:
+    """The dimensions of the variable that has most of them, which the harmonised inputs keep in canonical order."""
+    widest = max((clothed[name] for name in _ARGUMENTS), key=lambda value: value.ndim)
+    return tuple(str(dim) for dim in widest.dims)
+
+
+def _provenance(part: str, constants: str) -> dict[str, str]:
+    return {"constants": CONSTANTS[constants].key} if part == "derived" else {}

@@ -24,7 +24,7 @@ PLASTIC_FRACTION = 0.7548776662466927
 
 @dataclass(frozen=True)
 class Point:
-    """Unit vectors from the centre of the planet: x towards 0 E on the equator, y towards 90 E, z towards the north pole."""
+    """Unit vectors from the planet's centre: x towards 0 E on the equator, y towards 90 E, z towards the north pole."""
 
     x: Numbers
     y: Numbers
@@ -43,8 +43,9 @@ def ripples(where: Point, first: int, count: int, lowest: float, growth: float =
     """A smooth field of about unit standard deviation: `count` plane waves cut by the sphere.
 
     Wave i of the series first, first + 1, ... is a sin(k d.x + phase) with wave number k = lowest growth^n (radian per
-    planet radius, n counts from 0), amplitude a proportional to growth^-n, direction d the i-th of a golden spiral and phase
-    2 pi times the fractional part of i 0.7549. Sampled on a sphere it has no seam at the date line and none at the poles.
+    planet radius, n counts from 0), amplitude a proportional to growth^-n, direction d the i-th of a golden spiral and
+    phase 2 pi times the fractional part of i 0.7549. Sampled on a sphere it has no seam at the date line and none at
+    the poles.
     """
     total = np.zeros_like(where.z)
     power = 0.0
@@ -61,7 +62,7 @@ def ripples(where: Point, first: int, count: int, lowest: float, growth: float =
 
 
 def warp(where: Point, first: int, count: int, lowest: float, share: float) -> Point:
-    """Each point moved by three ripple fields of standard deviation `share` (of the planet's radius), then put back on the sphere."""
+    """Each point moved by three ripple fields of standard deviation `share` (planet radii), then put back on the sphere."""
     x = where.x + share * ripples(where, first, count, lowest)
     y = where.y + share * ripples(where, first + 100, count, lowest)
     z = where.z + share * ripples(where, first + 200, count, lowest)

@@ -54,7 +54,7 @@ def export(
             settle(temporary, target)
     except BaseException:
         if temporary.exists():
-            # On a full disk the HDF5 library cannot close the file; cut to nothing, it holds no space until the process ends.
+            # On a full disk the HDF5 library cannot close the file and holds its space until the process ends: cut it.
             os.truncate(temporary, 0)
             temporary.unlink()
         raise

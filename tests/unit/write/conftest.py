@@ -54,7 +54,7 @@ def make_result(template: xr.Dataset) -> xr.Dataset:
                        "horizon": (("time", "lat", "lon"), ph[:, 1] * 100)})
 
 
-@pytest.fixture()
+@pytest.fixture
 def grid() -> SimpleNamespace:
     template = make_template()
     regions = [
@@ -64,7 +64,7 @@ def grid() -> SimpleNamespace:
                            status=STATUS, regions=regions, result=make_result(template))
 
 
-@pytest.fixture()
+@pytest.fixture
 def fill_store(grid):
     """A function that makes a store and writes every block of it."""
     from gridcarb.write import store

@@ -18,7 +18,7 @@ from gridcarb.write import netcdf, store
 from gridcarb.write.disk import free_bytes
 
 
-@pytest.fixture()
+@pytest.fixture
 def target(tmp_path):
     return tmp_path / "result.nc"
 

@@ -83,21 +83,23 @@ class Grid:
 
     def middles(self, shape: tuple[int, ...]) -> tuple[Floats, Floats]:
         """Longitude and latitude of the middle of each cell, (y, x) or (cell,) as `shape` says."""
-        lon = self.longitudes[:, :1] + ((self.longitudes - self.longitudes[:, :1] + 180) % 360 - 180)
-        middles = lon.mean(axis=1), self.latitudes.mean(axis=1)
+        lon, lat = self._unwrapped().mean(axis=1), self.latitudes.mean(axis=1)
         if self.rectilinear:
-            grids = np.meshgrid(*middles)
-            return grids[0], grids[1]
-        return middles[0].reshape(shape), middles[1].reshape(shape)
+            lon, lat = np.meshgrid(lon, lat)
+        return lon.reshape(shape), lat.reshape(shape)
 
     def holds(self, west: float, east: float, south: float, north: float) -> bool:
         """Whether a cell lies, in part, within the window."""
-        turn = (east - west) % 360.0 or 360.0
-        lat = self.latitudes
-        rows = (np.nanmax(lat, axis=1) > south) & (np.nanmin(lat, axis=1) < north)
-        lon = self.longitudes - west
-        near = ((lon % 360 < turn) | ((lon[:, :1] % 360) + (lon - lon[:, :1]) > 360)).any(axis=1)
-        return bool(rows.any() and near.any()) if self.rectilinear else bool((rows & near).any())
+        lon, turn = self._unwrapped(), (east - west) % 360.0 or 360.0
+        apart = np.abs((lon.mean(axis=1) - west - turn / 2 + 180) % 360 - 180)
+        columns = apart < (np.ptp(lon, axis=1) + turn) / 2
+        rows = (self.latitudes.max(axis=1) > south) & (self.latitudes.min(axis=1) < north)
+        return bool(rows.any() and columns.any()) if self.rectilinear else bool((rows & columns).any())
+
+    def _unwrapped(self) -> Floats:
+        """Longitudes with the corners of each cell on the same turn."""
+        first = self.longitudes[:, :1]
+        return np.asarray(first + (self.longitudes - first + 180) % 360 - 180)
 
 
 def grid_of(ds: xr.Dataset, axes: Axes) -> Grid:
@@ -217,7 +219,7 @@ def _pairs(coordinate: xr.DataArray, bounds: Floats | None, whole_turn: bool) ->
             return bounds
         return np.asarray(centres[:, None] + (bounds - centres[:, None] + 180) % 360 - 180)
     if centres.size == 1:
-        return centres[:, None] + np.array([-0.5, 0.5])
+        return np.stack([centres - 0.5, centres + 0.5], axis=1)
     middles = (centres[:-1] + centres[1:]) / 2
     edges = np.concatenate([[2 * centres[0] - middles[0]], middles, [2 * centres[-1] - middles[-1]]])
     return np.stack([edges[:-1], edges[1:]], axis=1)

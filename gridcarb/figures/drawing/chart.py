@@ -68,7 +68,7 @@ def publish(plate: Plate, path: Path) -> Path:
         frame = theme.box(figure, (across - width) / 2, foot, width, height)
         _fill(figure.add_axes(frame, projection=plate.view.projection), plate)
         theme.head(figure, lines, plate.subtitle, _SIDE, 0.24)
-        theme.legend(figure, notes, (across - _SIDE, foot + height + 0.24))
+        theme.legend(figure, notes, (across - _SIDE, foot + height + 0.3))
         _explain(figure, plate)
         return theme.save(figure, path, plate.title, ", ".join(part for part in (plate.label, plate.subtitle) if part))
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Hashable, Iterator, Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any, Literal
 
@@ -57,7 +57,7 @@ class DensityReading:
 
 
 def read_amount(
-    role: str, attrs: Mapping[Hashable, Any], settings: ReadingSettings, where: str = ""
+    role: str, attrs: Mapping[Any, Any], settings: ReadingSettings, where: str = ""
 ) -> Decided[AmountReading]:
     """Decide the units of one tracer; UnitsError if they are missing, unreadable, or of another kind or substance."""
     said = settings.units.get(role, attrs.get("units"))
@@ -90,7 +90,7 @@ def quantity(text: str) -> tuple[float, str] | None:
 
 
 def read_density(
-    per_volume: Mapping[str, Mapping[Hashable, Any]], settings: ReadingSettings, file_attributes: Mapping[Hashable, Any]
+    per_volume: Mapping[str, Mapping[Any, Any]], settings: ReadingSettings, file_attributes: Mapping[Any, Any]
 ) -> Decided[DensityReading]:
     """Decide the density for all tracers given per volume; `per_volume` maps these roles to their attributes.
 
@@ -134,7 +134,7 @@ def density(
         return None
     if reading.kind == "constant" or absolute_salinity is None:
         return xr.DataArray(reading.value)
-    with np.errstate(invalid="ignore"):
+    with np.errstate(all="ignore"):
         conservative = xr.apply_ufunc(gsw.CT_from_t, absolute_salinity, temperature, pressure)
         in_cells: xr.DataArray = xr.apply_ufunc(gsw.rho, absolute_salinity, conservative, pressure)
     return in_cells
@@ -163,7 +163,7 @@ def _stated_density(text: str, settings: ReadingSettings) -> float:
 
 
 def _metadata_densities(
-    per_volume: Mapping[str, Mapping[Hashable, Any]], file_attributes: Mapping[Hashable, Any]
+    per_volume: Mapping[str, Mapping[Any, Any]], file_attributes: Mapping[Any, Any]
 ) -> Iterator[tuple[str, float]]:
     """Place and value (kg m-3) of every reference density in the metadata that can be one of sea water."""
     holders = [(f"attribute of {role}", attrs) for role, attrs in per_volume.items()]

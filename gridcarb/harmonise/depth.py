@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any, Literal
 
@@ -139,7 +139,7 @@ def _decoded(raw: xr.Dataset, name: str | None, masks: Mapping[str, MaskReading]
     return xr.DataArray(unmask(np.asarray(variable.values), masks[name])[0], dims=variable.dims)
 
 
-def _angle(attrs: Mapping[Hashable, Any]) -> float:
+def _angle(attrs: Mapping[Any, Any]) -> float:
     return float(np.degrees(1.0)) if str(attrs.get("units", "")).lower().startswith("rad") else 1.0
 
 
@@ -207,7 +207,7 @@ def _without_coordinate(dim: str | None, standard_names: set[str]) -> Decided[Ve
     return Decided(VerticalReading("surface"), (decision,), (notice,))
 
 
-def _direction(converted: np.ndarray[Any, Any], attrs: Mapping[Hashable, Any], where: str) -> tuple[bool, str]:
+def _direction(converted: np.ndarray[Any, Any], attrs: Mapping[Any, Any], where: str) -> tuple[bool, str]:
     """Whether the numbers grow downward, and why; refuse numbers that contradict what is said of them."""
     positive = str(attrs.get("positive", "")).lower()
     standard_name = str(attrs.get("standard_name", ""))

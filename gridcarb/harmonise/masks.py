@@ -125,7 +125,9 @@ def unmask_roles(
     land = (clean["salinity"] <= 0) & (clean["alkalinity"] <= 0)
     if land.any():
         flags["land"] = land
-        clean = {role: values.where(~land) if set(land.dims) <= set(values.dims) else values for role, values in clean.items()}
+        clean = {
+            role: values.where(~land) if set(land.dims) <= set(values.dims) else values for role, values in clean.items()
+        }
     return clean, {rule: int(flags[rule].sum()) if rule in flags else 0 for rule in RULES}
 
 

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import itertools
-from collections.abc import Hashable, Iterator, Mapping
+from collections.abc import Iterator, Mapping
+from typing import Any
 
 import numpy as np
 
@@ -31,7 +32,7 @@ _MASSES = {"dic": ("g m-3", "C", 12.011), "alkalinity": ("mg L-1", "CaCO3", 50.0
 _ACCEPT = "or `reading: {unusual_values: accept}` if this water is meant"
 
 
-def patches(axes: Axes, sizes: Mapping[Hashable, int], top: int) -> list[dict[str, slice]]:
+def patches(axes: Axes, sizes: Mapping[Any, int], top: int) -> list[dict[str, slice]]:
     """Slices of the first time step at level `top`: the whole map if it is small, else nine patches spread over it.
 
     Every patch is contiguous; together they hold at most about 20,000 values of one role.
@@ -48,7 +49,7 @@ def patches(axes: Axes, sizes: Mapping[Hashable, int], top: int) -> list[dict[st
     ]
 
 
-def slabs(axes: Axes, sizes: Mapping[Hashable, int]) -> Iterator[dict[str, slice]]:
+def slabs(axes: Axes, sizes: Mapping[Any, int]) -> Iterator[dict[str, slice]]:
     """The whole first time step, level by level, in contiguous slices of about a million values of one role."""
     first = _at(axes.time, 0)
     levels = [_at(axes.vertical, index) for index in range(sizes[axes.vertical])] if axes.vertical else [{}]
@@ -129,8 +130,9 @@ def _check_salinity(median: float) -> None:
         fraction = 0.002 <= median <= 0.045
         likely = "; the numbers look like kg of salt per kg of water" if fraction else ""
         units_text = "kg kg-1" if fraction else "..."
+        mend = f"write `reading: {{units: {{salinity: {units_text}}}}}` in the recipe, {_ACCEPT}"
         raise InputError(f"the median salinity of a sample is {median:.4g}, not that of sea water{likely}",
-                         where="salinity", mend=f"write `reading: {{units: {{salinity: {units_text}}}}}` in the recipe, {_ACCEPT}")
+                         where="salinity", mend=mend)
 
 
 def _unlike_sea_water(role: str, median: float, reading: AmountReading) -> InputError:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -36,7 +36,7 @@ class SalinityReading:
 
 
 def read_salinity(
-    attrs: Mapping[Hashable, Any], settings: ReadingSettings, where: str = "salinity"
+    attrs: Mapping[Any, Any], settings: ReadingSettings, where: str = "salinity"
 ) -> Decided[SalinityReading]:
     """Decide kind and units.
 
@@ -74,7 +74,7 @@ def absolute_salinity(numbers: xr.DataArray, kind: SalinityKind, place: Place) -
 
 def _by_place(function: Any, numbers: xr.DataArray, place: Place) -> xr.DataArray:
     latitude, longitude = place.horizontal("salinity")
-    with np.errstate(invalid="ignore"):
+    with np.errstate(all="ignore"):
         converted: xr.DataArray = xr.apply_ufunc(
             function, numbers, place.pressure, longitude, latitude.clip(min=_SOUTHERNMOST)
         )

@@ -7,7 +7,7 @@ per kilogram of sea water.
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Hashable, Mapping
+from collections.abc import Mapping
 from typing import Any
 
 import numpy as np
@@ -22,7 +22,7 @@ from gridcarb.harmonise.settings import ReadingSettings
 
 
 def understand(
-    raw: xr.Dataset, settings: ReadingSettings, *, file_attributes: Mapping[Hashable, Any] | None = None
+    raw: xr.Dataset, settings: ReadingSettings, *, file_attributes: Mapping[Any, Any] | None = None
 ) -> Understanding:
     """Decide how a collection is read, from its headers, its coordinates and a small sample.
 
@@ -114,7 +114,7 @@ def _present(raw: xr.Dataset, axes: Axes, settings: ReadingSettings) -> tuple[st
 
 
 def _read_headers(
-    raw: xr.Dataset, axes: Axes, present: tuple[str, ...], settings: ReadingSettings, attributes: Mapping[Hashable, Any]
+    raw: xr.Dataset, axes: Axes, present: tuple[str, ...], settings: ReadingSettings, attributes: Mapping[Any, Any]
 ) -> tuple[Understanding, tuple[Decided[Any], ...]]:
     """The understanding as far as headers and coordinates go, and what was decided, in order."""
     marks = {role: masks.read_mask(raw[role], role) for role in present}

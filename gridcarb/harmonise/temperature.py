@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Hashable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -42,7 +42,7 @@ class TemperatureReading:
 
 
 def read_temperature(
-    attrs: Mapping[Hashable, Any], settings: ReadingSettings, deepest: float, file_attributes: Mapping[Hashable, Any],
+    attrs: Mapping[Any, Any], settings: ReadingSettings, deepest: float, file_attributes: Mapping[Any, Any],
     where: str = "temperature",
 ) -> Decided[TemperatureReading]:
     """Decide kind and units; `deepest` is the depth of the lowest level (m or dbar).
@@ -66,7 +66,7 @@ def in_situ(
     """
     if kind == "in situ" or absolute_salinity is None:
         return celsius
-    with np.errstate(invalid="ignore"):
+    with np.errstate(all="ignore"):
         if kind == "conservative":
             warm: xr.DataArray = xr.apply_ufunc(gsw.t_from_CT, absolute_salinity, celsius, pressure)
         else:  # the adiabatic map runs both ways: water of this temperature at 0 dbar, brought to `pressure`
@@ -75,7 +75,7 @@ def in_situ(
 
 
 def _kind(
-    attrs: Mapping[Hashable, Any], settings: ReadingSettings, deepest: float, file_attributes: Mapping[Hashable, Any],
+    attrs: Mapping[Any, Any], settings: ReadingSettings, deepest: float, file_attributes: Mapping[Any, Any],
     where: str,
 ) -> tuple[TemperatureKind, str, tuple[Notice, ...]]:
     standard_name = str(attrs.get("standard_name", ""))
@@ -109,7 +109,7 @@ def _line(kind: str) -> str:
     return f"reading: {{temperature: {kind}}}"
 
 
-def _hint(attrs: Mapping[Hashable, Any], file_attributes: Mapping[Hashable, Any]) -> tuple[TemperatureKind | None, str]:
+def _hint(attrs: Mapping[Any, Any], file_attributes: Mapping[Any, Any]) -> tuple[TemperatureKind | None, str]:
     """The kind that the other attributes speak of, and which attribute it was."""
     for holder in (attrs, file_attributes):
         for key in _SHORT_NAME_KEYS:

@@ -121,7 +121,7 @@ def _methods(field: Field, text: str, dims: Sequence[str], coordinates: Mapping[
     if not set(axes) <= known:
         return {}
     found: dict[str, object] = {"cell_methods": text}
-    if field.part == "derived" and re.search(r":\s*(mean|sum)\b", text):
+    if field.part == "derived" and re.search(r"\b(?!area\b)\w+:\s*(mean|sum)\b", text):
         said = "Computed from inputs averaged as in cell_methods: the value of the mean state, not the mean of the values."
         found["comment"] = " ".join([*_text(field.attributes(), "comment"), said])
     return found

@@ -70,16 +70,17 @@ def _copy(
     try:
         with NETCDF_LOCK:
             time = find_axes(source).time
-            for dim, size in source.sizes.items():
-                file.createDimension(str(dim), None if dim == time else size)
             file.setncatts(_typed(attributes, None))
             fields = _fields(source)
-            coordinates = [str(name) for name in source.variables if name not in fields]
-            for name in (*coordinates, *fields):
+            # A store has no order of its own: by name, so that the same store always gives the same file.
+            names = [*sorted(str(name) for name in source.variables if name not in fields), *sorted(fields)]
+            for dim in dict.fromkeys(dim for name in reversed(names) for dim in source.variables[name].dims):
+                file.createDimension(str(dim), None if dim == time else source.sizes[dim])
+            for name in names:
                 _declare(file, name, source.variables[name], time, is_field=name in fields)
-        total = sum(source.variables[name].nbytes for name in (*coordinates, *fields))
+        total = sum(source.variables[name].nbytes for name in names)
         done = 0
-        for name in (*coordinates, *fields):
+        for name in names:
             variable = source.variables[name]
             for selection in _pieces(variable.shape, variable.encoding["chunks"]):
                 values = variable[selection].values

@@ -139,6 +139,7 @@ def test_mapping_measures_and_methods_are_carried_only_if_they_fit(grid):
     }
     inherited = {"grid_mapping": "crs", "cell_measures": "area: areacello volume: volcello",
                  "cell_methods": "area: mean where sea time: point (interval: 1 day)"}
+    assert "Computed from inputs averaged" not in field_attributes(grid.ph, ("time",), coords, inherited, None)["comment"]
     cell = field_attributes(grid.ph, ("time", "lev", "lat", "lon"), coords, inherited, None)
     assert cell["grid_mapping"] == "crs"
     assert cell["cell_measures"] == "area: areacello volume: volcello"

@@ -42,6 +42,9 @@ def test_encoding_is_on_purpose(tmp_path, target, fill_store):
     netcdf.export(tmp_path / "result.zarr", target)
     with netCDF4.Dataset(target) as file:
         assert file.data_model == "NETCDF4"
+        names = list(file.variables)
+        assert names[-3:] == ["horizon", "ph_total_scale", "solution_status"]
+        assert names[:-3] == sorted(names[:-3])
         assert [name for name, dim in file.dimensions.items() if dim.isunlimited()] == ["time"]
         for name, variable in file.variables.items():
             is_float_field = name in ("ph_total_scale", "horizon")

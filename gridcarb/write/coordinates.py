@@ -50,6 +50,16 @@ def pointed_at(attributes: Iterable[Mapping[str, object]]) -> set[str]:
     }
 
 
+def unfilled(variable: xr.Variable) -> np.ndarray:
+    """The numbers of a coordinate in native byte order; in floating-point ones, NaN stands for a fill of the source."""
+    values = variable.values.astype(variable.dtype.newbyteorder("="))
+    if values.dtype.kind != "f":
+        return values
+    fills = [variable.attrs[key] for key in ("_FillValue", "missing_value") if key in variable.attrs]
+    values[np.isin(values, np.asarray(fills, dtype=values.dtype).ravel())] = np.nan
+    return values
+
+
 def _one(value: object) -> list[str]:
     return [str(value)]
 
@@ -67,17 +77,16 @@ _POINTERS = {
 def _clean(variable: xr.Variable) -> xr.Variable:
     values = np.asarray(variable.values)
     dims = tuple(str(dim) for dim in variable.dims)
-    fills = [variable.attrs[key] for key in ("_FillValue", "missing_value") if key in variable.attrs]
     if values.dtype.kind in "mM":
         raise TypeError("coordinates are stored as the raw numbers of the source, not as decoded times")
     if values.dtype.kind == "S":
         values, dims = _strings(values, dims)
     elif values.dtype.kind in "UO":
         values = values.astype(object)
+    elif values.dtype.kind == "b":
+        values = values.astype("i1")
     else:
-        values = values.astype("i1" if values.dtype == bool else values.dtype.newbyteorder("="))
-        if values.dtype.kind == "f":
-            values[np.isin(values, np.asarray(fills, dtype=values.dtype).ravel())] = np.nan
+        values = unfilled(variable)
     attrs = {key: value for key, value in variable.attrs.items() if key not in _OF_THE_SOURCE}
     return xr.Variable(dims, values, attrs)
 
@@ -87,7 +96,7 @@ def _strings(values: np.ndarray, dims: tuple[str, ...]) -> tuple[np.ndarray, tup
     if values.dtype.itemsize == 1 and values.ndim:
         values = np.ascontiguousarray(values).view(f"S{values.shape[-1]}")[..., 0]
         dims = dims[:-1]
-    return np.char.decode(values, "utf-8").astype(object), dims
+    return np.char.decode(values, "utf-8", errors="replace").astype(object), dims
 
 
 def _stated(found: Mapping[str, xr.Variable], axes: Axes) -> dict[str, dict[str, str]]:
@@ -97,7 +106,7 @@ def _stated(found: Mapping[str, xr.Variable], axes: Axes) -> dict[str, dict[str,
     for name, axis, standard_name in roles:
         if name and name in found:
             entry = stated.setdefault(name, {})
-            if standard_name:
+            if standard_name and (axis != "T" or " since " in str(found[name].attrs.get("units"))):
                 entry["standard_name"] = standard_name
             if found[name].dims == (name,):
                 entry["axis"] = axis

@@ -10,6 +10,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from gridcarb.axes import Axes
+from gridcarb.write.coordinates import unfilled
 
 _GREGORIAN = ("standard", "gregorian", "proleptic_gregorian")
 _DAY = 86400.0
@@ -63,15 +64,14 @@ def time_coverage(template: xr.Dataset, axes: Axes) -> dict[str, object]:
 
 
 def _numbers(template: xr.Dataset, name: str | None, *, bounds: bool = True) -> NDArray[np.float64]:
-    """All finite numbers of a coordinate, and of its bounds if wanted; fills of the source are left out."""
+    """All finite numbers of a coordinate, and of its bounds if wanted; fills of the source are no numbers."""
     if name is None or name not in template.coords:
         return np.empty(0)
     attrs = template[name].attrs
-    fills = [float(attrs[key]) for key in ("_FillValue", "missing_value") if key in attrs]
     names = [name, *(str(attrs[key]) for key in ("bounds", "climatology") if bounds and key in attrs)]
-    parts = [np.asarray(template[key].values, dtype=np.float64).ravel() for key in names if key in template]
+    parts = [unfilled(template[key].variable).astype(np.float64).ravel() for key in names if key in template]
     flat: NDArray[np.float64] = np.concatenate(parts)
-    return flat[np.isfinite(flat) & ~np.isin(flat, fills)]
+    return flat[np.isfinite(flat)]
 
 
 def _extremes(word: str, values: NDArray[np.float64]) -> dict[str, object]:

@@ -17,7 +17,6 @@ import netCDF4
 import numpy as np
 import xarray as xr
 
-from gridcarb.axes import find_axes
 from gridcarb.netcdf_lock import NETCDF_LOCK
 from gridcarb.write.coordinates import pointed_at
 from gridcarb.write.disk import room_for, settle
@@ -69,7 +68,7 @@ def _copy(
         file = netCDF4.Dataset(path, "w", format="NETCDF4")
     try:
         with NETCDF_LOCK:
-            time = find_axes(source).time
+            time = _time_dimension(source)
             file.setncatts(_typed(attributes, None))
             fields = _fields(source)
             # A store has no order of its own: by name, so that the same store always gives the same file.
@@ -96,6 +95,13 @@ def _copy(
             if file.isopen():
                 file.close()
         raise
+
+
+def _time_dimension(source: xr.Dataset) -> str | None:
+    for variable in source.variables.values():
+        if variable.ndim == 1 and (variable.attrs.get("axis") == "T" or variable.attrs.get("standard_name") == "time"):
+            return str(variable.dims[0])
+    return None
 
 
 def _fields(source: xr.Dataset) -> list[str]:

@@ -173,3 +173,19 @@ def test_the_template_is_left_as_it_was(grid):
     clean_coordinates(grid.template, grid.axes)
     xr.testing.assert_identical(grid.template, before)
     assert NOW.astimezone(UTC).hour == 1
+
+
+def test_a_fill_in_another_precision_is_recognised():
+    lat = np.array([10.0, 1e20, 20.0], "f4")
+    ds = xr.Dataset(coords={"lat": ("cell", lat, {"units": "degrees_north", "_FillValue": 1e20})})
+    axes = Axes(None, None, ("cell",), None, None, "lat", None)
+    assert geospatial(ds, axes)["geospatial_lat_max"] == 20.0
+    assert np.isnan(clean_coordinates(ds, axes)["lat"].values[1])
+
+
+def test_only_a_time_with_a_base_date_is_called_time():
+    axes = Axes("month", None, (), "month", None, None, None)
+    numbered = xr.Dataset(coords={"month": ("month", np.arange(12), {"units": "1"})})
+    assert clean_coordinates(numbered, axes)["month"].attrs == {"units": "1", "axis": "T"}
+    dated = xr.Dataset(coords={"month": ("month", np.arange(12), {"units": "days since 2001-01-01"})})
+    assert clean_coordinates(dated, axes)["month"].attrs["standard_name"] == "time"

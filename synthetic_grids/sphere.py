@@ -35,7 +35,7 @@ def point(longitude: ArrayLike, latitude: ArrayLike) -> Point:
     """The unit vectors of places given in degrees east and degrees north; any longitude convention."""
     lam = np.radians(np.asarray(longitude, dtype=np.float64))
     phi = np.radians(np.asarray(latitude, dtype=np.float64))
-    lam, phi = (np.ascontiguousarray(part) for part in np.broadcast_arrays(lam, phi))
+    lam, phi = (np.array(part, order="C") for part in np.broadcast_arrays(lam, phi))
     return Point(np.cos(phi) * np.cos(lam), np.cos(phi) * np.sin(lam), np.sin(phi))
 
 

@@ -56,12 +56,10 @@ class DensityReading:
     value: float = 0.0
 
 
-def read_amount(
-    role: str, attrs: Mapping[Any, Any], settings: ReadingSettings, where: str = ""
-) -> Decided[AmountReading]:
+def read_amount(role: str, attrs: Mapping[Any, Any], settings: ReadingSettings) -> Decided[AmountReading]:
     """Decide the units of one tracer; UnitsError if they are missing, unreadable, or of another kind or substance."""
     said = settings.units.get(role, attrs.get("units"))
-    reading = amount_in(str(said) if said is not None else None, role, where or role)
+    reading = amount_in(str(said) if said is not None else None, role, role)
     standard_name = str(attrs.get("standard_name", ""))
     by_name = "per_unit_mass" not in standard_name if standard_name else reading.per_volume
     notice = Notice("units_against_name", f"standard_name {standard_name} of {role} means an amount per "

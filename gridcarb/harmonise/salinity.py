@@ -35,9 +35,7 @@ class SalinityReading:
     to_grams_or_practical: units.Linear
 
 
-def read_salinity(
-    attrs: Mapping[Any, Any], settings: ReadingSettings, where: str = "salinity"
-) -> Decided[SalinityReading]:
+def read_salinity(attrs: Mapping[Any, Any], settings: ReadingSettings) -> Decided[SalinityReading]:
     """Decide kind and units.
 
     Raises UnitsError for units missing or unreadable, InputError where name and units contradict each other.
@@ -46,10 +44,10 @@ def read_salinity(
     said = settings.units.get("salinity", attrs.get("units"))
     if said is None and "practical" in (KINDS.get(standard_name), settings.salinity):
         said = "1"  # CF lets a number without dimension go without units
-    unit = units.read(said, where=where, mend="write `reading: {units: {salinity: psu}}` in the recipe",
+    unit = units.read(said, where="salinity", mend="write `reading: {units: {salinity: psu}}` in the recipe",
                       expected=("practical salinity", "mass fraction"))
     grams = unit.kind == "mass fraction"
-    kind, because, notices = _kind(standard_name, settings.salinity, grams, str(said), where)
+    kind, because, notices = _kind(standard_name, settings.salinity, grams, str(said))
     factor = units.conversion(said, "g kg-1") if grams else units.Linear(1.0)
     if kind != "practical" and not grams:
         notices += (Notice("salinity_units", f"{kind} salinity in units of '{said}' is read as g/kg", "reading: {units: "
@@ -82,7 +80,7 @@ def _by_place(function: Any, numbers: xr.DataArray, place: Place) -> xr.DataArra
 
 
 def _kind(
-    standard_name: str, stated: SalinityKind | None, grams: bool, said: str, where: str
+    standard_name: str, stated: SalinityKind | None, grams: bool, said: str
 ) -> tuple[SalinityKind, str, tuple[Notice, ...]]:
     by_name = KINDS.get(standard_name)
     if stated:
@@ -91,7 +89,7 @@ def _kind(
         return stated, "stated in the recipe", (notice,) if by_name and by_name != stated else ()
     if by_name == "practical" and grams:
         raise InputError(f"standard_name {standard_name} says practical salinity, units '{said}' say grams per kilogram",
-                         where=where, mend=f"write `{_line('practical')}` or `{_line('absolute')}` in the recipe")
+                         where="salinity", mend=f"write `{_line('practical')}` or `{_line('absolute')}` in the recipe")
     if by_name:
         return by_name, f"standard_name is {standard_name}", ()
     if grams:

@@ -8,13 +8,16 @@ from __future__ import annotations
 
 from typing import Annotated, Literal
 
-from pydantic import Field, StringConstraints
+from pydantic import Field, StringConstraints, field_validator
 
+from gridcarb import units
+from gridcarb.errors import did_you_mean
+from gridcarb.fields import ROLES
 from gridcarb.settings import Settings
 
 TemperatureKind = Literal["in situ", "potential", "conservative"]
 SalinityKind = Literal["practical", "absolute", "preformed"]
-Amount = Annotated[str, StringConstraints(pattern=r"^(assume zero|\d+(\.\d+)?([eE][-+]?\d+)? ?[A-Za-z].*)$")]
+Amount = Annotated[str, StringConstraints(pattern=r"^(assume zero|\d+(\.\d+)?([eE][-+]?\d+)? ?[A-Za-zµμ].*)$")]
 Density = Annotated[str, StringConstraints(pattern=r"^(from file|in situ|\d+(\.\d+)? ?kg[ /]m.*)$")]
 
 
@@ -40,3 +43,12 @@ class ReadingSettings(Settings):
     mask_difference: float = Field(
         0.02, ge=0, le=1, description="share of wet cells in which the land masks of two roles may differ"
     )
+
+    @field_validator("units")
+    @classmethod
+    def _of_roles(cls, stated: dict[str, str]) -> dict[str, str]:
+        for word, text in stated.items():
+            if word not in (*ROLES, "depth"):
+                raise ValueError(f"'{word}' is no role; {did_you_mean(word, (*ROLES, 'depth'))}")
+            units.read(text)
+        return stated

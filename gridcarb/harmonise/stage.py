@@ -14,7 +14,7 @@ import numpy as np
 import xarray as xr
 
 from gridcarb.axes import Axes, find_axes
-from gridcarb.errors import InputError, Notice, did_you_mean
+from gridcarb.errors import InputError, Notice
 from gridcarb.fields import FIELDS, REQUIRED_ROLES, ROLES
 from gridcarb.harmonise import amounts, depth, masks, nutrients, plausibility, salinity, temperature
 from gridcarb.harmonise.decisions import Decided, Understanding
@@ -38,7 +38,7 @@ def understand(
     """
     attributes = raw.attrs if file_attributes is None else file_attributes
     axes = find_axes(raw)
-    present = _present(raw, axes, settings)
+    present = _present(raw, axes)
     draft, decided = _read_headers(raw, axes, present, settings, attributes)
     decisions = [decision for part in decided for decision in part.decisions]
     notices = [notice for part in decided for notice in part.notices]
@@ -94,8 +94,8 @@ def _attributes(key: str) -> dict[str, object]:
     return FIELDS[key].attributes()
 
 
-def _present(raw: xr.Dataset, axes: Axes, settings: ReadingSettings) -> tuple[str, ...]:
-    """The roles the data give; refuse missing ones, strange dims, and units stated for what is no role."""
+def _present(raw: xr.Dataset, axes: Axes) -> tuple[str, ...]:
+    """The roles the data give; refuse missing ones and strange dims."""
     present = tuple(role for role in ROLES if role in raw.data_vars)
     absent = [role for role in REQUIRED_ROLES if role not in present]
     if absent:
@@ -106,10 +106,6 @@ def _present(raw: xr.Dataset, axes: Axes, settings: ReadingSettings) -> tuple[st
         if strange:
             raise InputError(f"its dimension '{strange[0]}' is neither time nor vertical nor horizontal", where=role,
                              mend="select one place along it, or give it a coordinate with CF attributes")
-    for word in settings.units:
-        if word not in (*ROLES, "depth"):
-            raise InputError(f"units are stated for '{word}', which is no role", where="reading.units",
-                             mend=did_you_mean(word, (*ROLES, "depth")))
     return present
 
 

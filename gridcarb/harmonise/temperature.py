@@ -42,17 +42,16 @@ class TemperatureReading:
 
 
 def read_temperature(
-    attrs: Mapping[Any, Any], settings: ReadingSettings, deepest: float, file_attributes: Mapping[Any, Any],
-    where: str = "temperature",
+    attrs: Mapping[Any, Any], settings: ReadingSettings, deepest: float, file_attributes: Mapping[Any, Any]
 ) -> Decided[TemperatureReading]:
     """Decide kind and units; `deepest` is the depth of the lowest level (m or dbar).
 
     Raises InputError if the kind is not known and there is water below 200 m, UnitsError for units.
     """
-    kind, because, notices = _kind(attrs, settings, deepest, file_attributes, where)
+    kind, because, notices = _kind(attrs, settings, deepest, file_attributes)
     said = settings.units.get("temperature", attrs.get("units"))
     mend = "write `reading: {units: {temperature: degC}}` in the recipe"
-    reading = TemperatureReading(kind, units.conversion(said, "degC", where=where, mend=mend))
+    reading = TemperatureReading(kind, units.conversion(said, "degC", where="temperature", mend=mend))
     how = kind if kind == "in situ" else f"{kind}, converted to in situ (TEOS-10)"
     return Decided(reading, (Decision("temperature", f"{how}, from {said}", because),), notices)
 
@@ -75,8 +74,7 @@ def in_situ(
 
 
 def _kind(
-    attrs: Mapping[Any, Any], settings: ReadingSettings, deepest: float, file_attributes: Mapping[Any, Any],
-    where: str,
+    attrs: Mapping[Any, Any], settings: ReadingSettings, deepest: float, file_attributes: Mapping[Any, Any]
 ) -> tuple[TemperatureKind, str, tuple[Notice, ...]]:
     standard_name = str(attrs.get("standard_name", ""))
     by_name = KINDS.get(standard_name)
@@ -97,7 +95,7 @@ def _kind(
     if deepest > DEEP:
         raise InputError(
             "nothing says whether the temperature is in situ, potential or conservative, and there is water at "
-            f"{deepest:g} m, where that matters", where=where,
+            f"{deepest:g} m, where that matters", where="temperature",
             mend="write `reading: {temperature: potential}` in the recipe (or `in situ`, or `conservative`)",
         )
     notice = Notice("temperature_kind_assumed", "nothing says which kind of temperature it is; taken as in situ, as there "

@@ -38,7 +38,8 @@ def test_zero_on_purpose() -> None:
 
 
 @pytest.mark.parametrize(("stated", "wanted"), [
-    ("2 umol kg-1", 2.0), ("2.05 mmol m-3", 2.0), ("2.05e-3 mol m-3", 2.0), ("0.002 mmol kg-1", 2.0), ("2.05uM", 2.0),
+    ("2 umol kg-1", 2.0), ("2.05 mmol m-3", 2.0), ("2.05e-3 mol m-3", 2.0), ("0.002 mmol kg-1", 2.0),
+    ("2.05uM", 2.0), ("2 µmol/kg", 2.0),
 ])
 def test_one_amount_everywhere(stated: str, wanted: float) -> None:
     decided = read_nutrients(("silicate",), ReadingSettings(phosphate=stated), 5000.0)

@@ -13,6 +13,7 @@ import pytest
 import xarray as xr
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
+from pydantic import ValidationError
 
 from gridcarb.errors import InputError, UnitsError
 from gridcarb.fields import FIELDS, ROLES
@@ -220,17 +221,24 @@ def test_curvilinear_coordinates_missing_on_land(ocean: Ocean) -> None:
         assert clothed[key].values.tobytes() == straight[key].values.tobytes()
 
 
-@pytest.mark.parametrize(("change", "settings_", "what"), [
-    (lambda raw: raw.drop_vars("dic"), {}, "no dic"),
-    (lambda raw: raw.assign(dic=raw.dic.expand_dims(member=2)), {}, "member"),
-    (lambda raw: raw, {"units": {"alkalinty": "mol m-3"}}, "no role"),
-    (lambda raw: raw.drop_vars("depth"), {}, "no coordinate"),
-    (lambda raw: raw.drop_vars("silicate"), {}, "silicate is not given"),
+@pytest.mark.parametrize(("change", "what"), [
+    (lambda raw: raw.drop_vars("dic"), "no dic"),
+    (lambda raw: raw.assign(dic=raw.dic.expand_dims(member=2)), "member"),
+    (lambda raw: raw.drop_vars("depth"), "no coordinate"),
+    (lambda raw: raw.drop_vars("silicate"), "silicate is not given"),
 ])
-def test_refused(ocean: Ocean, change: Any, settings_: dict[str, Any], what: str) -> None:
+def test_refused(ocean: Ocean, change: Any, what: str) -> None:
     with pytest.raises(InputError, match=what) as caught:
-        understand(change(ocean()), ReadingSettings(**settings_))
+        understand(change(ocean()), ReadingSettings())
     assert caught.value.mend
+
+
+@pytest.mark.parametrize(("stated", "what"), [
+    ({"alkalinty": "mol m-3"}, "did you mean 'alkalinity'"), ({"dic": "bananas"}, "cannot be read"),
+])
+def test_units_stated_badly_are_refused_with_the_settings(stated: dict[str, str], what: str) -> None:
+    with pytest.raises(ValidationError, match=what):
+        ReadingSettings(units=stated)
 
 
 def test_missing_units_are_refused(ocean: Ocean) -> None:

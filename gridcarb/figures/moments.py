@@ -122,7 +122,7 @@ def _season(header: xr.Dataset, coordinate: xr.DataArray, dates: Sequence[cftime
         return ""
     months = [dates[index].month]
     if name in header.variables:
-        bounds = header[name].assign_attrs({**coordinate.attrs, **header[name].attrs})
+        bounds = header[name].assign_attrs({**coordinate.encoding, **coordinate.attrs, **header[name].attrs})
         edges = _dates(bounds.isel({coordinate.dims[0]: index}) if coordinate.dims else bounds)
         if len(edges) == 2:
             last = (edges[1].month - 2) % 12 + 1 if edges[1].day == 1 else edges[1].month

@@ -94,11 +94,10 @@ def _paint(ax: GeoAxes, plate: Plate, colours: Floats) -> None:
         net = mesh(plate.grid, view.centre)
         east, north = np.meshgrid(net.x_edges, np.clip(net.y_edges, *_reach(view)))
         nodes = view.place(east, north)
-        quads = np.stack([nodes[:-1, :-1], nodes[:-1, 1:], nodes[1:, 1:], nodes[1:, :-1]], axis=2)
         ax.add_collection(QuadMesh(
             nodes, facecolors=net.spread(colours, 0.0).reshape(-1, 4), antialiased=False, edgecolors="none", zorder=2,
         ), autolim=False)
-        _hatch(ax, quads[net.spread(plate.missing, False).astype(bool)])
+        _hatch(ax, _strips(nodes, net.spread(plate.missing, False)))
         return
     pieces = outlines(plate.grid, view.centre, uncut=view.shape == "disc")
     rings = [view.place(ring[:, 0], np.clip(ring[:, 1], *_reach(view))) for ring in pieces.rings]
@@ -116,15 +115,25 @@ def _reach(view: View) -> tuple[float, float]:
     return max(view.south - 5, -90.0), min(view.north + 5, 90.0)
 
 
-def _hatch(ax: GeoAxes, rings: Sequence[Floats] | Floats) -> None:
-    """One hatched patch under all `rings`, so that the hatching runs on from cell to cell."""
-    if len(rings) == 0:
+def _strips(nodes: Floats, chosen: Mask) -> list[Floats]:
+    """The outlines of the chosen pieces of a mesh, neighbours in a row taken together."""
+    strips = []
+    for row in np.flatnonzero(chosen.any(axis=1)):
+        ends = np.flatnonzero(np.diff(chosen[row].astype(np.int8), prepend=0, append=0))
+        for start, stop in ends.reshape(-1, 2):
+            lower, upper = nodes[row, start : stop + 1], nodes[row + 1, start : stop + 1]
+            strips.append(np.concatenate([lower, upper[::-1]]))
+    return strips
+
+
+def _hatch(ax: GeoAxes, rings: Sequence[Floats]) -> None:
+    """One hatched patch of all `rings`, so that the hatching runs on from cell to cell."""
+    if not rings:
         return
-    patch = PathPatch(
-        Outline.make_compound_path(*(Outline(np.concatenate([ring, ring[:1]]), closed=True) for ring in rings)),
-        facecolor=theme.MISSING, edgecolor=theme.HATCH, hatch=theme.HATCHING, linewidth=0, zorder=2.2,
-    )
-    ax.add_patch(patch)
+    outline = Outline.make_compound_path(*(Outline(np.concatenate([ring, ring[:1]]), closed=True) for ring in rings))
+    ax.add_patch(PathPatch(
+        outline, facecolor=theme.MISSING, edgecolor=theme.HATCH, hatch=theme.HATCHING, linewidth=0, zorder=2.2
+    ))
 
 
 def _explain(figure: Figure, plate: Plate) -> None:

@@ -9,7 +9,7 @@ from __future__ import annotations
 import os
 import threading
 from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from pathlib import Path
 from typing import Literal
 
@@ -111,7 +111,8 @@ def save(figure: Figure, path: Path, title: str, description: str) -> Path:
         })
         os.replace(aside, path)
     except OSError as error:
-        aside.unlink(missing_ok=True)
+        with suppress(OSError):
+            aside.unlink(missing_ok=True)
         raise OutputError(
             f"the picture cannot be written: {error.strerror or error}", where=str(path),
             mend="free some space, or give `output: {folder: ...}` a folder that can be written",

@@ -12,6 +12,7 @@ import xarray as xr
 from matplotlib.image import imread
 
 import gridcarb.chemistry  # noqa: F401  (declares the derived fields)
+from gridcarb.figures.drawing import theme
 from gridcarb.figures.map import MapSettings, draw
 
 Pixels = npt.NDArray[np.uint8]
@@ -44,6 +45,12 @@ def make_result(*, step: float = 10.0, levels: tuple[float, ...] = (5.0, 500.0),
 @pytest.fixture
 def result() -> xr.Dataset:
     return make_result()
+
+
+@pytest.fixture(autouse=True)
+def small(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Pictures of fewer pixels, so that the tests are quick."""
+    monkeypatch.setattr(theme, "DPI", 80)
 
 
 @pytest.fixture

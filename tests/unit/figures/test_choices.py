@@ -26,7 +26,7 @@ def level(ds: xr.Dataset, wanted: float) -> Level:
 
 @pytest.mark.parametrize(
     ("wanted", "index"),
-    [("first", 0), ("last", 13), (3, 3), (-1, 13), ("2001-03", 2), ("2002", 12), ("2001-05-10", 4), ("2001-05-01T00:00", 3)],
+    [("first", 0), ("last", 13), (3, 3), (-1, 13), ("2001-03", 2), ("2002", 12), ("2001-05-10", 4), ("2001-05-01T01", 4)],
 )
 def test_times_are_found(wanted: str | int, index: int) -> None:
     assert moment(make_result(step=30, months=14), wanted).index == index
@@ -106,8 +106,8 @@ def test_a_scalar_depth_is_told() -> None:
 
 @pytest.mark.parametrize(
     ("units", "printed"),
-    [("umol kg-1", "µmol kg⁻¹"), ("uatm", "µatm"), ("1", ""), ("degC", "°C"), ("mol m-3", "mol m⁻³"), ("kg m-2 s-1", "kg m⁻² s⁻¹"),
-     ("days since 2001-01-01", "days since 2001-01-01"), ("m2", "m²")],
+    [("umol kg-1", "µmol kg⁻¹"), ("uatm", "µatm"), ("1", ""), ("degC", "°C"), ("mol m-3", "mol m⁻³"),
+     ("kg m-2 s-1", "kg m⁻² s⁻¹"), ("days since 2001-01-01", "days since 2001-01-01"), ("m2", "m²")],
 )
 def test_units_in_print(units: str, printed: str) -> None:
     assert readable_units(units) == printed
@@ -118,6 +118,7 @@ def test_words() -> None:
     assert with_units("carbon", "umol kg-1") == "carbon (µmol kg⁻¹)"
     assert sentence("pH on the total scale") == "pH on the total scale"
     assert sentence("total alkalinity") == "Total alkalinity"
-    assert [meridian(x) for x in (0, 360, 180, -180, 190, -30, 370)] == ["0°", "0°", "180°", "180°", "170°W", "30°W", "10°E"]
+    assert [meridian(x) for x in (0, 360, 180, -180)] == ["0°", "0°", "180°", "180°"]
+    assert [meridian(x) for x in (190, -30, 370)] == ["170°W", "30°W", "10°E"]
     assert [parallel(y) for y in (0, -60, 22.5)] == ["0°", "60°S", "22.5°N"]
     assert np.all([meridian(x) == meridian(x + 360) for x in range(-180, 181, 15)])

@@ -123,6 +123,10 @@ class Notice:
         return asdict(self)
 
 
+class NoticeWarning(UserWarning):
+    """A notice, as the Python face gives it."""
+
+
 def near_words(word: str, known: Iterable[str], most: int = 3) -> list[str]:
     """The known words that look most like `word`, best first."""
     words = list(known)

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from gridcarb.recipe.load import check, load
+from gridcarb.recipe.load import check, check_reading, load
 from gridcarb.recipe.model import Origin, Recipe
 from gridcarb.recipe.reference import Row, reference
 
-__all__ = ["Origin", "Recipe", "Row", "check", "load", "reference"]
+__all__ = ["Origin", "Recipe", "Row", "check", "check_reading", "load", "reference"]

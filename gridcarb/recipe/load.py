@@ -5,17 +5,19 @@ from __future__ import annotations
 import hashlib
 import json
 import os
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
 from pydantic import ValidationError
 
 from gridcarb.errors import Fault, RecipeError, did_you_mean
+from gridcarb.harmonise.settings import ReadingSettings
 from gridcarb.recipe.across import disagreements
 from gridcarb.recipe.faults import explain
 from gridcarb.recipe.model import Origin, Recipe
 from gridcarb.recipe.text import KeyPath, Parsed, dotted, parse
+from gridcarb.settings import Settings
 
 COMMAND_LINE = " (from the command line)"
 
@@ -48,6 +50,19 @@ def load(
 def check(text: str, where: str = "recipe") -> Recipe:
     """Check a recipe held in memory; its paths are relative to the working directory. Raises RecipeError."""
     return _checked(text, where, None, {})
+
+
+class _Reading(Settings):
+    reading: ReadingSettings
+
+
+def check_reading(words: Mapping[str, object]) -> ReadingSettings:
+    """Check a `reading` section given as a mapping. Raises RecipeError with every fault."""
+    parsed = Parsed({"reading": dict(words)}, {}, [])
+    try:
+        return _Reading.model_validate(parsed.data).reading
+    except ValidationError as error:
+        raise _error("reading", explain(error, parsed)) from None
 
 
 def _checked(text: str, where: str, path: Path | None, spoken: dict[KeyPath, object]) -> Recipe:

@@ -1,0 +1,13 @@
+"""The run: the one place that joins the stages.
+
+`prepare` turns a recipe into a plan from headers alone, `conduct` carries the plan out, `derive` does the same work
+lazily on a dataset in memory.
+"""
+
+from __future__ import annotations
+
+from gridcarb.run.conduct import conduct
+from gridcarb.run.lazy import derive
+from gridcarb.run.plan import Plan, prepare
+
+__all__ = ["Plan", "conduct", "derive", "prepare"]

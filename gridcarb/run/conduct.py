@@ -1,0 +1,204 @@
+"""Carrying a plan out: blocks, then the NetCDF export, then figures, then the journal; a whole result or none."""
+
+from __future__ import annotations
+
+import shutil
+import time
+from collections.abc import Iterator, Mapping
+from contextlib import contextmanager
+from dataclasses import dataclass, field
+from datetime import UTC, datetime
+from pathlib import Path
+from typing import Any, Protocol
+
+import xarray as xr
+
+from gridcarb.chemistry import CONSTANTS
+from gridcarb.chemistry.program import program
+from gridcarb.errors import GridcarbError, InputError, Notice
+from gridcarb.figures import FIGURES
+from gridcarb.products import PRODUCTS
+from gridcarb.run.engine import run_tasks
+from gridcarb.run.journal import journal_head, journal_tail
+from gridcarb.run.plan import FIGURE_FOLDER, FILE, STATUS, STORE, Plan
+from gridcarb.run.report import Report, outcome_report
+from gridcarb.run.task import Record, run_block
+from gridcarb.sources import open_collection
+from gridcarb.write.attributes import global_attributes
+from gridcarb.write.journal import JOURNAL, write_journal
+from gridcarb.write.netcdf import export
+from gridcarb.write.store import create
+
+
+class Watcher(Protocol):
+    """One who looks on; called from one thread."""
+
+    def start(self, total_blocks: int, cells: int) -> None: ...  # noqa: D102
+    def block_done(self, cells: int, note: str = "") -> None: ...  # noqa: D102
+    def message(self, text: str) -> None: ...  # noqa: D102
+    def stop(self) -> None: ...  # noqa: D102
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """A run that is complete.
+
+    written : what -> where.
+    products : product key -> its report.
+    seconds : leg of the run -> wall seconds; legs inside tasks are summed over tasks.
+    """
+
+    plan: Plan
+    written: Mapping[str, Path]
+    products: Mapping[str, Any]
+    seconds: Mapping[str, float]
+    notices: tuple[Notice, ...]
+
+    @property
+    def status_counts(self) -> dict[str, int]:
+        """Status word -> number of cells."""
+        return dict(self.products["ranges"][STATUS])
+
+    def summary(self) -> Report:
+        """The outcome in words and numbers."""
+        return outcome_report(self)
+
+
+@dataclass
+class _Sums:
+    """What the records of the blocks add up to."""
+
+    plan: Plan
+    masked: dict[str, int] = field(default_factory=dict)
+    seconds: dict[str, float] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        self.tallies = {key: product.start(self.plan.fields) for key, product in PRODUCTS.items()}
+
+    def add(self, record: Record) -> None:
+        for key, tally in self.tallies.items():
+            tally.merge(record.tallies[key])
+        for rule, count in record.masked.items():
+            self.masked[rule] = self.masked.get(rule, 0) + count
+        for leg, spent in record.seconds.items():
+            self.seconds[f"blocks: {leg}"] = self.seconds.get(f"blocks: {leg}", 0.0) + spent
+
+    @contextmanager
+    def timed(self, leg: str) -> Iterator[None]:
+        begun = time.perf_counter()
+        yield
+        self.seconds[leg] = time.perf_counter() - begun
+
+
+def conduct(plan: Plan, watcher: Watcher) -> Outcome:
+    """Do everything the plan says. The result folder gets its name only when all of it is there.
+
+    Raises
+    ------
+    GridcarbError : with the incomplete result kept beside the target, and its journal saying why.
+    """
+    begun = datetime.now(UTC)
+    notices = plan.folder.begin()
+    journal = journal_head(plan, begun)
+    sums = _Sums(plan)
+    partial = plan.folder.partial
+    try:
+        write_journal(partial / JOURNAL, journal)
+        _fill_store(plan, begun, partial, watcher, sums)
+        written = _derive_files(plan, partial, watcher, sums)
+        products = {key: tally.report() for key, tally in sums.tallies.items()}
+        finished = {**journal, **journal_tail("complete", products=products, masked_cells=sums.masked,
+                                              seconds=sums.seconds, written=sorted(written.values()))}  # fmt: skip
+        write_journal(partial / JOURNAL, finished)
+        target = plan.folder.complete()
+    except BaseException as error:
+        _give_up(plan, journal, error)
+        raise
+    places = {name: target / inside for name, inside in written.items()}
+    return Outcome(plan, {**places, "journal": target / JOURNAL}, products, sums.seconds, (*plan.notices, *notices))
+
+
+def _fill_store(plan: Plan, begun: datetime, partial: Path, watcher: Watcher, sums: _Sums) -> None:
+    job = plan.job(partial)
+    raw = open_collection(plan.collection)
+    with sums.timed("store"):
+        create(
+            job.store, template=raw, fields=plan.fields, axes=plan.collection.axes, chunks=plan.layout.chunks,
+            attributes=_attributes(plan, raw, begun), zarr_format=plan.recipe.output.zarr_format,
+            precision=plan.recipe.output.precision,
+        )  # fmt: skip
+    watcher.message("preparing the chemistry (a few seconds the first time on this machine)")
+    with sums.timed("compile"):
+        program(plan.recipe.chemistry.constants, tuple(entry.key for entry in plan.fields if entry.part == "derived"))
+    watcher.start(len(plan.layout), plan.layout.cells)
+
+    def done(record: Record) -> None:
+        sums.add(record)
+        watcher.block_done(record.cells)
+
+    with sums.timed("blocks"):
+        run_tasks(run_block, job, range(len(plan.layout)), workers=plan.workers, done=done)
+    watcher.stop()
+    _refuse_nothing(sums)
+
+
+def _refuse_nothing(sums: _Sums) -> None:
+    counts = sums.tallies["ranges"].report()[STATUS]
+    if not counts["solved"] + counts["outside_validity"]:
+        told = ", ".join(f"{count:,} {word}" for word, count in counts.items() if count)
+        raise InputError(
+            f"no cell could be computed: {told}", where="inputs",
+            mend="check the variables, fill values, units and land masks; `gridcarb plan` shows how they were understood",
+        )
+
+
+def _attributes(plan: Plan, raw: xr.Dataset, begun: datetime) -> dict[str, object]:
+    keys = dict.fromkeys(key for keys in CONSTANTS[plan.recipe.chemistry.constants].citations().values() for key in keys)
+    notes = [f"Constants: {plan.recipe.chemistry.constants}."]
+    notes += [f"{str(decision)[:1].upper()}{str(decision)[1:]}." for decision in plan.understanding.decisions]
+    notes += [f"Notice: {notice.text}." for notice in plan.notices]
+    return global_attributes(
+        title=plan.recipe.title, template=raw, axes=plan.collection.axes, fields=plan.fields, now=begun, citations=keys,
+        notes=notes, own=plan.recipe.output.attributes,
+    )
+
+
+def _derive_files(plan: Plan, partial: Path, watcher: Watcher, sums: _Sums) -> dict[str, str]:
+    """The NetCDF file and the figures, from the finished store; what -> place inside the result folder."""
+    written: dict[str, str] = {}
+    if plan.recipe.output.zarr:
+        written["Zarr store"] = STORE
+    if plan.recipe.output.netcdf:
+        watcher.message(f"exporting {FILE}")
+        with sums.timed("netcdf"):
+            export(partial / STORE, partial / FILE)
+        written["NetCDF file"] = FILE
+    if plan.recipe.figures:
+        with sums.timed("figures"):
+            written |= _draw(plan, partial, watcher)
+    if not plan.recipe.output.zarr:
+        shutil.rmtree(partial / STORE)
+    return written
+
+
+def _draw(plan: Plan, partial: Path, watcher: Watcher) -> dict[str, str]:
+    folder = partial / FIGURE_FOLDER
+    folder.mkdir(exist_ok=True)
+    written = {}
+    with xr.open_dataset(partial / STORE, engine="zarr", consolidated=False, chunks=None, cache=False, decode_timedelta=False) as result:
+        for number, settings in enumerate(plan.recipe.figures, start=1):
+            watcher.message(f"drawing figure {number} of {len(plan.recipe.figures)}")
+            place = FIGURES[settings.kind].draw(result, settings, folder)
+            written[f"figure {number}"] = str(place.relative_to(partial))
+    return written
+
+
+def _give_up(plan: Plan, journal: Mapping[str, object], error: BaseException) -> None:
+    """Leave the incomplete result beside its target, with a journal that says why it ended."""
+    state = "failed" if isinstance(error, Exception) else "interrupted"
+    told = {"kind": type(error).__name__, "text": str(error)}
+    try:
+        write_journal(plan.folder.partial / JOURNAL, {**journal, **journal_tail(state, error=told)})
+    except (OSError, GridcarbError):
+        pass  # the disk that failed the run may fail its journal too; the first error is the one to tell
+    plan.folder.abandon()

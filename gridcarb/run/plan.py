@@ -1,0 +1,143 @@
+"""The plan: everything a run will do, found out from headers, coordinates and small samples."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import numpy as np
+import xarray as xr
+
+from gridcarb.errors import Notice
+from gridcarb.fields import FIELDS, Field
+from gridcarb.figures import FIGURES
+from gridcarb.harmonise import Understanding, understand
+from gridcarb.recipe import Recipe
+from gridcarb.run.blocks import Layout, lay_out, reads_of_a_chunk
+from gridcarb.run.budget import Footprint, allowed_per_task, refuse_over_budget
+from gridcarb.run.engine import cores
+from gridcarb.run.task import Job
+from gridcarb.sources import Collection, gather, open_collection
+from gridcarb.write.amounts import per_volume, per_volume_field
+from gridcarb.write.folder import ResultFolder
+
+if TYPE_CHECKING:
+    from gridcarb.run.report import Report
+
+STORE = "fields.zarr"
+FILE = "fields.nc"
+FIGURE_FOLDER = "figures"
+STATUS = "solution_status"
+
+
+@dataclass(frozen=True)
+class Plan:
+    """A recipe that has been held against its inputs; nothing is computed and nothing written yet.
+
+    fields : what will be written, the status last, as it will be written (per mass or per volume).
+    footprint, allowed : memory of a cell, and of a task, in bytes.
+    """
+
+    recipe: Recipe
+    collection: Collection
+    understanding: Understanding
+    layout: Layout
+    fields: tuple[Field, ...]
+    workers: int
+    footprint: Footprint
+    allowed: int
+    folder: ResultFolder
+
+    @property
+    def notices(self) -> tuple[Notice, ...]:
+        """What was decided for the user, each once."""
+        found = (*self.collection.notices, *self.understanding.notices)
+        return tuple({(notice.code, notice.text): notice for notice in found}.values())
+
+    @property
+    def bytes_in(self) -> int:
+        """Bytes of all roles, uncompressed."""
+        return sum(source.array.nbytes for source in self.collection.roles.values())
+
+    @property
+    def bytes_out(self) -> int:
+        """Bytes of all fields, uncompressed, in one copy."""
+        width = np.dtype(self.recipe.output.precision).itemsize
+        cells = self.layout.cells
+        return sum(cells * (1 if field.part == "status" else width) for field in self.fields)
+
+    def reads_of_a_chunk(self) -> int:
+        """How often a chunk of the source is read, at most."""
+        return reads_of_a_chunk(self.layout, source_chunks(self.collection))
+
+    def job(self, partial: Path) -> Job:
+        """What the blocks have in common, for a store in the folder `partial`."""
+        return Job(
+            self.collection, self.understanding, self.layout, self.fields, self.recipe.chemistry.constants,
+            self.recipe.output.amounts == "per volume", partial / STORE,
+        )
+
+    def report(self) -> Report:
+        """The plan in words and numbers."""
+        from gridcarb.run.report import plan_report
+
+        return plan_report(self)
+
+
+def prepare(recipe: Recipe) -> Plan:
+    """Hold a recipe against its inputs: headers, coordinates and small samples are read, nothing is written.
+
+    Raises
+    ------
+    GridcarbError : for whatever would keep the run from ending well, as far as it can be known now.
+    """
+    folder = ResultFolder(recipe.output_folder(), replace=recipe.output.replace)
+    folder.check()
+    collection = gather(recipe.inputs, recipe.base)
+    raw = open_collection(collection)
+    understanding = understand(raw, recipe.reading)
+    header = raw.coords.to_dataset().assign_attrs(raw.attrs)
+    for settings in recipe.figures:
+        FIGURES[settings.kind].check(header, settings)
+    fields = _fields(recipe, understanding)
+    workers = recipe.engine.workers or cores()
+    footprint = _footprint(recipe, collection, fields)
+    allowed = allowed_per_task(recipe.engine.memory_bytes, workers)
+    layout = _layout(recipe, collection, footprint, allowed, workers)
+    refuse_over_budget(footprint, layout.cells_per_block, allowed, workers)
+    return Plan(recipe, collection, understanding, layout, fields, workers, footprint, allowed, folder)
+
+
+def source_chunks(collection: Collection) -> dict[str, int]:
+    """Chunk length of the input along each dimension: the largest of any role; 1 where nothing is chunked."""
+    found: dict[str, int] = {}
+    for source in collection.roles.values():
+        for dim, length in zip(source.array.dims, source.array.chunks or (), strict=False):
+            found[dim] = max(found.get(dim, 1), length)
+    return found
+
+
+def _fields(recipe: Recipe, understanding: Understanding) -> tuple[Field, ...]:
+    keys = [*(key for key in recipe.chemistry.fields if key != STATUS), STATUS]
+    if recipe.output.amounts == "per mass":
+        return tuple(FIELDS[key] for key in keys)
+    if understanding.density.kind == "none":
+        per_volume(xr.Dataset(), None)  # refuses, with the line to write
+    return tuple(per_volume_field(FIELDS[key]) for key in keys)
+
+
+def _footprint(recipe: Recipe, collection: Collection, fields: Sequence[Field]) -> Footprint:
+    raw = sum(np.dtype(source.array.dtype).itemsize for source in collection.roles.values())
+    return Footprint(raw, len(fields), np.dtype(recipe.output.precision).itemsize)
+
+
+def _layout(recipe: Recipe, collection: Collection, footprint: Footprint, allowed: int, workers: int) -> Layout:
+    axes = collection.axes
+    block = recipe.engine.block
+    stated = {key: value for key, value in (block.model_dump() if block else {}).items() if value}
+    return lay_out(
+        {dim: collection.sizes[dim] for dim in axes.order}, axes, cells=footprint.cells_within(allowed), workers=workers,
+        source_chunks=source_chunks(collection), stated=stated, item_bytes=footprint.item_bytes,
+    )  # fmt: skip

@@ -1,0 +1,181 @@
+"""What a plan and an outcome say: rows for people, plain data for machines."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, Any
+
+from gridcarb.chemistry import CONSTANTS
+from gridcarb.errors import Notice
+from gridcarb.write.disk import sized
+
+if TYPE_CHECKING:
+    from gridcarb.run.conduct import Outcome
+    from gridcarb.run.plan import Plan
+
+Rows = list[tuple[str, str]]
+
+
+@dataclass(frozen=True)
+class Section:
+    """A titled group of rows, each a label and a value."""
+
+    title: str
+    rows: Rows
+
+
+@dataclass(frozen=True)
+class Report:
+    """Sections in the order to be read, the notices, and the same as plain data."""
+
+    sections: Sequence[Section]
+    notices: Sequence[Notice]
+    data: dict[str, object] = field(default_factory=dict)
+
+    def as_dict(self) -> dict[str, object]:
+        """The report for machines: only what JSON knows."""
+        return self.data
+
+
+def plan_report(plan: Plan) -> Report:
+    """What will be read and how it is understood, the blocks, and what they cost."""
+    sections = [
+        Section("What will be read", _read_rows(plan)),
+        Section("How it is understood", _understood_rows(plan)),
+        Section("What will be computed", _computed_rows(plan)),
+        Section("What it will take", _cost_rows(plan)),
+        Section("Where it will go", _place_rows(plan)),
+    ]
+    return Report(sections, plan.notices, plan_data(plan))
+
+
+def outcome_report(outcome: Outcome) -> Report:
+    """What was read, computed and written, and what to look at first."""
+    plan = outcome.plan
+    sections = [
+        Section("What was read", _read_rows(plan)),
+        Section("How it was understood", _understood_rows(plan)),
+        Section("What was computed", [*_computed_rows(plan), *_status_rows(outcome), *_range_rows(outcome)]),
+        Section("Where it was written", [(name, str(path)) for name, path in outcome.written.items()]),
+        Section("What to look at first", _first_looks(outcome)),
+    ]
+    data = {**plan_data(plan), "written": {name: str(path) for name, path in outcome.written.items()},
+            "products": outcome.products, "seconds": outcome.seconds}  # fmt: skip
+    return Report(sections, outcome.notices, data)
+
+
+def plan_data(plan: Plan) -> dict[str, object]:
+    """A plan as plain data."""
+    return {
+        "title": plan.recipe.title,
+        "inputs": plan.collection.describe(),
+        "grid": {"kind": plan.collection.kind, "sizes": dict(plan.layout.sizes)},
+        "understood": [
+            {"subject": each.subject, "reading": each.reading, "because": each.because}
+            for each in plan.understanding.decisions
+        ],
+        "notices": [notice.as_dict() for notice in plan.notices],
+        "constants": plan.recipe.chemistry.constants,
+        "fields": [entry.key for entry in plan.fields],
+        "blocks": {
+            "count": len(plan.layout), "size": dict(plan.layout.block), "stored_chunks": dict(plan.layout.chunks),
+            "reads_of_a_source_chunk": plan.reads_of_a_chunk(),
+        },
+        "bytes": {"in": plan.bytes_in, "out": plan.bytes_out},
+        "memory": {
+            "workers": plan.workers, "allowed_per_task": plan.allowed,
+            "projected_per_task": plan.footprint.projected(plan.layout.cells_per_block),
+        },
+        "result": str(plan.folder.target),
+    }  # fmt: skip
+
+
+def _read_rows(plan: Plan) -> Rows:
+    rows: Rows = []
+    for row in plan.collection.describe():
+        files = f"{row['files']} files from {row['first_file']}" if row["files"] > 1 else str(row["first_file"])
+        rows.append((str(row["role"]), f"{row['variable']} ({row['units'] or 'no units'}), found {row['match']}, in {files}"))
+    sizes = " x ".join(f"{dim} {size}" for dim, size in plan.layout.sizes.items())
+    rows.append(("grid", f"{plan.collection.kind}: {sizes or 'one cell'} = {plan.layout.cells:,} cells"))
+    return rows
+
+
+def _understood_rows(plan: Plan) -> Rows:
+    return [(each.subject, f"{each.reading} ({each.because})") for each in plan.understanding.decisions]
+
+
+def _computed_rows(plan: Plan) -> Rows:
+    chosen = CONSTANTS[plan.recipe.chemistry.constants]
+    keys = [entry.key for entry in plan.fields if entry.part != "status"]
+    return [("constants", f"{chosen.key}: {chosen.title}"), ("fields", ", ".join(keys))]
+
+
+def _cost_rows(plan: Plan) -> Rows:
+    layout = plan.layout
+    size = " x ".join(f"{dim} {length}" for dim, length in layout.block.items())
+    projected = plan.footprint.projected(layout.cells_per_block)
+    rows = [
+        ("blocks", f"{len(layout)} of up to {size or 'one cell'}"),
+        ("bytes in", f"{sized(plan.bytes_in)} uncompressed"),
+        ("bytes out", f"{sized(plan.bytes_out)} uncompressed in each copy"),
+        ("memory", f"{sized(projected)} a task, {plan.workers} at a time; {sized(plan.allowed)} a task are allowed"),
+    ]
+    times = plan.reads_of_a_chunk()
+    if times > 1:
+        rows.append(("reading", f"a chunk of the source is read up to {times} times: the blocks are smaller than its chunks"))
+    return rows
+
+
+def _place_rows(plan: Plan) -> Rows:
+    output = plan.recipe.output
+    kept = [("Zarr store" + f" (format {output.zarr_format})") * output.zarr, "NetCDF-4 file" * output.netcdf]
+    figures = len(plan.recipe.figures)
+    kept.append(f"{figures} figure{'s' * (figures != 1)}" * bool(figures))
+    return [("result", str(plan.folder.target)), ("holding", ", ".join([*filter(None, kept), "journal"]))]
+
+
+def _status_rows(outcome: Outcome) -> Rows:
+    counts = outcome.status_counts
+    total = sum(counts.values())
+    rows = [("cells solved", f"{counts['solved'] + counts['outside_validity']:,} of {total:,}")]
+    words = {
+        "outside_validity": "solved, outside the range of the constants",
+        "missing_input": "without input (land, sea floor, gaps)",
+        "unphysical_input": "with unphysical input",
+        "unsolved": "not solved",
+    }
+    rows += [(f"  {text}", f"{counts[word]:,}") for word, text in words.items() if counts.get(word)]
+    return rows
+
+
+def _range_rows(outcome: Outcome) -> Rows:
+    rows: Rows = []
+    for entry in outcome.plan.fields:
+        found: dict[str, Any] = outcome.products["ranges"][entry.key]
+        if entry.part == "status" or not found["values"]:
+            continue
+        low, high = (_number(found[end], entry.digits) for end in ("minimum", "maximum"))
+        units = "" if entry.units == "1" else f" {entry.units}"
+        strange = found["below_sane_range"] + found["above_sane_range"]
+        note = f"; {strange:,} outside the usual range" if strange else ""
+        rows.append((entry.key, f"{low} to {high}{units}{note}"))
+    return rows
+
+
+def _number(value: float, digits: int) -> str:
+    return f"{value:.{digits}f}" if digits <= 6 else f"{value:.4g}"
+
+
+def _first_looks(outcome: Outcome) -> Rows:
+    rows: Rows = [("map", str(path)) for name, path in outcome.written.items() if name.startswith("figure")]
+    if "NetCDF file" in outcome.written:
+        rows.append(("in Python", f"xarray.open_dataset({str(outcome.written['NetCDF file'])!r})"))
+    elif "Zarr store" in outcome.written:
+        rows.append(("in Python", f"xarray.open_zarr({str(outcome.written['Zarr store'])!r})"))
+    rows.append(("journal", "what was read, decided and computed, with every citation"))
+    rows.append((
+        "caution", "computed from gridded input, with the uncertainty of its constants (about 0.1 in aragonite saturation); "
+        "for hatchery, water-quality or dosing decisions rely on local measurement, local rules and licensed practice",
+    ))
+    return rows

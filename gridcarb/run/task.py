@@ -1,0 +1,110 @@
+"""The one task a block is: open its slice, clothe it, solve it, count it, write it, and give back a small record."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+import xarray as xr
+
+from gridcarb.chemistry.stage import solve
+from gridcarb.errors import BlockError, GridcarbError
+from gridcarb.fields import Field
+from gridcarb.harmonise import Understanding, clothe
+from gridcarb.products import PRODUCTS, Tally
+from gridcarb.run.blocks import Layout
+from gridcarb.sources import Collection, open_collection
+from gridcarb.write.amounts import per_volume
+from gridcarb.write.store import write_block
+
+
+@dataclass(frozen=True)
+class Job:
+    """What every block of a run has in common; plain data that travels to the workers once."""
+
+    collection: Collection
+    understanding: Understanding
+    layout: Layout
+    fields: tuple[Field, ...]
+    constants: str
+    volumes: bool
+    store: Path
+
+    @property
+    def keys(self) -> tuple[str, ...]:
+        """The catalogue keys to solve for."""
+        return tuple(entry.key for entry in self.fields)
+
+
+@dataclass(frozen=True)
+class Record:
+    """What is left of a block when it is done."""
+
+    number: int
+    cells: int
+    checksums: Mapping[str, str]
+    tallies: Mapping[str, Tally]
+    masked: Mapping[str, int]
+    seconds: Mapping[str, float] = field(default_factory=dict)
+
+
+def run_block(job: Job, number: int) -> Record:
+    """Do block `number` of a job from its files to the store. Doing it twice leaves the same bytes.
+
+    Raises
+    ------
+    GridcarbError : whatever went wrong, with the block in its `where`.
+    """
+    try:
+        return _run_block(job, number)
+    except GridcarbError as error:
+        error.where = f"{error.where} (block {number + 1} of {len(job.layout)})".strip()
+        raise
+    except Exception as error:
+        raise BlockError(
+            f"{type(error).__name__}: {error}", where=f"block {number + 1} of {len(job.layout)}: {job.layout.region(number)}",
+            mend="run again with --debug to see where it happened; nothing of an earlier result was touched",
+        ) from error
+
+
+def _run_block(job: Job, number: int) -> Record:
+    clock = _Clock()
+    region = job.layout.region(number)
+    raw = open_collection(job.collection).isel(region, missing_dims="ignore").load()
+    clock.lap("read")
+    clothed = clothe(raw, job.understanding)
+    clock.lap("harmonise")
+    solved = solve(clothed, job.keys, job.constants)
+    if job.volumes:
+        solved = per_volume(solved, clothed.get("density"))
+    clock.lap("solve")
+    tallies = _tallies(job.fields, solved)
+    clock.lap("summarise")
+    checksums = write_block(job.store, region, solved)
+    clock.lap("write")
+    cells = int(solved[job.keys[0]].size)
+    return Record(number, cells, checksums, tallies, clothed.attrs["masked_cells"], clock.laps)
+
+
+def _tallies(fields: tuple[Field, ...], solved: xr.Dataset) -> dict[str, Tally]:
+    tallies = {key: product.start(fields) for key, product in PRODUCTS.items()}
+    for tally in tallies.values():
+        tally.add(solved)
+    return tallies
+
+
+class _Clock:
+    """Seconds of each leg of a task."""
+
+    def __init__(self) -> None:
+        self.laps: dict[str, float] = {}
+        self._last = time.perf_counter()
+
+    def lap(self, name: str) -> None:
+        now = time.perf_counter()
+        self.laps[name] = now - self._last
+        self._last = now
+

@@ -35,10 +35,9 @@ class SegmentedArray(BackendArray):
             return self._read_segment(segment, _with(key, time, step - segment.start))
         steps = np.arange(self.shape[time])[key[time]]
         parts = [self._read_segment(segment, _with(key, time, local)) for segment, local in self._stretches(steps)]
-        place = sum(isinstance(part, (slice, np.ndarray)) for part in key[:time])
         if not parts:
-            empty = self._read_segment(self.source.segments[0], _with(key, time, slice(0, 0)))
-            return empty
+            return self._read_segment(self.source.segments[0], _with(key, time, slice(0, 0)))
+        place = sum(isinstance(part, (slice, np.ndarray)) for part in key[:time])
         return parts[0] if len(parts) == 1 else np.concatenate(parts, axis=place)
 
     def _segment_at(self, step: int) -> Segment:
@@ -92,7 +91,4 @@ def _variable(source: ArraySource) -> xr.Variable:
     attrs = dict(source.attrs)
     if source.values is not None:
         return xr.Variable(source.dims, source.values.copy(), attrs)
-    variable = xr.Variable(source.dims, LazilyIndexedArray(SegmentedArray(source)), attrs)
-    if source.chunks:
-        variable.encoding["preferred_chunks"] = dict(zip(source.dims, source.chunks, strict=True))
-    return variable
+    return xr.Variable(source.dims, LazilyIndexedArray(SegmentedArray(source)), attrs)

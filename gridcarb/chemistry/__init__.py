@@ -5,11 +5,13 @@ Importing it fills the shelves: formulas, sets of constants, columns, and the de
 
 from __future__ import annotations
 
-import gridcarb.chemistry.cell  # noqa: F401  (declares the columns of a cell)
+import gridcarb.chemistry.cell
 from gridcarb.chemistry.constants_set import CONSTANTS
 from gridcarb.chemistry.declare import COLUMNS, DERIVED, FORMULAS
 from gridcarb.fields import FIELDS
 from gridcarb.shelf import load_folder
+
+__all__ = ["COLUMNS", "CONSTANTS", "DERIVED", "FORMULAS"]
 
 for _folder in ("formulas", "constants", "derived"):
     load_folder(f"{__name__}.{_folder}")

@@ -72,14 +72,15 @@ def compile_function(function: Callable[..., Any]) -> Any:
         return numba.njit(cache=True, **options)(function)
 
 
-def scalar(function: Callable[..., float]) -> Any:
+def scalar(function: Callable[..., Any]) -> Any:
     """Compile a function of one cell, to be inlined into a tile loop. `.py_func` stays the plain source."""
     return numba.njit(nogil=True, error_model="numpy", fastmath=_FLAGS)(function)
 
 
 def plain(function: Any) -> Callable[..., Any]:
     """The Python function behind a compiled one (itself when the compiler is off)."""
-    return getattr(function, "py_func", function)
+    found: Callable[..., Any] = getattr(function, "py_func", function)
+    return found
 
 
 def arguments(function: Any) -> tuple[str, ...]:

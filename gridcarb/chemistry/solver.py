@@ -9,7 +9,12 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
+import numpy.typing as npt
+
 from gridcarb.chemistry.compiled import TILE, compile_function, scalar
+
+Row = npt.NDArray[np.float64]
 
 SWEEPS = 4
 SETTLED = 1e-8
@@ -77,7 +82,8 @@ def newton_step(
     """The Newton step in ln h: (alkalinity at h - alkalinity) / buffer."""
     carbon, carbon_buffer = carbonate(h, k1, k2, dic)
     other, other_buffer = noncarbonate(h, kb, kw, kp1, kp2, kp3, ksi, ks, kf, bt, st, ft, pt, sit)
-    return (carbon + other - alk) / (carbon_buffer + other_buffer)
+    step: float = (carbon + other - alk) / (carbon_buffer + other_buffer)
+    return step
 
 
 @scalar
@@ -117,7 +123,8 @@ def first_guess(alk: float, dic: float, bt: float, k1: float, k2: float, kb: flo
 
 
 def sweep_tile(
-    h, step, k1, k2, kb, kw, kp1, kp2, kp3, ksi, ks, kf, bt, st, ft, pt, sit, dic, alk  # type: ignore[no-untyped-def]
+    h: Row, step: Row, k1: Row, k2: Row, kb: Row, kw: Row, kp1: Row, kp2: Row, kp3: Row, ksi: Row, ks: Row, kf: Row,
+    bt: Row, st: Row, ft: Row, pt: Row, sit: Row, dic: Row, alk: Row,
 ) -> None:  # fmt: skip
     """Start and four Newton steps for every cell of a tile; `step` keeps the size of the last one.
 
@@ -138,7 +145,8 @@ def sweep_tile(
 
 
 def settle_tile(
-    h, step, k1, k2, kb, kw, kp1, kp2, kp3, ksi, ks, kf, bt, st, ft, pt, sit, dic, alk  # type: ignore[no-untyped-def]
+    h: Row, step: Row, k1: Row, k2: Row, kb: Row, kw: Row, kp1: Row, kp2: Row, kp3: Row, ksi: Row, ks: Row, kf: Row,
+    bt: Row, st: Row, ft: Row, pt: Row, sit: Row, dic: Row, alk: Row,
 ) -> None:  # fmt: skip
     """Bracketed Newton in ln h for the cells of a tile that the sweeps left unsettled.
 

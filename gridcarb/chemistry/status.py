@@ -4,8 +4,14 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
+import numpy.typing as npt
+
 from gridcarb.chemistry.compiled import TILE, compile_function
 from gridcarb.fields import Field, Ink, declare
+
+Flags = npt.NDArray[np.int8]
+Row = npt.NDArray[np.float64]
 
 SOLVED, OUTSIDE, MISSING, UNPHYSICAL, UNSOLVED = range(5)
 
@@ -36,7 +42,10 @@ S_HIGH = 300.0
 P_BAR_HIGH = 1500.0
 
 
-def judge_tile(flags, t, s, p_bar, dic, alk, pt, sit, t_low, t_high, s_low, s_high):  # type: ignore[no-untyped-def]
+def judge_tile(
+    flags: Flags, t: Row, s: Row, p_bar: Row, dic: Row, alk: Row, pt: Row, sit: Row,
+    t_low: float, t_high: float, s_low: float, s_high: float,
+) -> None:  # fmt: skip
     """Flag every cell of a tile by its input, and put harmless water into the cells that cannot be solved."""
     bad = 0
     for i in range(TILE):
@@ -59,14 +68,14 @@ def judge_tile(flags, t, s, p_bar, dic, alk, pt, sit, t_low, t_high, s_low, s_hi
             dic[i], alk[i], pt[i], sit[i] = 2.1e-3, 2.3e-3, 0.0, 0.0
 
 
-def seal_tile(flags, h, step, settled):  # type: ignore[no-untyped-def]
+def seal_tile(flags: Flags, h: Row, step: Row, settled: float) -> int:
     """Flag the cells whose root was not found; returns the worst flag of the tile."""
     worst = SOLVED
     for i in range(TILE):
         if flags[i] < MISSING and not (h[i] > 0.0 and math.isfinite(h[i]) and abs(step[i]) < settled):
             flags[i] = UNSOLVED
         worst = max(worst, flags[i])
-    return worst
+    return int(worst)
 
 
 judge = compile_function(judge_tile)

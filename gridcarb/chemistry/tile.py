@@ -88,7 +88,8 @@ def _checked(fields: Sequence[str]) -> tuple[str, ...]:
 def _broadcast(**inputs: npt.ArrayLike) -> list[npt.NDArray[np.floating]]:
     arrays: dict[str, npt.NDArray[np.floating]] = {}
     for name, value in inputs.items():
-        array = np.ma.filled(value.astype(np.float64), np.nan) if isinstance(value, np.ma.MaskedArray) else np.asarray(value)
+        masked = isinstance(value, np.ma.MaskedArray)
+        array = np.ma.filled(value.astype(np.float64), np.nan) if masked else np.asarray(value)
         if array.dtype.kind not in "fiu":
             raise InputError(f"{name} is not made of real numbers (dtype {array.dtype})", where=f"speciate: {name}")
         arrays[name] = array if array.dtype in (np.float64, np.float32) else array.astype(np.float64)
@@ -97,7 +98,8 @@ def _broadcast(**inputs: npt.ArrayLike) -> list[npt.NDArray[np.floating]]:
     except ValueError:
         shapes = ", ".join(f"{name} {array.shape}" for name, array in arrays.items() if array.shape)
         raise InputError(
-            f"the inputs do not broadcast: {shapes}", where="speciate", mend="give arrays of one shape, or of length 1 where a value is shared"
+            f"the inputs do not broadcast: {shapes}", where="speciate",
+            mend="give arrays of one shape, or of length 1 where a value is shared",
         ) from None
     return list(arrays.values())
 

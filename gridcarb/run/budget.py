@@ -58,7 +58,8 @@ def refuse_over_budget(footprint: Footprint, cells: int, allowed: int, workers: 
         return
     fits = footprint.cells_within(allowed)
     raise BudgetError(
-        f"a block of {cells:,} cells would take {needed / 1e6:,.0f} MB, and each of {workers} workers has {allowed / 1e6:,.0f} MB",
+        f"a block of {cells:,} cells would take {needed / 1e6:,.0f} MB, and each of {workers} workers has "
+        f"{allowed / 1e6:,.0f} MB",
         where="engine",
         mend=f"write `memory: {needed * workers / 1e9 + 0.1:.1f} GB` or fewer `workers` under `engine` in the recipe, "
         f"or a smaller `block` (up to {fits:,} cells with its whole column would fit)",

@@ -5,7 +5,7 @@ from __future__ import annotations
 import shutil
 import time
 from collections.abc import Iterator, Mapping
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from pathlib import Path
@@ -185,7 +185,7 @@ def _draw(plan: Plan, partial: Path, watcher: Watcher) -> dict[str, str]:
     folder = partial / FIGURE_FOLDER
     folder.mkdir(exist_ok=True)
     written = {}
-    with xr.open_dataset(partial / STORE, engine="zarr", consolidated=False, chunks=None, cache=False, decode_timedelta=False) as result:
+    with xr.open_zarr(partial / STORE, consolidated=False, chunks=None, decode_timedelta=False) as result:
         for number, settings in enumerate(plan.recipe.figures, start=1):
             watcher.message(f"drawing figure {number} of {len(plan.recipe.figures)}")
             place = FIGURES[settings.kind].draw(result, settings, folder)
@@ -197,8 +197,7 @@ def _give_up(plan: Plan, journal: Mapping[str, object], error: BaseException) ->
     """Leave the incomplete result beside its target, with a journal that says why it ended."""
     state = "failed" if isinstance(error, Exception) else "interrupted"
     told = {"kind": type(error).__name__, "text": str(error)}
-    try:
+    # The disk that failed the run may fail its journal too; the first error is the one to tell.
+    with suppress(OSError, GridcarbError):
         write_journal(plan.folder.partial / JOURNAL, {**journal, **journal_tail(state, error=told)})
-    except (OSError, GridcarbError):
-        pass  # the disk that failed the run may fail its journal too; the first error is the one to tell
     plan.folder.abandon()

@@ -95,7 +95,8 @@ def _read_rows(plan: Plan) -> Rows:
     rows: Rows = []
     for row in plan.collection.describe():
         files = f"{row['files']} files from {row['first_file']}" if row["files"] > 1 else str(row["first_file"])
-        rows.append((str(row["role"]), f"{row['variable']} ({row['units'] or 'no units'}), found {row['match']}, in {files}"))
+        units = row["units"] or "no units"
+        rows.append((str(row["role"]), f"{row['variable']} ({units}), found {row['match']}, in {files}"))
     sizes = " x ".join(f"{dim} {size}" for dim, size in plan.layout.sizes.items())
     rows.append(("grid", f"{plan.collection.kind}: {sizes or 'one cell'} = {plan.layout.cells:,} cells"))
     return rows
@@ -123,7 +124,7 @@ def _cost_rows(plan: Plan) -> Rows:
     ]
     times = plan.reads_of_a_chunk()
     if times > 1:
-        rows.append(("reading", f"a chunk of the source is read up to {times} times: the blocks are smaller than its chunks"))
+        rows.append(("reading", f"a chunk of the source is read up to {times} times: blocks are smaller than its chunks"))
     return rows
 
 
@@ -175,7 +176,8 @@ def _first_looks(outcome: Outcome) -> Rows:
         rows.append(("in Python", f"xarray.open_zarr({str(outcome.written['Zarr store'])!r})"))
     rows.append(("journal", "what was read, decided and computed, with every citation"))
     rows.append((
-        "caution", "computed from gridded input, with the uncertainty of its constants (about 0.1 in aragonite saturation); "
-        "for hatchery, water-quality or dosing decisions rely on local measurement, local rules and licensed practice",
+        "caution", "computed from gridded input, with the uncertainty of its constants (about 0.1 in aragonite "
+        "saturation); for hatchery, water-quality or dosing decisions rely on local measurement, local rules and "
+        "licensed practice",
     ))
     return rows

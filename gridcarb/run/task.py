@@ -6,7 +6,6 @@ import time
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
-from typing import Any
 
 import xarray as xr
 
@@ -65,7 +64,8 @@ def run_block(job: Job, number: int) -> Record:
         raise
     except Exception as error:
         raise BlockError(
-            f"{type(error).__name__}: {error}", where=f"block {number + 1} of {len(job.layout)}: {job.layout.region(number)}",
+            f"{type(error).__name__}: {error}",
+            where=f"block {number + 1} of {len(job.layout)}: {job.layout.region(number)}",
             mend="run again with --debug to see where it happened; nothing of an earlier result was touched",
         ) from error
 

@@ -13,7 +13,8 @@ def noncarbonate_buffer(
     bt: float, st: float, ft: float, pt: float, sit: float,
 ) -> float:  # fmt: skip
     """d(non-carbonate alkalinity)/d(-ln h), mol/kg: W of the extended buffer factors."""
-    return noncarbonate(h, kb, kw, kp1, kp2, kp3, ksi, ks, kf, bt, st, ft, pt, sit)[1]
+    alkalinity_and_buffer: tuple[float, float] = noncarbonate(h, kb, kw, kp1, kp2, kp3, ksi, ks, kf, bt, st, ft, pt, sit)
+    return alkalinity_and_buffer[1]
 
 
 @derived(Field(
@@ -24,4 +25,5 @@ def noncarbonate_buffer(
 def revelle_factor(h: float, k1: float, k2: float, dic: float, noncarbonate_buffer: float) -> float:
     """DIC / gamma_DIC = (HCO3 + 4 CO3 + W) / (DIC var + W); no difference of like numbers is taken."""
     charged = dic * k1 * (h + 4.0 * k2) / (h * (h + k1) + k1 * k2)
-    return (charged + noncarbonate_buffer) / (carbonate(h, k1, k2, dic)[1] + noncarbonate_buffer)
+    alkalinity_and_buffer: tuple[float, float] = carbonate(h, k1, k2, dic)
+    return (charged + noncarbonate_buffer) / (alkalinity_and_buffer[1] + noncarbonate_buffer)

@@ -58,7 +58,7 @@ def test_chunking_and_order_change_no_bit(cuts: list[int], seed: int) -> None:
     cells = waters(2 * TILE + 17, seed)
     whole = speciate(**cells)
     pieces = [
-        speciate(**{name: piece for name, piece in zip(cells, parts, strict=True)})
+        speciate(**dict(zip(cells, parts, strict=True)))
         for parts in zip(*(np.split(value, sorted(set(cuts))) for value in cells.values()), strict=True)
     ]
     order = np.random.default_rng(seed).permutation(2 * TILE + 17)

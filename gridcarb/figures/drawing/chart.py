@@ -60,7 +60,7 @@ def publish(plate: Plate, path: Path) -> Path:
         height = min(room / plate.view.aspect, 7.2)
         width = height * plate.view.aspect
         across = max(width, 5.4) + 2 * _SIDE
-        lines = textwrap.wrap(plate.title, int(across * 7.6)) or [""]
+        lines = textwrap.wrap(plate.title, int((across - 2 * _SIDE) * theme.LETTERS)) or [""]
         notes = _shades(plate)
         top = 0.45 + theme.LINE * len(lines) + (0.26 if plate.subtitle or notes else 0.0)
         foot = 1.12 if plate.label else 0.8

@@ -37,6 +37,8 @@ DPI = 200
 TITLE, TEXT, SMALL = 14.0, 10.5, 8.5
 LINE = 0.27
 """Distance between the lines of a title, in inches."""
+LETTERS = 8.8
+"""Letters of a title that fit into an inch."""
 
 Corner = Literal["lower right", "lower center"]
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import socket
 from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
 import matplotlib
@@ -31,6 +32,13 @@ def test_the_same_input_gives_the_same_bytes_whatever_the_users_style(result: xr
         second = draw(result, settings(), tmp_path / "b").read_bytes()
     assert first == second
     assert b"matplotlib" not in first.lower()
+
+
+def test_threads_do_not_disturb_each_other(result: xr.Dataset, tmp_path: Path) -> None:
+    alone = [draw(result, settings(depth=depth), tmp_path / "alone").read_bytes() for depth in (0, 500)]
+    with ThreadPoolExecutor(2) as pool:
+        together = list(pool.map(lambda depth: draw(result, settings(depth=depth), tmp_path / "together"), (0, 500)))
+    assert [path.read_bytes() for path in together] == alone
 
 
 def test_nothing_is_fetched(result: xr.Dataset, picture: Picture, monkeypatch: pytest.MonkeyPatch) -> None:

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-import cftime  # type: ignore[import-untyped]
+import cftime
 import numpy as np
 import xarray as xr
 

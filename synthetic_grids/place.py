@@ -13,7 +13,7 @@ from synthetic_grids.sphere import RADIUS_KM, Numbers, distance, point, ripples
 HALVREN = point(110.0, -77.0)
 """Centre of the polar sea that makes deep water."""
 
-OMBARY = point(338.0, 24.0)
+OMBARY = point(331.0, 24.0)
 """The middle of the upwelling coast."""
 
 MOUTH = point(*OSHEL_MOUTH)
@@ -65,10 +65,10 @@ def places(longitude: ArrayLike, latitude: ArrayLike) -> Place:
     With f the latitude, p = -sin(2 lon) the position across a basin, m and e ripples (meanders and eddies):
 
     climate latitude = |f| + a (2 m + 0.4 e + (6 p + 1.6 m + 0.9 e) bell(|f|, 36, 20)), a = 1 - bell(f, 0, 9);
-    bowl = 110 + (380 - 150 p) bell(|f|, 30, 13) (1 - 0.35 old) + 170 bell(|f|, 52, 9) + 25 a e;
-    coastal = exp(-c / 380 km) bell(f, 24, 13) bell(g, 0, 24) (0.9 + 0.1 e), c the distance from the coast,
+    bowl = 110 + (380 - 150 p) bell(|f|, 30, 13) (1 - 0.45 old) + 170 bell(|f|, 52, 9) + 25 a e;
+    coastal = bell(c, 0, 480 km) bell(f, 24, 13) bell(g, 0, 24) (0.9 + 0.1 e), c the distance from the coast,
     g the angle from the middle of the Ombary Coast;
-    lift = 260 coastal + 40 (0.55 + 0.45 p) bell(f + m, 0, 4);
+    lift = 300 coastal + 40 (0.55 + 0.45 p) bell(f + m, 0, 4);
     age = old (0.72 + 0.28 n) + (1 - old) (0.04 + 0.13 n), n = (1 + tanh((f - 5) / 30)) / 2;
     river = 6/7 exp(-(s / 620 km)^2), s the distance from the mouth of the Oshel.
     """
@@ -84,9 +84,9 @@ def places(longitude: ArrayLike, latitude: ArrayLike) -> Place:
     north = 0.5 * (1.0 + np.tanh((lat - 5.0) / 30.0))
     away = 1.0 - bell(off_equator, 0.0, 9.0)
     bending = 2.0 * meander + 0.4 * eddies + (6.0 * across + 1.6 * meander + 0.9 * eddies) * bell(off_equator, 36.0, 20.0)
-    gyre = (380.0 - 150.0 * across) * bell(off_equator, 30.0, 13.0) * (1.0 - 0.35 * old)
+    gyre = (380.0 - 150.0 * across) * bell(off_equator, 30.0, 13.0) * (1.0 - 0.45 * old)
     ombary = bell(np.degrees(distance(where, OMBARY) / RADIUS_KM), 0.0, 24.0)
-    coastal = np.exp(-coast / 380.0) * bell(lat, 24.0, 13.0) * ombary * (0.9 + 0.1 * eddies)
+    coastal = bell(coast, 0.0, 480.0) * bell(lat, 24.0, 13.0) * ombary * (0.9 + 0.1 * eddies)
     return Place(
         latitude=lat,
         climate_latitude=np.asarray(off_equator + bending * away),
@@ -94,7 +94,7 @@ def places(longitude: ArrayLike, latitude: ArrayLike) -> Place:
         age=np.asarray(old * (0.72 + 0.28 * north) + (1.0 - old) * (0.04 + 0.13 * north)),
         across=across,
         bowl=np.asarray(110.0 + gyre + 170.0 * bell(off_equator, 52.0, 9.0) + 25.0 * eddies * away),
-        lift=np.asarray(260.0 * coastal + 40.0 * (0.55 + 0.45 * across) * bell(lat + meander, 0.0, 4.0)),
+        lift=np.asarray(300.0 * coastal + 40.0 * (0.55 + 0.45 * across) * bell(lat + meander, 0.0, 4.0)),
         coastal=np.asarray(coastal),
         formation=bell(distance(where, HALVREN), 0.0, 1700.0),
         river=np.asarray(6.0 / 7.0 * bell(distance(where, MOUTH), 0.0, 620.0)),

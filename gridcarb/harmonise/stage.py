@@ -133,9 +133,7 @@ def _read_headers(
     return draft, (warm, salt, place, *tracers.values(), rho, assumed)
 
 
-def _check_sample(
-    raw: xr.Dataset, draft: Understanding, settings: ReadingSettings
-) -> tuple[Notice, ...]:
+def _check_sample(raw: xr.Dataset, draft: Understanding, settings: ReadingSettings) -> tuple[Notice, ...]:
     """Look at small samples of the first time step, and refuse what is not plausible."""
     roles = _roles_read(draft)
     samples = _wet_samples(raw[list(roles)], draft)
@@ -166,29 +164,31 @@ def _mask_notices(counts: list[dict[str, int]]) -> tuple[Notice, ...]:
 
 
 def _wet_samples(raw: xr.Dataset, draft: Understanding) -> list[xr.Dataset]:
-    """Loaded patches with water in them, or the first slab with any; InputError if the whole first step has none."""
+    """Loaded patches if any has water in it, else the first slab that has; InputError if the whole first step has none."""
     axes = draft.axes
     top = depth.top_level(raw, axes, draft.masks, draft.place)
-    spread = [_wet(raw, window, draft) for window in plausibility.patches(axes, raw.sizes, top)]
-    found = [piece for piece in spread if piece is not None]
-    if found:
-        return found
+    spread = [_load(raw, window) for window in plausibility.patches(axes, raw.sizes, top)]
+    if any(_wet(piece, draft) for piece in spread):
+        return spread
     for window in plausibility.slabs(axes, raw.sizes):
-        piece = _wet(raw, window, draft)
-        if piece is not None:
+        piece = _load(raw, window)
+        if _wet(piece, draft):
             return [piece]
     raise InputError("no cell of the first time step has temperature, salinity, DIC and alkalinity: all is missing",
                      where=", ".join(REQUIRED_ROLES), mend="check the variables, their fill values and their land masks")
 
 
-def _wet(raw: xr.Dataset, window: Mapping[str, slice], draft: Understanding) -> xr.Dataset | None:
-    """The loaded slice, if any cell of it has all required roles."""
-    piece = raw.isel({dim: part for dim, part in window.items() if dim in raw.dims}).load()
+def _load(raw: xr.Dataset, window: Mapping[str, slice]) -> xr.Dataset:
+    return raw.isel({dim: part for dim, part in window.items() if dim in raw.dims}).load()
+
+
+def _wet(piece: xr.Dataset, draft: Understanding) -> bool:
+    """Whether any cell of a loaded slice has all required roles."""
     clean, _ = masks.unmask_roles(piece, draft.masks, REQUIRED_ROLES)
     wet = xr.DataArray(True)
     for values in clean.values():
         wet = wet & values.notnull()
-    return piece if bool(wet.any()) else None
+    return bool(wet.any())
 
 
 def _roles_read(understanding: Understanding) -> tuple[str, ...]:

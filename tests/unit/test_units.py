@@ -7,7 +7,7 @@ from fractions import Fraction
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from gridcarb import units
@@ -52,6 +52,7 @@ def test_spelling_means_its_size_exactly(text: str, size: str) -> None:
     assert found.size / plain.size == Fraction(number)
 
 
+@settings(deadline=None)
 @given(st.sampled_from(CASES), st.sampled_from(CASES), st.floats(1e-6, 1e6))
 def test_conversion_there_and_back_is_the_identity(one: tuple[str, str], other: tuple[str, str], number: float) -> None:
     if units.read(one[0]).kind != units.read(other[0]).kind:

@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 import pytest
 import xarray as xr
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from gridcarb.errors import InputError
@@ -106,6 +106,7 @@ def test_land_by_physics_only_where_salinity_and_alkalinity_both_vanish() -> Non
     assert tuple(counts) == RULES
 
 
+@settings(deadline=None)
 @given(st.lists(st.sampled_from([1.0, 2.5, 1e20, -999.0, np.nan, 0.0]), min_size=1, max_size=12))
 def test_counts_add_up_over_slices(values: list[float]) -> None:
     raw = xr.Dataset({name: ("x", np.array(values), {"_FillValue": 1e20}) for name in ("salinity", "alkalinity")})

@@ -97,6 +97,12 @@ def test_masks_that_differ(ocean: Ocean) -> None:
     assert understand(raw, ReadingSettings(mask_difference=cure)) is not None
 
 
+def test_a_role_that_covers_part_of_the_map_is_refused(ocean: Ocean) -> None:
+    raw = ocean(depths=(5.0,), steps=1, rows=200, columns=200)  # sampled by patches
+    raw["dic"][..., :100] = 1e20
+    assert "different places" in refusal(raw).what
+
+
 def test_all_missing_is_refused_after_looking_everywhere(ocean: Ocean) -> None:
     raw = ocean()
     raw["dic"][:] = 1e20

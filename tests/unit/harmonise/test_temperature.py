@@ -8,7 +8,7 @@ import gsw
 import numpy as np
 import pytest
 import xarray as xr
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from gridcarb.errors import InputError, UnitsError
@@ -20,8 +20,7 @@ from gridcarb.harmonise.temperature import TemperatureReading, in_situ, read_tem
 def read(
     deepest: float = 5000.0, file: dict[str, Any] | None = None, stated: Any = None, **attrs: Any
 ) -> Decided[TemperatureReading]:
-    settings = ReadingSettings(temperature=stated)
-    return read_temperature({"units": "degC", **attrs}, settings, deepest, file or {})
+    return read_temperature({"units": "degC", **attrs}, ReadingSettings(temperature=stated), deepest, file or {})
 
 
 @pytest.mark.parametrize(("name", "kind"), [
@@ -81,6 +80,7 @@ def test_kelvin_by_units_never_by_values() -> None:
     assert "reading: {units: {temperature: degC}}" in caught.value.mend
 
 
+@settings(deadline=None)
 @given(st.floats(-1.9, 35), st.floats(0.5, 42), st.floats(0, 10000))
 def test_kinds_meet_in_one_temperature(t: float, salinity: float, pressure: float) -> None:
     given_as: dict[TemperatureKind, float] = {

@@ -88,8 +88,9 @@ def _checked(fields: Sequence[str]) -> tuple[str, ...]:
 def _broadcast(**inputs: npt.ArrayLike) -> list[npt.NDArray[np.floating]]:
     arrays: dict[str, npt.NDArray[np.floating]] = {}
     for name, value in inputs.items():
-        masked = isinstance(value, np.ma.MaskedArray)
-        array = np.ma.filled(value.astype(np.float64), np.nan) if masked else np.asarray(value)
+        if isinstance(value, np.ma.MaskedArray):
+            value = value.astype(np.float64).filled(np.nan)
+        array = np.asarray(value)
         if array.dtype.kind not in "fiu":
             raise InputError(f"{name} is not made of real numbers (dtype {array.dtype})", where=f"speciate: {name}")
         arrays[name] = array if array.dtype in (np.float64, np.float32) else array.astype(np.float64)

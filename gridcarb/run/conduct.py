@@ -33,10 +33,10 @@ from gridcarb.write.store import create
 class Watcher(Protocol):
     """One who looks on; called from one thread."""
 
-    def start(self, total_blocks: int, cells: int) -> None: ...  # noqa: D102
-    def block_done(self, cells: int, note: str = "") -> None: ...  # noqa: D102
-    def message(self, text: str) -> None: ...  # noqa: D102
-    def stop(self) -> None: ...  # noqa: D102
+    def start(self, total_blocks: int, cells: int) -> None: ...
+    def block_done(self, cells: int, note: str = "") -> None: ...
+    def message(self, text: str) -> None: ...
+    def stop(self) -> None: ...
 
 
 @dataclass(frozen=True)

@@ -152,20 +152,20 @@ class _Survey:
         aside = self.bounds | self.pointed | {str(name) for name in ds.coords}
         aside |= set(_referred(ds, ("cell_measures", "grid_mapping", "formula_terms", "ancillary_variables")))
         aside |= {name for name in self.names if self._is_coordinate(name)}
-        self.data = [name for name in self.names if name not in aside and ds[name].ndim]
+        self.data = [name for name in self.names if name not in aside and ds.variables[name].ndim]
         basis = self.data or [name for name in self.names if name not in self.bounds]
-        self.dims = list(dict.fromkeys(str(dim) for name in basis for dim in ds[name].dims))
+        self.dims = list(dict.fromkeys(str(dim) for name in basis for dim in ds.variables[name].dims))
 
     def _is_coordinate(self, name: str) -> bool:
         """A coordinate that no variable points at, known by more than its name."""
-        variable = self.ds[name]
+        variable = self.ds.variables[name]
         marks = (_TIME, _VERTICAL) if variable.ndim == 1 else ()
         planes = (_LATITUDE, _LONGITUDE) if variable.ndim in (1, 2) else ()
         return any(self.rank(name, kind) > _NAMED_ALONE for kind in (*marks, *planes))
 
     def rank(self, name: str, marks: _Marks) -> int:
         """How strongly the variable looks like a coordinate of this kind; 0: not at all."""
-        variable = self.ds[name]
+        variable = self.ds.variables[name]
         attrs = {**variable.encoding, **variable.attrs}
         standard_name = str(attrs.get("standard_name", "")).strip()
         if standard_name in marks.standard_names:
@@ -175,12 +175,15 @@ class _Survey:
         stranger = bool(standard_name) and standard_name not in marks.standard_names
         if not stranger and marks.units.match(str(attrs.get("units", "")).strip().lower()):
             return 3
-        if marks is _TIME and not stranger and _holds_dates(variable):
+        if marks is _TIME and not stranger and self._holds_dates(name):
             return 3
         if marks is _VERTICAL and "positive" in attrs and (name in variable.dims or name in self.ds.coords):
             return 2
         known = name in variable.dims or name in self.ds.coords or name in self.pointed or marks in (_LATITUDE, _LONGITUDE)
         return _NAMED_ALONE if known and not stranger and name.lower() in marks.names else 0
+
+    def _holds_dates(self, name: str) -> bool:
+        return self.ds.variables[name].dtype.kind == "M" or isinstance(self.ds.indexes.get(name), xr.CFTimeIndex)
 
     def best(self, marks: _Marks, dims: list[str], most: int) -> str | None:
         """The likeliest coordinate with at most `most` dimensions, all among `dims`; scalars come last.
@@ -190,7 +193,7 @@ class _Survey:
         """
         found = []
         for place, name in enumerate(self.names):
-            variable = self.ds[name]
+            variable = self.ds.variables[name]
             rank = 0 if name in self.bounds else self.rank(name, marks)
             if rank and variable.ndim <= most and set(variable.dims) <= set(dims):
                 own, pointed = name in variable.dims, name in self.pointed
@@ -201,7 +204,7 @@ class _Survey:
     def best_field(self, marks: _Marks, dims: list[str], level_dims: list[str]) -> str | None:
         """A vertical coordinate with several dimensions (depths that differ from column to column)."""
         for name in self.names:
-            own = set(self.ds[name].dims)
+            own = set(self.ds.variables[name].dims)
             pointed = name in self.pointed or name in self.ds.coords
             if pointed and self.rank(name, marks) and own <= set(dims) and len(own & set(level_dims)) == 1:
                 return name
@@ -218,13 +221,8 @@ def _referred(ds: xr.Dataset, keys: Iterable[str]) -> list[str]:
     return [word for word in words if word in ds.variables]
 
 
-def _holds_dates(variable: xr.DataArray) -> bool:
-    index = variable.indexes.get(variable.name) if variable.name in variable.dims else None
-    return variable.dtype.kind == "M" or isinstance(index, xr.CFTimeIndex)
-
-
 def _dims(ds: xr.Dataset, name: str | None) -> tuple[str, ...]:
-    return tuple(str(dim) for dim in ds[name].dims) if name else ()
+    return tuple(str(dim) for dim in ds.variables[name].dims) if name else ()
 
 
 def _dim_of(ds: xr.Dataset, name: str | None) -> str | None:
@@ -263,7 +261,7 @@ def _refuse_strangers(survey: _Survey, left: list[str]) -> None:
     if not strangers:
         return
     dim = strangers[0]
-    holders = [name for name in survey.data if dim in survey.ds[name].dims]
+    holders = [name for name in survey.data if dim in survey.ds.variables[name].dims]
     raise InputError(
         f"the dimension '{dim}' (size {survey.ds.sizes[dim]}) is neither time, nor vertical, nor horizontal",
         where="variable " + ", ".join(holders[:6]) if holders else "",

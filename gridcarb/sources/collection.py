@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -36,7 +36,7 @@ class Segment:
     stop: int
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class ArraySource:
     """One variable across its files, in the dimensions of the reference grid and in canonical order.
 
@@ -57,7 +57,7 @@ class ArraySource:
     chunks: tuple[int, ...] | None
     segments: tuple[Segment, ...]
     time_axis: int | None
-    values: npt.NDArray[Any] | None = field(default=None, compare=False)
+    values: npt.NDArray[Any] | None = None
 
     @property
     def nbytes(self) -> int:
@@ -65,7 +65,7 @@ class ArraySource:
         return int(np.prod(self.shape, dtype=np.int64)) * np.dtype(self.dtype).itemsize
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class RoleSource:
     """Which variable plays a role, and how it was recognised: 'by standard_name', 'by name (CMIP)', 'as told'."""
 
@@ -75,7 +75,7 @@ class RoleSource:
     array: ArraySource
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Collection:
     """Everything known of the inputs from their headers.
 

@@ -119,11 +119,11 @@ def _part(role: str, one: Candidate, gaps: str) -> _Part:
         )
     for header in headers[1:]:
         _refuse_other_make(role, one.variable, header, headers[0])
-        grids.refuse_difference(role, Grid.of(header, one.variable), one.variable, first)
+        grids.refuse_difference(role, Grid.of(header, one.variable, first), one.variable, first)
     if first.axes.time is not None:
         line = _line(role, first, headers, gaps)
         headers = [headers[place] for place in line.order]
-    return _Part(one.variable, one.how, tuple(headers), Grid.of(headers[0], one.variable), line)
+    return _Part(one.variable, one.how, tuple(headers), Grid.of(headers[0], one.variable, first), line)
 
 
 def _line(role: str, first: Grid, headers: Sequence[Header], gaps: str) -> Timeline:

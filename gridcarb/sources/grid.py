@@ -10,7 +10,7 @@ import numpy.typing as npt
 
 from gridcarb.axes import Axes
 from gridcarb.errors import InputError
-from gridcarb.sources.headers import Header
+from gridcarb.sources.headers import POINTERS, Header
 
 _DEGREES = 1e-4
 _DEPTH = 1e-3
@@ -29,8 +29,10 @@ class Grid:
     axes: Axes
 
     @classmethod
-    def of(cls, header: Header, variable: str) -> Grid:
-        """The grid a variable lies on, from the header of its file."""
+    def of(cls, header: Header, variable: str, sibling: Grid | None = None) -> Grid:
+        """The grid a variable lies on, from the header of its file; a file laid out like a sibling has its axes."""
+        if sibling and _layout(header, variable) == _layout(sibling.header, variable):
+            return cls(header, variable, sibling.axes)
         return cls(header, variable, header.axes_of(variable))
 
     def size(self, dim: str | None) -> int:
@@ -46,6 +48,13 @@ class Grid:
     def attribute(self, name: str | None, key: str) -> str:
         """An attribute of a coordinate, '' where absent."""
         return str(self.header.heads[name].attrs.get(key, "")).strip() if name else ""
+
+
+def _layout(header: Header, variable: str) -> dict[str, tuple[Any, ...]]:
+    """All that tells the axes of a variable, save the sizes."""
+    names = (variable, *header.coordinates_of(variable))
+    keys = ("standard_name", "axis", "units", "positive", *POINTERS)
+    return {name: (header.heads[name].dims, *(header.heads[name].attrs.get(key) for key in keys)) for name in names}
 
 
 def refuse_difference(role: str, grid: Grid, reference_name: str, reference: Grid) -> None:

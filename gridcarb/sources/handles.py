@@ -30,7 +30,7 @@ Key = tuple[Any, ...]
 class Handles:
     """Open datasets by path, the least recently used closed first; a file that changed since is opened anew."""
 
-    def __init__(self, lock: threading.RLock, limit: int = LIMIT) -> None:  # type: ignore[valid-type, unused-ignore]
+    def __init__(self, lock: contextlib.AbstractContextManager[Any], limit: int = LIMIT) -> None:
         self.lock = lock
         self.limit = limit
         self._open: OrderedDict[str, tuple[tuple[int, int], xr.Dataset]] = OrderedDict()
@@ -84,8 +84,11 @@ def read(path: str, variable: str, key: Key) -> npt.NDArray[Any]:
             return np.asarray(handles.dataset(path).variables[variable][key].values)
     except InputError:
         raise
-    except KeyError:
-        raise InputError(f"the variable '{variable}' is no longer there", where=path, mend="run again") from None
+    except (KeyError, FileNotFoundError):
+        raise InputError(
+            f"the variable '{variable}' is no longer there: the file was moved or changed while it was in use",
+            where=path, mend="put the file back, or run again with what is there now",
+        ) from None
     except (OSError, RuntimeError, ValueError) as error:
         raise unreadable(f"{path}: {variable}", error) from error
 

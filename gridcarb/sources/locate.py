@@ -21,7 +21,7 @@ def locate(patterns: Sequence[str], base: Path) -> list[str]:
     ------
     InputError : a glob without a match, or a path with nothing there.
     """
-    found: dict[str, None] = {}
+    found: dict[str, str] = {}
     for pattern in patterns:
         full = str(base.absolute() / Path(pattern).expanduser())
         if Path(full).exists():
@@ -32,8 +32,10 @@ def locate(patterns: Sequence[str], base: Path) -> list[str]:
             raise InputError("there is no such file", where=full, mend=_near(full))
         if not matches:
             raise InputError(f"no file matches '{pattern}'", where=full, mend=_near(full))
-        found.update(dict.fromkeys(str(Path(match).resolve()) for match in matches))
-    return list(found)
+        for match in matches:
+            # Links keep their names, which say more than what they point at; a file meant twice counts once.
+            found.setdefault(os.path.realpath(match), os.path.normpath(match))
+    return list(found.values())
 
 
 def _near(full: str) -> str:

@@ -80,7 +80,7 @@ def test_a_file_that_vanished_after_it_was_gathered(gathered, ocean, save, tmp_p
     path = save(ocean(), tmp_path / "a.nc")
     ds = open_collection(gathered(tmp_path, files="a.nc"))
     path.unlink()
-    with pytest.raises(InputError):
+    with pytest.raises(InputError, match="no longer there"):
         ds.salinity.load()
 
 

@@ -3,9 +3,9 @@
 Two continents stand about 180 degrees apart. *Tarvane* (around 0 E) and *Quellorn* (around 178 E) meet in the north
 under the cap of *Norrask*, and taper to capes in the south. Between them lie the *Lorrin Ocean* (20 to 155 E, young
 water) and the wider *Vasht Ocean* (200 to 345 E, old water). The south pole is open: the *Halvren Sea*, where deep
-water is made, leads freely into the Lorrin, while *Isker Land* and the submarine *Sebbin Rise* shut most of it off from
+water is made, leads freely into the Lorrin, while *Yskerra* and the submarine *Sebbin Rise* shut most of it off from
 the Vasht. The *Mirrel Sea* is a shelf sea cut into the east coast of Tarvane; the river *Oshel* enters its head. The
-*Ombary Coast*, the west coast of Tarvane between 10 and 38 N, is where deep Vasht water wells up. The *Drass Trench*
+*Ombary Coast*, the west coast of Tarvane between 10 and 38 N, is where deep Vasht water wells up. The *Dravask Trench*
 follows the east coast of Quellorn.
 """
 
@@ -34,22 +34,34 @@ LANDS: dict[str, tuple[Stroke, ...]] = {
         Stroke((188.0, 36.0), (217.0, 44.0), 1100.0, 380.0),
         Stroke((176.0, -14.0), (152.0, -22.0), 800.0, 330.0),
     ),
-    "Norrask": (Stroke((-20.0, 74.0), (80.0, 82.0), 1300.0, 1150.0), Stroke((80.0, 82.0), (168.0, 72.0), 1150.0, 1100.0),
-                Stroke((80.0, 83.0), (250.0, 79.0), 900.0, 800.0)),
-    "Isker Land": (Stroke((212.0, -63.0), (262.0, -70.0), 330.0, 900.0),
-                   Stroke((262.0, -70.0), (322.0, -60.0), 900.0, 320.0)),
-    "Great Orrel": (Stroke((84.0, -22.0), (108.0, -33.0), 850.0, 420.0),
-                    Stroke((104.0, -20.0), (112.0, -13.0), 260.0, 200.0)),
-    "Pell Isles": (Stroke((64.0, 3.0), (69.0, 8.0), 240.0, 160.0), Stroke((78.0, 12.0), (80.0, 12.5), 190.0, 140.0),
-                   Stroke((88.0, 14.0), (93.0, 19.0), 170.0, 220.0)),
-    "Sebbin Isles": (Stroke((236.0, -9.0), (240.0, -4.0), 230.0, 150.0),
-                     Stroke((248.0, 2.0), (251.0, 3.0), 190.0, 160.0),
-                     Stroke((259.0, 9.0), (264.0, 14.0), 190.0, 180.0),
-                     Stroke((283.0, -33.0), (290.0, -39.0), 420.0, 260.0)),
+    "Norrask": (
+        Stroke((-20.0, 74.0), (80.0, 82.0), 1300.0, 1150.0),
+        Stroke((80.0, 82.0), (168.0, 72.0), 1150.0, 1100.0),
+        Stroke((80.0, 83.0), (250.0, 79.0), 900.0, 800.0),
+    ),
+    "Yskerra": (
+        Stroke((212.0, -63.0), (262.0, -70.0), 330.0, 900.0),
+        Stroke((262.0, -70.0), (322.0, -60.0), 900.0, 320.0),
+    ),
+    "Great Orrel": (
+        Stroke((84.0, -22.0), (108.0, -33.0), 850.0, 420.0),
+        Stroke((104.0, -20.0), (112.0, -13.0), 260.0, 200.0),
+    ),
+    "Pellowen Isles": (
+        Stroke((64.0, 3.0), (69.0, 8.0), 240.0, 160.0),
+        Stroke((78.0, 12.0), (80.0, 12.5), 190.0, 140.0),
+        Stroke((88.0, 14.0), (93.0, 19.0), 170.0, 220.0),
+    ),
+    "Sebbin Isles": (
+        Stroke((236.0, -9.0), (240.0, -4.0), 230.0, 150.0),
+        Stroke((248.0, 2.0), (251.0, 3.0), 190.0, 160.0),
+        Stroke((259.0, 9.0), (264.0, 14.0), 190.0, 180.0),
+        Stroke((283.0, -33.0), (290.0, -39.0), 420.0, 260.0),
+    ),
 }
 """Land by name: the union of its strokes."""
 
-MIRREL_SEA = (Stroke((12.0, 46.0), (31.0, 43.0), 430.0, 850.0), Stroke((31.0, 43.0), (54.0, 44.0), 650.0, 450.0),)
+MIRREL_SEA = (Stroke((12.0, 46.0), (31.0, 43.0), 430.0, 850.0), Stroke((31.0, 43.0), (54.0, 44.0), 650.0, 450.0))
 """Sea cut out of the land after the strokes of `LANDS` are laid."""
 
 OSHEL_MOUTH = (7.5, 46.5)
@@ -63,7 +75,7 @@ RIDGES = (
 )
 """Crests of the mid-ocean ridges (the last is the Sebbin Rise)."""
 
-DRASS_TRENCH = Stroke((221.0, 34.0), (203.0, -34.0), 0.0, 0.0)
+DRAVASK_TRENCH = Stroke((221.0, 34.0), (203.0, -34.0), 0.0, 0.0)
 """The line the trench follows at a fixed distance from the coast."""
 
 BASIN_POLE = point(272.0, 12.0)
@@ -111,17 +123,13 @@ def oldness(where: Point) -> Numbers:
 
 
 def sea_floor_depth(longitude: ArrayLike, latitude: ArrayLike) -> Numbers:
-    """Depth of the sea floor in m, at least 25 in the sea and 0 on land."""
-    return floor_under(point(longitude, latitude))
-
-
-def floor_under(where: Point) -> Numbers:
-    """As `sea_floor_depth`, for unit vectors.
+    """Depth of the sea floor in m, at least 25 in the sea and 0 on land. Degrees east and north, shapes that broadcast.
 
     Shelf, slope and abyss by distance from the coast c (km), with w the width of the shelf:
     25 + 115 tanh(c / w) + 4160 (1 + tanh((c - w - 130) / 75)) / 2, then gently down into the abyss over 900 km.
     Ridges rise 2300 m above that (e-fold 600 km, rough flanks); the trench falls 4200 m below it, 320 km off the coast.
     """
+    where = point(longitude, latitude)
     coast = coast_distance(where)
     mirrel = np.exp(-((distance(where, point(27.0, 43.0)) / 1500.0) ** 2))
     width = 70.0 + 40.0 * np.abs(ripples(where, 71, 4, 5.0)) + 900.0 * mirrel
@@ -131,7 +139,7 @@ def floor_under(where: Point) -> Numbers:
     abyss = (900.0 + 280.0 * ripples(where, 83, 7, 9.0)) * (1.0 - np.exp(-off / 900.0))
     to_ridge = _nearest(RIDGES, warp(where, 91, 5, 6.0, 0.02))
     ridge_height = 2300.0 * np.exp(-to_ridge / 600.0) * (1.0 - np.exp(-off / 500.0))
-    beside = np.exp(-((DRASS_TRENCH.distance(where) / 2000.0) ** 4))
+    beside = np.exp(-((DRAVASK_TRENCH.distance(where) / 2000.0) ** 4))
     trench = 4200.0 * beside * np.exp(-(((coast - 320.0) / 75.0) ** 2))
     depth = shelf + slope + abyss - ridge_height + trench
     return np.asarray(np.where(coast > 0.0, depth, 0.0))

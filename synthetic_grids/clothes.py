@@ -137,7 +137,8 @@ def dress(truth: xr.Dataset, depth: xr.DataArray, latitude: xr.DataArray, clothe
 def write(dataset: xr.Dataset, path: Path, split: Sequence[str] = ()) -> None:
     """Write a NetCDF-4 file exactly as the dataset stands (attributes include the fill values), deflated.
 
-    A chunk holds whole dims, single steps of those in `split`. Coordinates and bounds carry no fill value.
+    A chunk holds whole dims, single steps of those in `split`. Coordinates and bounds carry no fill value. The file is
+    written aside and renamed: the library would delete one that somebody is reading, and then refuse to write it.
     """
     encoding: dict[str, dict[str, object]] = {}
     for name, variable in dataset.variables.items():
@@ -146,4 +147,6 @@ def write(dataset: xr.Dataset, path: Path, split: Sequence[str] = ()) -> None:
             encoding[str(name)] = {"zlib": True, "complevel": 9, "shuffle": True, "chunksizes": chunks}
         else:
             encoding[str(name)] = {"_FillValue": None}
-    dataset.to_netcdf(path, engine="netcdf4", format="NETCDF4", encoding=encoding)
+    aside = path.with_suffix(".partial")
+    dataset.to_netcdf(aside, engine="netcdf4", format="NETCDF4", encoding=encoding)
+    aside.replace(path)

@@ -86,6 +86,15 @@ def test_rounding_stays_within_half_a_step(scene: Scene) -> None:
     assert np.nanmax(np.abs(wet(rounded) - wet(plain))) <= 0.125
 
 
+def test_a_file_being_read_can_be_written_again(tmp_path: Path, scene: Scene) -> None:
+    clothed = scene.dressed()[["so"]]
+    write(clothed, tmp_path / "so.nc")
+    with netCDF4.Dataset(tmp_path / "so.nc") as reader:
+        write(clothed, tmp_path / "so.nc")
+        assert reader["so"][:].count() == int(scene.truth["salinity"].notnull().sum())
+    assert [path.name for path in tmp_path.iterdir()] == ["so.nc"]
+
+
 def test_file_says_what_it_holds(tmp_path: Path, scene: Scene) -> None:
     write(scene.dressed()[["talk"]], tmp_path / "talk.nc", split=("lev",))
     with netCDF4.Dataset(tmp_path / "talk.nc") as file:

@@ -168,14 +168,17 @@ class _Survey:
         variable = self.ds.variables[name]
         attrs = {**variable.encoding, **variable.attrs}
         standard_name = str(attrs.get("standard_name", "")).strip()
-        if standard_name in marks.standard_names:
+        named = standard_name in marks.standard_names
+        stranger = bool(standard_name) and not named
+        units = not stranger and bool(marks.units.match(str(attrs.get("units", "")).strip().lower()))
+        if marks is _TIME and (units or (not stranger and self._holds_dates(name))):
+            # Only such a variable says when; one without may be a bare counter, whatever else it is called.
+            return 6
+        if named:
             return 5
         if marks.axis and str(attrs.get("axis", "")).strip().upper() == marks.axis:
             return 4
-        stranger = bool(standard_name) and standard_name not in marks.standard_names
-        if not stranger and marks.units.match(str(attrs.get("units", "")).strip().lower()):
-            return 3
-        if marks is _TIME and not stranger and self._holds_dates(name):
+        if units:
             return 3
         if marks is _VERTICAL and "positive" in attrs and (name in variable.dims or name in self.ds.coords):
             return 2
@@ -188,8 +191,8 @@ class _Survey:
     def best(self, marks: _Marks, dims: list[str], most: int) -> str | None:
         """The likeliest coordinate with at most `most` dimensions, all among `dims`; scalars come last.
 
-        Time is told by the coordinate of its own dimension; elsewhere such a coordinate may be a bare counter, and
-        one that the data variables point at goes first.
+        Of two times that tell dates, the one of its own dimension is taken. Elsewhere such a coordinate may be a bare
+        counter, and one that the data variables point at goes first.
         """
         found = []
         for place, name in enumerate(self.names):
@@ -197,8 +200,8 @@ class _Survey:
             rank = 0 if name in self.bounds else self.rank(name, marks)
             if rank and variable.ndim <= most and set(variable.dims) <= set(dims):
                 own, pointed = name in variable.dims, name in self.pointed
-                first, last = (own, pointed) if marks is _TIME else (pointed, own)
-                found.append((variable.ndim > 0, first, rank, variable.ndim, last, -place, name))
+                evidence = (rank, own, pointed) if marks is _TIME else (pointed, rank, variable.ndim, own)
+                found.append((variable.ndim > 0, evidence, -place, name))
         return max(found)[-1] if found else None
 
     def best_field(self, marks: _Marks, dims: list[str], level_dims: list[str]) -> str | None:

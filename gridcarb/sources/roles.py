@@ -152,7 +152,7 @@ def _of_one_depth(found: dict[str, list[Candidate]]) -> tuple[dict[str, list[Can
         if aside and kept[role] is fitting:
             names = ", ".join(f"'{one.variable}'" for one in aside)
             reason = "has no levels while the other roles have" if deep else "has levels while other roles have none"
-            state = f"inputs: {{{role}: {fitting[0].variable}}}" if fitting else f"reading: {{{role}: ...}}"
+            state = f"inputs: {{{role}: {fitting[0].variable}}}" if fitting else f"reading: {{{role}: assume zero}}"
             notices.append(Notice("left-aside", f"{names} was not taken as {role}: it {reason}", state))
     return kept, notices
 

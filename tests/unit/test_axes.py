@@ -111,6 +111,16 @@ def test_time_is_told_by_its_own_dimension() -> None:
     assert find_axes(ds).time_coordinate == "t"
 
 
+def test_a_bare_counter_gives_way_to_a_time_that_tells_dates() -> None:
+    dates = {"units": "seconds since 1900-01-01", "standard_name": "time", "calendar": "360_day"}
+    ds = xr.Dataset(
+        {"f": (("t", "x"), np.zeros((2, 3)), {"coordinates": "middle"}), "middle": ("t", [0.5, 1.5], dates)},
+        coords={"t": ("t", [0.0, 0.0], {"axis": "T"})},
+    )
+    axes = find_axes(ds)
+    assert (axes.time, axes.time_coordinate) == ("t", "middle")
+
+
 def test_unstructured_and_stations() -> None:
     ds = xr.Dataset(
         {"f": (("cell", "z"), np.zeros((4, 2)), {"coordinates": "y x"}),

@@ -176,7 +176,8 @@ def _same(one: Any, two: Any) -> bool:
     if left.dtype.kind == right.dtype.kind == "f":
         # A fill value of 1e20 is another number in single than in double precision.
         narrow = min(left.dtype, right.dtype, key=lambda dtype: dtype.itemsize)
-        left, right = left.astype(narrow), right.astype(narrow)
+        with np.errstate(over="ignore"):
+            left, right = left.astype(narrow), right.astype(narrow)
     return np.array_equal(left, right, equal_nan=True)
 
 
@@ -186,9 +187,8 @@ def _said(value: Any) -> str:
 
 def _checked(role: str, part: _Part, reference: _Part) -> list[Notice]:
     """Time axis and grid against the reference; what was let pass is told."""
-    notices = list(part.line.notices) if part.line else []
     if part is reference:
-        return notices
+        return list(part.line.notices) if part.line else []
     grids.refuse_difference(role, part.grid, _REFERENCE, reference.grid)
     if part.line and reference.line:
         timeline.refuse_difference(role, part.line, _REFERENCE, reference.line)
@@ -198,12 +198,12 @@ def _checked(role: str, part: _Part, reference: _Part) -> list[Notice]:
             where=part.headers[0].place(part.variable), mend=f"give files of {_REFERENCE} on the same time axis",
         )
     elif reference.line:
-        notices.append(Notice(
+        return [Notice(
             "constant-in-time",
             f"{role} has no time dimension: the same values are used at all {reference.line.steps} times",
             f"inputs: {{{role}: {part.variable}}}",
-        ))
-    return notices
+        )]
+    return []
 
 
 def _field(part: _Part, reference: _Part, kept: Sequence[str]) -> ArraySource:

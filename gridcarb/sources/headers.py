@@ -35,7 +35,7 @@ class Head:
     chunks: tuple[int, ...] | None = None
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Header:
     """One file: its variables, global attributes, and the values (whole or sampled) of its small coordinates."""
 

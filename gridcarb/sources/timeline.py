@@ -213,7 +213,7 @@ def _gaps(role: str, line: Timeline, gaps: str) -> tuple[Notice, ...]:
             text, where=f"{where}: {role}",
             mend="add the missing files, or write `inputs: {time_gaps: accept}` in the recipe",
         )
-    return (Notice("time-gap", f"{role}: {text}", "inputs: {time_gaps: accept}"),)
+    return (Notice("time-gap", text, "inputs: {time_gaps: accept}"),)
 
 
 def _gap_places(line: Timeline) -> Numbers:

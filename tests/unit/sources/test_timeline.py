@@ -91,6 +91,15 @@ def test_a_gap_is_refused_or_noticed(with_bounds: bool) -> None:
     assert [notice.code for notice in build("dic", pieces, "accept").notices] == ["time-gap"]
 
 
+def test_a_gap_of_all_roles_is_told_once(gathered, ocean, save, tmp_path: Path) -> None:
+    for start in (0, 10):
+        save(ocean(times=np.arange(start, start + 5) * 30.0), tmp_path / f"{start}.nc")
+    with pytest.raises(InputError, match="time steps are missing"):
+        gathered(tmp_path, files="*.nc")
+    collection = gathered(tmp_path, files="*.nc", time_gaps="accept")
+    assert [notice.code for notice in collection.notices] == ["time-gap"]
+
+
 def test_bounds_tell_a_gap_that_steps_cannot() -> None:
     values = np.array([15.0, 75.0])
     units = Units("days since 2000-01-01", "360_day")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
@@ -18,7 +19,8 @@ from gridcarb.sources.storage import fingerprint, stamp
 
 _SMALL = 20_000
 _LINE = 1_000_000
-"""Coordinates up to so many values are read whole (of one dimension, or with two bounds); larger ones are sampled."""
+"""Coordinates up to so many values are read whole (_LINE: of one dimension, or with two bounds); larger ones are sampled,
+and left unread where one slab is larger still."""
 
 POINTERS = ("coordinates", "bounds", "climatology")
 
@@ -121,6 +123,7 @@ def _coordinate_names(heads: Mapping[str, Head]) -> list[str]:
     return [
         name for name, head in heads.items()
         if head.dtype.kind in "iufb" and (len(head.dims) <= 1 or name in pointed | spherical)
+        and math.prod(head.shape[1:]) <= _LINE
     ]
 
 

@@ -7,7 +7,7 @@ import os
 from collections.abc import Sequence
 from pathlib import Path
 
-from gridcarb.errors import InputError
+from gridcarb.errors import InputError, near_words
 
 
 def locate(patterns: Sequence[str], base: Path) -> list[str]:
@@ -43,6 +43,8 @@ def _near(full: str) -> str:
     folder = Path(full).parent
     while glob.has_magic(str(folder)) or not folder.exists():
         folder = folder.parent
-    names = sorted(name for name in os.listdir(folder) if not name.startswith("."))[:8] if folder.is_dir() else []
-    listing = f"; {folder} holds {', '.join(names)}" if names else f"; {folder} holds nothing"
+    names = sorted(name for name in os.listdir(folder) if not name.startswith(".")) if folder.is_dir() else []
+    near = near_words(Path(full).name, names)
+    listing = f"; {folder} holds {', '.join((near or names)[:8]) or 'nothing'}"
+    listing += " ..." if len(names) > len((near or names)[:8]) else ""
     return "correct `inputs: files` in the recipe (paths are relative to it)" + listing

@@ -174,8 +174,8 @@ def _refuse_missing(missing: Sequence[str], groups: Mapping[str, Sequence[Header
     there = sorted({name for header in headers for name in _fields_of(header)})
     raise InputError(
         f"no variable is known as {' or '.join(missing)}", where=_files(headers),
-        mend="name it, for example `inputs: {" + missing[0] + ": NAME}` in the recipe, or add its files; the files hold: "
-        + ", ".join(there[:30]) + (" ..." if len(there) > 30 else ""),
+        mend="name it, for example `inputs: {" + missing[0] + ": NAME}` in the recipe, or add its files; the files hold "
+        + (", ".join(there[:30]) or "no fields") + (" ..." if len(there) > 30 else ""),
     )
 
 

@@ -37,6 +37,9 @@ def storage_kind(path: str) -> Kind:
         raise InputError("this is a folder, not a Zarr store", where=path, mend=f"write `{path}/*.nc` for the files in it")
     if not place.exists():
         raise InputError("there is no such file", where=path, mend="correct the path; it is relative to the recipe")
+    if not place.stat().st_size:
+        raise InputError("the file is empty (0 bytes)", where=path,
+                         mend="copy it again from its origin, or leave it out of `inputs: files`")
     try:
         with place.open("rb") as file:
             if file.read(4) in _CLASSIC or any(_signature(file, at) == _HDF5 for at in _HDF5_STARTS):

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -88,9 +89,7 @@ def _checked(fields: Sequence[str]) -> tuple[str, ...]:
 def _broadcast(**inputs: npt.ArrayLike) -> list[npt.NDArray[np.floating]]:
     arrays: dict[str, npt.NDArray[np.floating]] = {}
     for name, value in inputs.items():
-        if isinstance(value, np.ma.MaskedArray):
-            value = value.astype(np.float64).filled(np.nan)
-        array = np.asarray(value)
+        array = np.asarray(_unmasked(value) if isinstance(value, np.ma.MaskedArray) else value)
         if array.dtype.kind not in "fiu":
             raise InputError(f"{name} is not made of real numbers (dtype {array.dtype})", where=f"speciate: {name}")
         arrays[name] = array if array.dtype in (np.float64, np.float32) else array.astype(np.float64)
@@ -103,6 +102,11 @@ def _broadcast(**inputs: npt.ArrayLike) -> list[npt.NDArray[np.floating]]:
             mend="give arrays of one shape, or of length 1 where a value is shared",
         ) from None
     return list(arrays.values())
+
+
+def _unmasked(value: np.ma.MaskedArray[Any, Any]) -> Array:
+    filled: Array = np.ma.filled(value.astype(np.float64), np.nan)
+    return filled
 
 
 def _flat(array: npt.NDArray[np.floating], shape: tuple[int, ...]) -> npt.NDArray[np.floating]:

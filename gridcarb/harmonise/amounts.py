@@ -50,7 +50,7 @@ class AmountReading:
 
 @dataclass(frozen=True)
 class DensityReading:
-    """The density that turns volume into mass (kg m-3): one constant, or of every cell; `none` if nothing needs it."""
+    """The density between volume and mass (kg m-3): one constant, or of every cell; `none` if nothing needs it."""
 
     kind: Literal["none", "constant", "in situ"]
     value: float = 0.0
@@ -92,18 +92,19 @@ def read_density(
 ) -> Decided[DensityReading]:
     """Decide the density for all tracers given per volume; `per_volume` maps these roles to their attributes.
 
+    Where there is none, a density stated in the recipe is kept, for output per volume.
+
     Raises InputError for different densities in the metadata, for `from file` without one, and for no density of sea water.
     """
     stated = settings.density
-    if not per_volume:
-        notice = Notice("density_not_needed", "the recipe states a density, and every tracer is given per mass")
-        return Decided(DensityReading("none"), (), (notice,) if stated and stated != "from file" else ())
-    whom = ", ".join(per_volume)
+    whom = ", ".join(per_volume) or "output per volume alone: every tracer is given per mass"
     if stated == "in situ":
         return _density(whom, DensityReading("in situ"), "in situ of every cell (TEOS-10)", "stated in the recipe")
     if stated and stated != "from file":
         value = _stated_density(stated, settings)
         return _density(whom, DensityReading("constant", value), f"{value:g} kg m-3", "stated in the recipe")
+    if not per_volume:
+        return Decided(DensityReading("none"))
     found = dict(_metadata_densities(per_volume, file_attributes))
     if len(set(found.values())) > 1:
         listed = ", ".join(f"{value:g} in {place}" for place, value in found.items())

@@ -50,8 +50,9 @@ def clothe(raw: xr.Dataset, understanding: Understanding) -> xr.Dataset:
     """A loaded block, or any slice of the grid, as float64 numbers in canonical units.
 
     Gives the keys temperature (degC, in situ), salinity (practical), pressure (dbar), dic, alkalinity, phosphate, silicate
-    (umol/kg) and, where amounts per volume were met, density (kg m-3); NaN where masked; dims in the order time, vertical,
-    horizontal. Pressure, a constant density and an assumed nutrient have no more dims than they vary over, down to none.
+    (umol/kg) and, where amounts per volume were met or a density was stated, density (kg m-3); NaN where masked; dims in
+    the order time, vertical, horizontal. Pressure, a constant density and an assumed nutrient have no more dims than they
+    vary over, down to none.
     `attrs["masked_cells"]` counts the masked cells by rule. A cell's numbers do not depend on the slice it comes in.
     """
     clean, counts = masks.unmask_roles(raw, understanding.masks, _roles_read(understanding))
@@ -90,7 +91,7 @@ def _fields(clean: Mapping[str, xr.DataArray], place: depth.Place, understanding
 
 def _attributes(key: str) -> dict[str, object]:
     if key == "density":
-        return {"long_name": "density by which amounts per volume were divided", "units": "kg m-3"}
+        return {"long_name": "density between amounts per volume and per mass", "units": "kg m-3"}
     return FIELDS[key].attributes()
 
 

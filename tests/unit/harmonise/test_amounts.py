@@ -110,8 +110,18 @@ def test_a_stated_density_is_read_with_its_units_and_must_be_of_sea_water() -> N
 def test_no_density_where_nothing_is_per_volume() -> None:
     assert read(roles={}).reading.kind == "none"
     assert read(roles={}).notices == ()
-    assert [notice.code for notice in read("1026 kg m-3", roles={}).notices] == ["density_not_needed"]
+    assert read("from file", roles={}, file={"rho0": 1026.0}).reading.kind == "none"
     assert density(DensityReading("none"), None, xr.DataArray(1.0), xr.DataArray(0.0)) is None
+
+
+@pytest.mark.parametrize(("stated", "reading"), [
+    ("1026 kg m-3", DensityReading("constant", 1026.0)), ("in situ", DensityReading("in situ")),
+])
+def test_a_stated_density_is_kept_for_output_per_volume(stated: str, reading: DensityReading) -> None:
+    decided = read(stated, roles={})
+    assert decided.reading == reading
+    assert decided.notices == ()
+    assert "output per volume" in decided.decisions[0].reading
 
 
 def test_in_situ_density_is_the_published_one() -> None:

@@ -56,8 +56,8 @@ LONG_NAMES = {
     "alkalinity": "total alkalinity", "phosphate": "dissolved phosphate", "silicate": "dissolved silicate",
 }
 
-ROUNDING = {"temperature": 2.0**-6, "salinity": 2.0**-8, "dic": 2.0**-11, "alkalinity": 2.0**-11, "phosphate": 2.0**-16,
-            "silicate": 2.0**-12}
+ROUNDING = {"temperature": 2.0**-5, "salinity": 2.0**-7, "dic": 2.0**-11, "alkalinity": 2.0**-10, "phosphate": 2.0**-14,
+            "silicate": 2.0**-10}
 """Steps the committed files are rounded to, in K, 1 and mol m-3: well below what matters, and far easier to compress."""
 
 

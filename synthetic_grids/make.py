@@ -30,6 +30,7 @@ ATTRIBUTES: dict[str, object] = {
     "history": "written by python -m synthetic_grids",
     "references": "the documentation of the package synthetic_grids",
     "comment": "Tracers per volume are per volume of the model's sea water, whose density is rho0 everywhere.",
+    "geography": "invented",
     "rho0": CLOTHES.density,
     "rho0_units": "kg m-3",
 }
@@ -73,6 +74,6 @@ def make(folder: Path = FOLDER) -> list[Path]:
     folder.mkdir(parents=True, exist_ok=True)
     paths = []
     for name, dataset in first_look().items():
-        write(dataset, folder / name, split=("lev",))
+        write(dataset, folder / name, split=("time",))
         paths.append(folder / name)
     return paths

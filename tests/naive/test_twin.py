@@ -38,7 +38,9 @@ def extreme(count: int, seed: int) -> Waters:
     alkalinity = rng.uniform(-18000, 96000, count) * np.where(rng.random(count) < 0.3, 1e-3, 1.0)
     return {
         "temperature": rng.uniform(-1.8, 45, count),
-        "salinity": np.where(rng.random(count) < 0.1, 0.0, rng.uniform(0, 66, count)), "pressure": rng.uniform(0, 10000, count), "dic": 10 ** rng.uniform(-3, np.log10(25000), count),
+        "salinity": np.where(rng.random(count) < 0.1, 0.0, rng.uniform(0, 66, count)),
+        "pressure": rng.uniform(0, 10000, count),
+        "dic": 10 ** rng.uniform(-3, np.log10(25000), count),
         "alkalinity": np.where(rng.random(count) < 0.1, 0.0, alkalinity),
         "phosphate": 10 ** rng.uniform(-3, 3, count),
         "silicate": 10 ** rng.uniform(-3, 3, count),

@@ -73,7 +73,7 @@ def read_amount(role: str, attrs: Mapping[Any, Any], settings: ReadingSettings) 
 def amount_in(said: str | None, role: str, where: str) -> AmountReading:
     """The reading of numbers of `role` in the units `said`."""
     mend = f"write `reading: {{units: {{{role}: mol m-3}}}}` in the recipe, with the units that are true"
-    found = units.read(said, where=where, mend=mend)
+    found = units.read(said, where=where, mend=mend, expected=("amount per mass", "amount per volume"))
     per_volume = "volume" in found.kind
     target = "umol m-3" if per_volume else "umol kg-1"
     return AmountReading(

@@ -44,7 +44,6 @@ def _near(full: str) -> str:
     while glob.has_magic(str(folder)) or not folder.exists():
         folder = folder.parent
     names = sorted(name for name in os.listdir(folder) if not name.startswith(".")) if folder.is_dir() else []
-    near = near_words(Path(full).name, names)
-    listing = f"; {folder} holds {', '.join((near or names)[:8]) or 'nothing'}"
-    listing += " ..." if len(names) > len((near or names)[:8]) else ""
-    return "correct `inputs: files` in the recipe (paths are relative to it)" + listing
+    shown = (near_words(Path(full).name, names) or names)[:8]
+    listing = ", ".join(shown) + " ..." * (len(shown) < len(names))
+    return f"correct `inputs: files` in the recipe (paths are relative to it); {folder} holds {listing or 'nothing'}"

@@ -37,10 +37,15 @@ def test_no_files_at_all(gathered, tmp_path: Path) -> None:
     assert "names no input files" in _refusal(gathered, tmp_path).what
 
 
-@pytest.mark.parametrize("content", [b"", b"CDX", b"station,salinity\n1,35\n", b"\x89PNG\r\n\x1a\n" + bytes(600)])
+@pytest.mark.parametrize("content", [b"CDX", b"station,salinity\n1,35\n", b"\x89PNG\r\n\x1a\n" + bytes(600)])
 def test_not_a_netcdf(gathered, tmp_path: Path, content: bytes) -> None:
     (tmp_path / "thing.nc").write_bytes(content)
     assert "neither a NetCDF file nor a Zarr store" in _refusal(gathered, tmp_path, files="thing.nc").what
+
+
+def test_an_empty_file(gathered, tmp_path: Path) -> None:
+    (tmp_path / "thing.nc").touch()
+    assert _refusal(gathered, tmp_path, files="thing.nc").what == "the file is empty (0 bytes)"
 
 
 def test_a_folder_that_is_no_store(gathered, tmp_path: Path) -> None:

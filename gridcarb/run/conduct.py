@@ -22,7 +22,8 @@ from gridcarb.run.engine import run_tasks
 from gridcarb.run.journal import journal_head, journal_tail
 from gridcarb.run.plan import FIGURE_FOLDER, FILE, STATUS, STORE, Plan
 from gridcarb.run.report import Report, outcome_report
-from gridcarb.run.task import Record, run_block
+from gridcarb.run.stopping import Terminated, ends_tidily, why_it_ended
+from gridcarb.run.task import Record, changed_inputs, run_block
 from gridcarb.sources import open_collection
 from gridcarb.write.attributes import global_attributes
 from gridcarb.write.journal import JOURNAL, write_journal
@@ -96,26 +97,33 @@ def conduct(plan: Plan, watcher: Watcher) -> Outcome:
     Raises
     ------
     GridcarbError : with the incomplete result kept beside the target, and its journal saying why.
+    Terminated : at SIGTERM, in the main thread; the incomplete result is kept like after an error.
     """
+    with ends_tidily():
+        return _conduct(plan, watcher)
+
+
+def _conduct(plan: Plan, watcher: Watcher) -> Outcome:
     begun = datetime.now(UTC)
-    notices = plan.folder.begin()
-    journal = journal_head(plan, begun)
     sums = _Sums(plan)
+    notices = (*plan.notices, *plan.folder.begin())
+    journal: dict[str, object] = {}
     partial = plan.folder.partial
     try:
+        journal |= journal_head(plan, begun, notices)
         write_journal(partial / JOURNAL, journal)
         _fill_store(plan, begun, partial, watcher, sums)
         written = _derive_files(plan, partial, watcher, sums)
         products = {key: tally.report() for key, tally in sums.tallies.items()}
-        finished = {**journal, **journal_tail("complete", products=products, masked_cells=sums.masked,
-                                              seconds=sums.seconds, written=sorted(written.values()))}  # fmt: skip
-        write_journal(partial / JOURNAL, finished)
+        journal |= journal_tail("complete", products=products, masked_cells=sums.masked, seconds=sums.seconds,
+                                written=sorted(written.values()))  # fmt: skip
+        write_journal(partial / JOURNAL, journal)
         target = plan.folder.complete()
     except BaseException as error:
-        _give_up(plan, journal, error)
+        _give_up(plan, journal, error, watcher)
         raise
     places = {name: target / inside for name, inside in written.items()}
-    return Outcome(plan, {**places, "journal": target / JOURNAL}, products, sums.seconds, (*plan.notices, *notices))
+    return Outcome(plan, {**places, "journal": target / JOURNAL}, products, sums.seconds, notices)
 
 
 def _fill_store(plan: Plan, begun: datetime, partial: Path, watcher: Watcher, sums: _Sums) -> None:
@@ -139,7 +147,17 @@ def _fill_store(plan: Plan, begun: datetime, partial: Path, watcher: Watcher, su
     with sums.timed("blocks"):
         run_tasks(run_block, job, range(len(plan.layout)), workers=plan.workers, done=done)
     watcher.stop()
+    _refuse_changed(plan)
     _refuse_nothing(sums)
+
+
+def _refuse_changed(plan: Plan) -> None:
+    changed = changed_inputs(plan.collection)
+    if changed:
+        raise InputError(
+            "the file was changed or moved while the run was reading it", where=", ".join(changed),
+            mend="run again when nothing writes to the input",
+        )
 
 
 def _refuse_nothing(sums: _Sums) -> None:
@@ -193,11 +211,15 @@ def _draw(plan: Plan, partial: Path, watcher: Watcher) -> dict[str, str]:
     return written
 
 
-def _give_up(plan: Plan, journal: Mapping[str, object], error: BaseException) -> None:
+def _give_up(plan: Plan, journal: Mapping[str, object], error: BaseException, watcher: Watcher) -> None:
     """Leave the incomplete result beside its target, with a journal that says why it ended."""
     state = "failed" if isinstance(error, Exception) else "interrupted"
-    told = {"kind": type(error).__name__, "text": str(error)}
+    told = {"kind": type(error).__name__, "text": why_it_ended(error)}
     # The disk that failed the run may fail its journal too; the first error is the one to tell.
     with suppress(OSError, GridcarbError):
         write_journal(plan.folder.partial / JOURNAL, {**journal, **journal_tail(state, error=told)})
-    plan.folder.abandon()
+    left = plan.folder.abandon()
+    if isinstance(error, Terminated):
+        watcher.message(why_it_ended(error))
+    if left.exists():
+        watcher.message(f"the incomplete result was left in {left}; the next run of this result removes it")

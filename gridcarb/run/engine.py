@@ -5,6 +5,7 @@ from __future__ import annotations
 import itertools
 import os
 from collections.abc import Callable, Iterable, Iterator
+from concurrent.futures import ThreadPoolExecutor
 from typing import Any, TypeVar
 
 import dask
@@ -27,20 +28,22 @@ def run_tasks(
 ) -> None:
     """Call ``function(job, number)`` for every number, `workers` at a time, and `done` with each answer as it comes.
 
-    The first error ends the rest and is raised. `done` is called in the calling thread.
+    The first error ends the rest and is raised. `done` is called in the calling thread. However this ends, by an error or
+    by Ctrl-C, it ends when the last call has come back: nothing is at work on the store afterwards.
     """
     task = dask.delayed(function, pure=False)
     shared = dask.delayed(job, pure=False, traverse=False)
-    for slab in _slabs(numbers, _SLAB_PER_WORKER * workers):
-        tasks = [task(shared, number) for number in slab]
-        keys = {each.key for each in tasks}
+    with ThreadPoolExecutor(workers) as threads:
+        for slab in _slabs(numbers, _SLAB_PER_WORKER * workers):
+            tasks = [task(shared, number) for number in slab]
+            keys = {each.key for each in tasks}
 
-        def tell(key: str, value: Answer, *_: object, keys: set[str] = keys) -> None:
-            if key in keys:
-                done(value)
+            def tell(key: str, value: Answer, *_: object, keys: set[str] = keys) -> None:
+                if key in keys:
+                    done(value)
 
-        with Callback(posttask=tell):
-            dask.compute(*tasks, scheduler="threads", num_workers=workers, optimize_graph=False)
+            with Callback(posttask=tell):
+                dask.compute(*tasks, scheduler="threads", pool=threads, optimize_graph=False)
 
 
 def _slabs(numbers: Iterable[int], length: int) -> Iterator[list[int]]:

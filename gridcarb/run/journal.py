@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import platform
+from collections.abc import Sequence
 from datetime import UTC, datetime
 from importlib.metadata import version
 from typing import TYPE_CHECKING
 
 from gridcarb.chemistry import CONSTANTS
 from gridcarb.citations import CITATIONS
+from gridcarb.errors import Notice
 from gridcarb.run.report import plan_data
 
 if TYPE_CHECKING:
@@ -17,8 +19,8 @@ if TYPE_CHECKING:
 _LIBRARIES = ("gridcarb", "numpy", "numba", "xarray", "dask", "zarr", "netCDF4", "gsw", "cftime", "matplotlib", "cartopy")
 
 
-def journal_head(plan: Plan, begun: datetime) -> dict[str, object]:
-    """What is known before the first block."""
+def journal_head(plan: Plan, begun: datetime, notices: Sequence[Notice]) -> dict[str, object]:
+    """What is known before the first block; `notices` are those of the plan and of the begin."""
     recipe = plan.recipe
     return {
         "state": "running",
@@ -30,7 +32,8 @@ def journal_head(plan: Plan, begun: datetime) -> dict[str, object]:
         ],
         "versions": {"python": platform.python_version(), **{name: version(name) for name in _LIBRARIES}},
         "constants": _constants(recipe.chemistry.constants),
-        "plan": plan_data(plan),
+        "engine": recipe.engine.model_dump(),
+        "plan": plan_data(plan, notices),
     }
 
 

@@ -106,7 +106,8 @@ def prepare(recipe: Recipe) -> Plan:
     footprint = _footprint(recipe, collection, fields)
     allowed = allowed_per_task(recipe.engine.memory_bytes, workers)
     layout = _layout(recipe, collection, footprint, allowed, workers)
-    refuse_over_budget(footprint, layout.cells_per_block, allowed, workers)
+    column = layout.sizes[collection.axes.vertical] if collection.axes.vertical else 1
+    refuse_over_budget(footprint, layout.cells_per_block, column=column, memory=recipe.engine.memory_bytes, workers=workers)
     return Plan(recipe, collection, understanding, layout, fields, workers, footprint, allowed, folder)
 
 

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 from gridcarb.chemistry import CONSTANTS
 from gridcarb.errors import Notice
-from gridcarb.write.disk import sized
+from gridcarb.write.disk import free_bytes, sized
 
 if TYPE_CHECKING:
     from gridcarb.run.conduct import Outcome
@@ -47,7 +47,7 @@ def plan_report(plan: Plan) -> Report:
         Section("What it will take", _cost_rows(plan)),
         Section("Where it will go", _place_rows(plan)),
     ]
-    return Report(sections, plan.notices, plan_data(plan))
+    return Report(sections, plan.notices, plan_data(plan, plan.notices))
 
 
 def outcome_report(outcome: Outcome) -> Report:
@@ -60,13 +60,13 @@ def outcome_report(outcome: Outcome) -> Report:
         Section("Where it was written", [(name, str(path)) for name, path in outcome.written.items()]),
         Section("What to look at first", _first_looks(outcome)),
     ]
-    data = {**plan_data(plan), "written": {name: str(path) for name, path in outcome.written.items()},
+    data = {**plan_data(plan, outcome.notices), "written": {name: str(path) for name, path in outcome.written.items()},
             "products": outcome.products, "seconds": outcome.seconds}  # fmt: skip
     return Report(sections, outcome.notices, data)
 
 
-def plan_data(plan: Plan) -> dict[str, object]:
-    """A plan as plain data."""
+def plan_data(plan: Plan, notices: Sequence[Notice]) -> dict[str, object]:
+    """A plan as plain data, with the notices of the plan, or of the whole run."""
     return {
         "title": plan.recipe.title,
         "inputs": plan.collection.describe(),
@@ -75,7 +75,7 @@ def plan_data(plan: Plan) -> dict[str, object]:
             {"subject": each.subject, "reading": each.reading, "because": each.because}
             for each in plan.understanding.decisions
         ],
-        "notices": [notice.as_dict() for notice in plan.notices],
+        "notices": [notice.as_dict() for notice in notices],
         "constants": plan.recipe.chemistry.constants,
         "fields": [entry.key for entry in plan.fields],
         "blocks": {
@@ -133,7 +133,10 @@ def _place_rows(plan: Plan) -> Rows:
     kept = [("Zarr store" + f" (format {output.zarr_format})") * output.zarr, "NetCDF-4 file" * output.netcdf]
     figures = len(plan.recipe.figures)
     kept.append(f"{figures} figure{'s' * (figures != 1)}" * bool(figures))
-    return [("result", str(plan.folder.target)), ("holding", ", ".join([*filter(None, kept), "journal"]))]
+    return [
+        ("result", str(plan.folder.target)), ("holding", ", ".join([*filter(None, kept), "journal"])),
+        ("room there", f"{sized(free_bytes(plan.folder.target))} free"),
+    ]
 
 
 def _status_rows(outcome: Outcome) -> Rows:

@@ -10,12 +10,13 @@ from pathlib import Path
 import xarray as xr
 
 from gridcarb.chemistry.stage import solve
-from gridcarb.errors import BlockError, GridcarbError
+from gridcarb.errors import BlockError, GridcarbError, InputError
 from gridcarb.fields import Field
 from gridcarb.harmonise import Understanding, clothe
 from gridcarb.products import PRODUCTS, Tally
 from gridcarb.run.blocks import Layout
 from gridcarb.sources import Collection, open_collection
+from gridcarb.sources.storage import stamp
 from gridcarb.write.amounts import per_volume
 from gridcarb.write.store import write_block
 
@@ -57,17 +58,37 @@ def run_block(job: Job, number: int) -> Record:
     ------
     GridcarbError : whatever went wrong, with the block in its `where`.
     """
+    place = f"block {number + 1} of {len(job.layout)}"
     try:
         return _run_block(job, number)
     except GridcarbError as error:
-        error.where = f"{error.where} (block {number + 1} of {len(job.layout)})".strip()
+        error.where = f"{error.where} ({place})".strip()
+        changed = changed_inputs(job.collection) if isinstance(error, InputError) else []
+        if changed:
+            error.mend = f"run again when nothing writes to the input: {', '.join(changed)} changed after the run began"
         raise
     except Exception as error:
         raise BlockError(
-            f"{type(error).__name__}: {error}",
-            where=f"block {number + 1} of {len(job.layout)}: {job.layout.region(number)}",
-            mend="run again with --debug to see where it happened; nothing of an earlier result was touched",
+            f"{type(error).__name__}: {error}", where=f"{place}: {job.layout.region(number)}", mend=_mend(error),
         ) from error
+
+
+def changed_inputs(collection: Collection) -> list[str]:
+    """Paths of the files that are no longer what they were when the headers were read, or are gone."""
+    return [file.path for file in collection.files if _stamp(file.path) != (file.size, file.mtime_ns)]
+
+
+def _stamp(path: str) -> tuple[int, int] | None:
+    try:
+        return stamp(path)
+    except OSError:
+        return None
+
+
+def _mend(error: Exception) -> str:
+    if isinstance(error, MemoryError):
+        return "write fewer `workers` or a smaller `memory` under `engine` in the recipe"
+    return "run again with --debug to see where it happened; nothing of an earlier result was touched"
 
 
 def _run_block(job: Job, number: int) -> Record:

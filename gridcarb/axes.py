@@ -126,6 +126,7 @@ def find_axes(ds: xr.Dataset) -> Axes:
     vertical = next((dim for dim in _dims(ds, vertical_coordinate) if dim in level_dims), None)
     vertical = vertical or _dim_named(level_dims, _VERTICAL)
     left = [dim for dim in level_dims if dim != vertical]
+    _refuse_half_a_place(survey, latitude, longitude, left)
     horizontal = _horizontal(survey, spherical, left)
     _refuse_strangers(survey, [dim for dim in left if dim not in horizontal])
     return Axes(time, vertical, horizontal, time_coordinate, vertical_coordinate, latitude, longitude)
@@ -257,6 +258,18 @@ def _side(survey: _Survey, dim: str) -> int | None:
         if marked or dim.lower() in marks.names:
             return side
     return 0 if dim.lower() in _CELL_DIMS else None
+
+
+def _refuse_half_a_place(survey: _Survey, latitude: str | None, longitude: str | None, left: list[str]) -> None:
+    """A dimension of a map is left over and one of its two coordinates is missing: the message speaks of that."""
+    long = [dim for dim in left if survey.ds.sizes[dim] > 1 and _side(survey, dim) is not None]
+    if not long or (latitude is None) == (longitude is None):
+        return
+    absent, units = ("latitude", "degrees_north") if latitude is None else ("longitude", "degrees_east")
+    raise InputError(
+        f"there is no {absent} along the dimension '{long[0]}', only the other coordinate '{latitude or longitude}'",
+        where="dimension " + long[0], mend=f"give the files a coordinate along '{long[0]}' with units {units}",
+    )
 
 
 def _refuse_strangers(survey: _Survey, left: list[str]) -> None:

@@ -189,6 +189,8 @@ def _read(text: str) -> Unit:
 def _plain(text: str) -> tuple[str, str | None]:
     """The text in letters UDUNITS reads, and the substance it named ("eq" for mole equivalents)."""
     text = text.translate(_DIGITS)
+    if text.isupper() and "MOL" in text:
+        text = text.lower()  # UMOL/KG, as the tables of bottle data have it
     for pattern, plain in _REWRITES:
         text = pattern.sub(plain, text)
     for pattern, plain in _NAMED:

@@ -20,6 +20,9 @@ from gridcarb.harmonise.settings import ReadingSettings
 DEEPEST = 12000.0
 """No sea is deeper, in m or in dbar."""
 
+_POLE = 90.001
+"""Degrees; single precision leaves some room."""
+
 _SURFACE_MEND = "write `reading: {depth: surface}` in the recipe if the data lie at the sea surface"
 _UNITS_MEND = "write `reading: {units: {depth: m}}` in the recipe"
 _AS_THEY_ARE = units.Linear(1.0)
@@ -83,6 +86,8 @@ def read_place(
     Raises InputError or UnitsError for a vertical coordinate that is missing, contradicts itself or lies above the sea,
     and for depths without latitudes.
     """
+    for name in (axes.vertical_coordinate, axes.latitude, axes.longitude):
+        _refuse_broken_axis(raw, axes, masks, name)
     vertical = _read_vertical(raw, axes, masks, settings, standard_names)
     if vertical.reading.kind == "depth" and axes.latitude is None:
         raise InputError("pressure follows from depth and latitude, and the data have no latitude", where="latitude",
@@ -91,7 +96,26 @@ def read_place(
         vertical.reading,
         *(_angle(raw[name].attrs) if name else 1.0 for name in (axes.latitude, axes.longitude)),
     )
+    _refuse_beyond_pole(_decoded(raw, axes.latitude, masks), place.latitude_factor)
     return Decided(place, vertical.decisions, vertical.notices)
+
+
+def _refuse_broken_axis(raw: xr.Dataset, axes: Axes, masks: Mapping[str, MaskReading], name: str | None) -> None:
+    """A whole row, column or level would be lost with its coordinate; a list of cells may have land without a place."""
+    numbers = _decoded(raw, name, masks)
+    if numbers is None or numbers.ndim != 1 or numbers.dims == axes.horizontal:
+        return
+    missing = int(numbers.isnull().sum())
+    if 0 < missing < numbers.size:
+        raise InputError(f"{missing} of its {numbers.size} values are missing", where=f"coordinate '{name}'",
+                         mend=f"repair '{name}' in the file, or cut these places out of it")
+
+
+def _refuse_beyond_pole(latitude: xr.DataArray | None, factor: float) -> None:
+    most = 0.0 if latitude is None else float(np.fmax.reduce(np.abs(latitude.values * factor), axis=None))
+    if most > _POLE:
+        raise InputError(f"the latitudes reach {most:g} degrees, beyond the pole", where="latitude",
+                         mend="correct the latitudes or their units (degrees_north, or radians) in the file")
 
 
 def locate(raw: xr.Dataset, axes: Axes, masks: Mapping[str, MaskReading], reading: PlaceReading) -> Place:

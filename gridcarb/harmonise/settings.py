@@ -11,7 +11,7 @@ from typing import Annotated, Literal
 from pydantic import Field, StringConstraints, field_validator
 
 from gridcarb import units
-from gridcarb.errors import did_you_mean
+from gridcarb.errors import UnknownWordError, did_you_mean
 from gridcarb.fields import ROLES
 from gridcarb.settings import Settings
 
@@ -49,6 +49,6 @@ class ReadingSettings(Settings):
     def _of_roles(cls, stated: dict[str, str]) -> dict[str, str]:
         for word, text in stated.items():
             if word not in (*ROLES, "depth"):
-                raise ValueError(f"'{word}' is no role; {did_you_mean(word, (*ROLES, 'depth'))}")
+                raise UnknownWordError(f"'{word}' is no role", mend=did_you_mean(word, (*ROLES, "depth")))
             units.read(text)
         return stated

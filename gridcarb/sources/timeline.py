@@ -94,6 +94,7 @@ def build(role: str, pieces: Sequence[Piece], gaps: str) -> Timeline:
     InputError : times that are missing, unsorted or duplicated, calendars that differ, files that overlap, gaps.
     """
     for piece in pieces:
+        _refuse_undated(role, piece)
         _refuse_disorder(role, piece)
     begins = [float(piece.values[0]) for piece in _in_one_unit(role, pieces)]
     order = sorted(range(len(pieces)), key=lambda place: begins[place])
@@ -111,6 +112,20 @@ def build(role: str, pieces: Sequence[Piece], gaps: str) -> Timeline:
     )
     _refuse_overlap(role, line)
     return replace(line, notices=_gaps(role, line, gaps))
+
+
+def _refuse_undated(role: str, piece: Piece) -> None:
+    """Times counted since a date must give dates; months and years have no fixed length in most calendars."""
+    units, calendar = piece.units.units, piece.units.calendar
+    if " since " not in units:
+        return
+    try:
+        cftime.num2date(0, units, calendar)
+    except (ValueError, TypeError, OverflowError) as error:
+        raise InputError(
+            f"the times are no dates in the calendar {calendar}: '{units}' ({error})", where=f"{piece.path}: {role}",
+            mend="write the time axis of the file in `days since` a date",
+        ) from None
 
 
 def _refuse_disorder(role: str, piece: Piece) -> None:

@@ -18,7 +18,7 @@ SPELLINGS: dict[str, tuple[str, ...]] = {
                   "mol m⁻³", "mol m−3", "mol m^{-3}", "mol C m-3", "molC m-3", "eq m-3", "mol eq m-3",
                   "mol equivalent m-3",
                   "mmol L-1", "mmol/l", "mM", "meq/L", "mEq L-1", "mol per m3", "kmol/dam3", "mmol/litre", "mmol dm-3"),
-    "0.001 mol m-3": ("mmol m-3", "mmol/m^3", "mmol/m**3", "mMol/m3", "umol L-1", "umol/l", "µmol/L", "μmol/L", "uM", "µM",
+    "0.001 mol m-3": ("mmol m-3", "mmol/m^3", "mmol/m**3", "mMol/m3", "MMOL/M3", "umol L-1", "umol/l", "µmol/L", "μmol/L", "uM", "µM",
                       "meq m-3", "mmol_eq/m3", "ueq/L", "mmol C m-3", "mmolC/m3", "mmol/m3 of C", "mmol P m-3",
                       "mmol Si/m3", "micromol L-1", "micromoles per litre", "1e-3 mol m-3", "mmol (C) m-3"),
     "1 mol kg-1": ("mol kg-1", "mol/kg", "eq kg-1", "mol kg**-1", "mol kg^-1", "mmol g-1", "mol/kg-sw"),
@@ -39,7 +39,7 @@ CELSIUS = ("degC", "deg_C", "degree_Celsius", "degree_C", "degrees_celsius", "ce
            "degrees C")
 KELVIN = ("K", "kelvin", "degK", "Kelvin", "deg_K", "degree K")
 PRACTICAL = ("1", "0.001", "1e-3", "1.e-3", "psu", "PSU", "PSS-78", "pss", "practical salinity units", "ppt", "o/oo")
-REFUSED = ("", "  ", "bananas", "unknown", "no_unit", "mol", "kg", "C m-3", "degF", "2 K", "MMOL/M3", "umol kg",
+REFUSED = ("", "  ", "bananas", "unknown", "no_unit", "mol", "kg", "C m-3", "degF", "2 K", "MMOL M", "umol kg",
            "days since 2000-01-01",
            "mol m-3 s-1", "-1 mol m-3", "0 mol m-3", "mol m-2", "%%", "µ", "m3/mol", "mmol/m3/d")
 

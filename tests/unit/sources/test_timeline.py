@@ -127,13 +127,23 @@ def test_calendars_are_never_mixed() -> None:
     assert same[0] == same[1]
 
 
-def test_months_since_are_never_converted() -> None:
-    units = ["months since 2000-01-01", "months since 2001-01-01"]
-    pieces = [Piece(f"{place}.nc", np.arange(12.0), None, Units(unit, "standard")) for place, unit in enumerate(units)]
+def test_counters_of_two_kinds_are_not_joined() -> None:
+    pieces = [Piece(f"{n}.nc", np.arange(12.0), None, Units(unit, "standard")) for n, unit in enumerate(["month", "year"])]
     with pytest.raises(InputError, match=r"cannot be told in those of 0\.nc"):
         build("dic", pieces, "accept")
-    alone = build("dic", pieces[:1], "refuse")
-    assert alone.span() == "0 months since 2000-01-01 to 11 months since 2000-01-01 (12 steps)"
+    assert build("dic", pieces[:1], "refuse").span() == "0 month to 11 month (12 steps)"
+
+
+@pytest.mark.parametrize("units", ["months since 2000-01-01", "years since 2000-01-01", "days since the war"])
+def test_times_that_give_no_dates(units: str) -> None:
+    with pytest.raises(InputError, match="no dates in the calendar standard") as caught:
+        build("dic", [Piece("a.nc", np.arange(12.0), None, Units(units, "standard"))], "accept")
+    assert "`days since`" in caught.value.mend
+
+
+def test_months_of_one_length_give_dates() -> None:
+    line = build("dic", [Piece("a.nc", np.arange(12.0), None, Units("months since 2000-01-01", "360_day"))], "refuse")
+    assert line.span() == "2000-01-01 to 2000-12-01 (12 steps)"
 
 
 def test_roles_share_one_axis(gathered, ocean, save, tmp_path: Path) -> None:

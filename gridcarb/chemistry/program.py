@@ -91,8 +91,7 @@ class Bound:
         """Solve the tile."""
         for function, arguments_ in self.before:
             function(*arguments_)
-        solver.sweep(*self.equation)
-        if not np.abs(self.equation[1]).max() < solver.SETTLED:
+        if solver.sweep(*self.equation):
             solver.settle(*self.equation)
         for function, arguments_ in self.after:
             function(*arguments_)

@@ -1,7 +1,7 @@
 """The root of the alkalinity equation: hydrogen ion from DIC and total alkalinity.
 
 Alkalinity after Dickson (1981). The equation falls steadily with ln h and has one positive root for any input
-(Munhoven 2013). All cells of a tile take the same four Newton steps in ln h, without branches; the few that have not
+(Munhoven 2013). All cells of a tile take the same three Newton steps in ln h, without branches; the few that have not
 settled then go through a bracketed iteration that cannot fail.
 """
 
@@ -16,9 +16,12 @@ from gridcarb.chemistry.compiled import TILE, compile_function, scalar
 
 Row = npt.NDArray[np.float64]
 
-SWEEPS = 4
+SWEEPS = 3
+SWEPT = 3e-6
+"""A last sweep smaller than this, with the correction that follows it, leaves an error below 1e-16."""
+
 SETTLED = 1e-8
-"""A Newton step in ln h smaller than this leaves an error of its square."""
+"""A plain Newton step in ln h smaller than this leaves an error of its square."""
 
 _MOST_ITERATIONS = 200
 
@@ -125,23 +128,31 @@ def first_guess(alk: float, dic: float, bt: float, k1: float, k2: float, kb: flo
 def sweep_tile(
     h: Row, step: Row, k1: Row, k2: Row, kb: Row, kw: Row, kp1: Row, kp2: Row, kp3: Row, ksi: Row, ks: Row, kf: Row,
     bt: Row, st: Row, ft: Row, pt: Row, sit: Row, dic: Row, alk: Row,
-) -> None:  # fmt: skip
-    """Start and four Newton steps for every cell of a tile; `step` keeps the size of the last one.
+) -> int:  # fmt: skip
+    """Start and three Newton steps for every cell of a tile; `step` keeps the size of the last one.
 
-    exp(-x) is replaced by its (2, 2) Pade approximant, which is positive for every x and keeps the convergence.
+    Newton's error shrinks as e -> c e^2, and two steps running tell c: the error that the last step leaves is foreseen and
+    taken away with it, which spares a fourth sweep. exp(x) is replaced by its (2, 2) Pade approximant, which is positive
+    for every x and keeps the convergence. Returns how many cells have not settled.
     """
+    unsettled = 0
     for i in range(TILE):
         x = first_guess(alk[i], dic[i], bt[i], k1[i], k2[i], kb[i])
+        before = 0.0
         d = 0.0
         for _ in range(SWEEPS):
+            before = d
             d = newton_step(
                 x, k1[i], k2[i], kb[i], kw[i], kp1[i], kp2[i], kp3[i], ksi[i], ks[i], kf[i],
                 bt[i], st[i], ft[i], pt[i], sit[i], dic[i], alk[i],
             )  # fmt: skip
             d = min(max(d, -2.0), 2.0)
             x = x * (12.0 + d * (6.0 + d)) / (12.0 - d * (6.0 - d))
-        h[i] = x
+        shrink = d / before if abs(d) < abs(before) else 0.0
+        h[i] = x * (1.0 + d * shrink * shrink)
         step[i] = d
+        unsettled += not abs(d) < SWEPT
+    return unsettled
 
 
 def settle_tile(
@@ -153,7 +164,7 @@ def settle_tile(
     A step that leaves the bracket, or does not shrink fast enough, is replaced by a bisection in ln h.
     """
     for i in range(TILE):
-        if abs(step[i]) < SETTLED:
+        if abs(step[i]) < SWEPT:
             continue
         low = lower_bound(alk[i], kw[i], ks[i], bt[i], st[i], ft[i], pt[i])
         high = upper_bound(alk[i], kw[i], ks[i], bt[i], st[i], pt[i], sit[i], dic[i])

@@ -12,7 +12,7 @@ from gridcarb.chemistry.compiled import TILE
 from gridcarb.chemistry.constants_set import CONSTANTS
 from gridcarb.chemistry.declare import DERIVED
 from gridcarb.chemistry.program import INPUTS, Program, program
-from gridcarb.chemistry.solver import SETTLED
+from gridcarb.chemistry.solver import SWEPT
 from gridcarb.chemistry.status import MISSING, SOLUTION_STATUS, judge, seal
 from gridcarb.errors import InputError, UnknownWordError, did_you_mean
 
@@ -138,7 +138,7 @@ def _solve_all(
             scratch[row, count:] = _PADDING[row]
         judge(flags, *scratch[: len(INPUTS)], *ranges)
         bound.run()
-        worst = seal(flags, scratch[made.hydrogen], scratch[made.step], SETTLED)
+        worst = seal(flags, scratch[made.hydrogen], scratch[made.step], SWEPT)
         if worst >= MISSING:
             scratch[outputs] = np.where(flags >= MISSING, np.nan, scratch[outputs])
         for key, row in made.outputs.items():

@@ -56,8 +56,8 @@ def save(dataset: xr.Dataset, path: Path, **chunks: int) -> Path:
                                            if "_FillValue" not in dataset[name].attrs}
     if chunks:
         for name in dataset.data_vars:
-            sizes = dataset[name].sizes
-            encoding.setdefault(name, {})["chunksizes"] = tuple(min(size, chunks.get(dim, size)) for dim, size in sizes.items())
+            shape = tuple(min(size, chunks.get(str(dim), size)) for dim, size in dataset[name].sizes.items())
+            encoding.setdefault(name, {})["chunksizes"] = shape
     dataset.to_netcdf(path, engine="netcdf4", encoding=encoding)
     return path
 

@@ -59,7 +59,7 @@ def test_no_block_is_advised_where_not_even_one_column_fits() -> None:
 
 
 def test_the_plan_refuses_a_run_that_would_not_fit(recipe) -> None:
-    with pytest.raises(BudgetError, match="of 2 workers has 0.1 MB"):
+    with pytest.raises(BudgetError, match=r"of 2 workers has 0\.1 MB"):
         prepare(recipe(engine={"memory": "200 kB"}))
 
 

@@ -111,8 +111,8 @@ def check_values(
     if ratio > MOST_DIC_PER_ALKALINITY and shallowest <= _NEAR_SURFACE:
         raise InputError(
             f"DIC and alkalinity look swapped: their median ratio near the surface is {ratio:.3f}", where="dic, alkalinity",
-            mend="exchange the two in the recipe: `inputs: {dic: NOW_ALKALINITY, alkalinity: NOW_DIC}`, with the names of the "
-            f"variables; {_ACCEPT}",
+            mend="exchange the two variables: write `inputs: {dic: NOW_ALKALINITY, alkalinity: NOW_DIC}` in the recipe, "
+            f"with their names, {_ACCEPT}",
         )
 
 

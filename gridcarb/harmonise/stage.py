@@ -14,7 +14,7 @@ import numpy as np
 import xarray as xr
 
 from gridcarb.axes import Axes, find_axes
-from gridcarb.errors import InputError, Notice
+from gridcarb.errors import InputError, Notice, UnitsError
 from gridcarb.fields import FIELDS, REQUIRED_ROLES, ROLES
 from gridcarb.harmonise import amounts, depth, masks, nutrients, plausibility, salinity, temperature
 from gridcarb.harmonise.decisions import Decided, Understanding
@@ -36,7 +36,14 @@ def understand(
     ------
     InputError, UnitsError : for whatever cannot be read safely; the message says which recipe line settles it.
     """
-    attributes = raw.attrs if file_attributes is None else file_attributes
+    try:
+        return _understand(raw, settings, raw.attrs if file_attributes is None else file_attributes)
+    except (InputError, UnitsError) as error:
+        error.where = _with_file(error.where, raw)
+        raise
+
+
+def _understand(raw: xr.Dataset, settings: ReadingSettings, attributes: Mapping[Any, Any]) -> Understanding:
     axes = find_axes(raw)
     present = _present(raw, axes)
     draft, decided = _read_headers(raw, axes, present, settings, attributes)
@@ -44,6 +51,16 @@ def understand(
     notices = [notice for part in decided for notice in part.notices]
     sampled = _check_sample(raw, draft, settings)
     return dataclasses.replace(draft, decisions=tuple(decisions), notices=(*notices, *sampled))
+
+
+def _with_file(where: str, raw: xr.Dataset) -> str:
+    """The place of an error with the file (and the name in it) of the role it speaks of, as far as the data know it."""
+    speaker = raw.data_vars.get(where.partition(",")[0], raw.data_vars.get("temperature"))
+    origin = {} if speaker is None else speaker.encoding
+    if "source" not in origin or where.startswith("reading."):
+        return where
+    name = origin.get("original_name", where)
+    return f"{origin['source']}: " + (f"{name} ({where})" if where in raw.data_vars and name != where else where)
 
 
 def clothe(raw: xr.Dataset, understanding: Understanding) -> xr.Dataset:

@@ -88,7 +88,8 @@ def open_collection(collection: Collection) -> xr.Dataset:
 
 
 def _variable(source: ArraySource) -> xr.Variable:
-    attrs = dict(source.attrs)
+    attrs, first = dict(source.attrs), source.segments[0]
     if source.values is not None:
         return xr.Variable(source.dims, source.values.copy(), attrs)
-    return xr.Variable(source.dims, LazilyIndexedArray(SegmentedArray(source)), attrs)
+    origin = {"source": first.path, "original_name": first.variable}  # where xarray keeps it too; errors tell it
+    return xr.Variable(source.dims, LazilyIndexedArray(SegmentedArray(source)), attrs, origin)

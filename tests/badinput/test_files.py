@@ -96,7 +96,8 @@ def test_data_given_as_recipe(bench, ocean) -> None:
 def test_from_a_terminal_an_error_is_three_lines_and_an_exit_code(bench) -> None:
     bench.recipe.write_text("recipe: 1\ninputs: {files: lost.nc}\nchemistry: {fields: all}\noutput: {folder: result}\n")
     command = "import sys; from gridcarb.cli.main import main; sys.exit(main())"
-    ended = subprocess.run([sys.executable, "-c", command, "run", str(bench.recipe)], capture_output=True, text=True, check=False)
+    words = [sys.executable, "-c", command, "run", str(bench.recipe)]
+    ended = subprocess.run(words, capture_output=True, text=True, check=False)
     assert (ended.returncode, ended.stdout) == (3, "")
     where, what, mend = ended.stderr.splitlines()
     assert (where, what) == (str(bench.folder / "lost.nc"), "there is no such file")

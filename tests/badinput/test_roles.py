@@ -81,6 +81,9 @@ def test_the_standard_name_of_another_quantity(bench, ocean) -> None:
 
 def test_a_role_of_text(bench, ocean) -> None:
     ds = ocean()
-    bench.put(ds.drop_vars("dissic").assign(dissic=ds["talk"].astype(str).assign_attrs(ds["dissic"].attrs | {"_FillValue": "-"})))
+    text = ds["talk"].astype(str).assign_attrs(ds["dissic"].attrs | {"_FillValue": "-"})
+    bench.put(ds.drop_vars("dissic").assign(dissic=text))
     bench.say({"inputs": {"dic": "dissic"}})
-    assert "numbers" in bench.refusal(3).what
+    told = bench.refusal(3)
+    assert told.where == f"{bench.folder / 'ocean.nc'}: dissic (dic)"
+    assert "numbers" in told.what

@@ -6,7 +6,9 @@ import numpy as np
 import pytest
 import xarray as xr
 
-ROLES = {"temperature": "thetao", "salinity": "so", "dic": "dissic", "alkalinity": "talk", "phosphate": "po4", "silicate": "si"}
+from synthetic_grids.clothes import MODEL_NAMES
+
+ROLES = {name: role for role, name in MODEL_NAMES.items()}
 
 
 def _scaled(ds: xr.Dataset, name: str, factor: float, offset: float = 0.0) -> xr.Dataset:
@@ -35,16 +37,18 @@ def true(bench, ocean) -> xr.Dataset:
     return bench.success()
 
 
-@pytest.mark.parametrize("name", ["thetao", "so", "dissic", "talk", "po4", "si"])
-@pytest.mark.parametrize(("units", "what"), [(None, "missing"), ("", "missing"), ("furlong", "measure length"), ("frobs", "cannot be read")])
+@pytest.mark.parametrize("name", ROLES)
+@pytest.mark.parametrize(("units", "what"), [
+    (None, "missing"), ("", "missing"), ("furlong", "measure length"), ("frobs", "cannot be read"),
+])
 def test_missing_or_unreadable(bench, ocean, *, name: str, units: str | None, what: str) -> None:
     ds = _relabelled(ocean(), name, units)
     if name == "so":
         del ds["so"].attrs["standard_name"]  # practical salinity may go without units
     bench.put(ds)
     told = bench.refusal(3)
-    role = next(role for role, own in ROLES.items() if own == name)
-    assert told.where.endswith(role)
+    role = ROLES[name]
+    assert told.where == f"{bench.folder / 'ocean.nc'}: {name} ({role})"
     assert what in told.what
     line = told.line()
     assert list(line["reading"]["units"]) == [role]
@@ -118,6 +122,6 @@ def test_a_fill_value_that_is_text(bench, ocean) -> None:
     bench.put(ds)
     told = bench.refusal(3)
     assert "missing_value" in told.what
-    assert told.where.endswith("dic")
+    assert told.where.endswith("dissic (dic)")
 
 

@@ -195,8 +195,11 @@ def find_roles(ds: xr.Dataset, names: Mapping[str, str] | None = None) -> dict[s
     Raises
     ------
     UnknownWordError : `names` speaks of something that is no role.
-    InputError : a needed role has no variable, two, or one whose standard_name contradicts.
+    InputError : no dataset, or a needed role has no variable, two, or one whose standard_name contradicts.
     """
+    if not isinstance(ds, xr.Dataset):
+        raise InputError(f"this is a {type(ds).__name__}, not an xarray Dataset", where="dataset",
+                         mend="give one Dataset that holds temperature, salinity, DIC and alkalinity")
     for word in names or {}:
         if word not in ROLES:
             raise UnknownWordError(f"there is no role '{word}'", mend=did_you_mean(word, ROLES))

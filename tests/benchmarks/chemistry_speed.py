@@ -56,7 +56,8 @@ def against_the_script(cells: int) -> tuple[list[float], list[float]]:
 def threads_over_one(cells: int) -> list[float]:
     """Speed-up of two threads, each with its own half of the work, over one thread with all of it."""
     given = waters(cells)
-    halves = [{name: values[part] for name, values in given.items()} for part in (slice(0, cells // 2), slice(cells // 2, None))]
+    parts = (slice(0, cells // 2), slice(cells // 2, None))
+    halves = [{name: values[part] for name, values in given.items()} for part in parts]
 
     def in_threads() -> None:
         threads = [threading.Thread(target=speciate, kwargs={**half, "fields": FIELDS}) for half in halves]
@@ -87,7 +88,8 @@ def main() -> None:
     for name, times in (("whole-array NumPy script", script), ("gridcarb, one core", ours)):
         typical = statistics.median(times)
         print(f"{name:26s} {cells / typical / 1e6:7.2f} million cells/s   {typical / cells * 1e9:7.1f} ns a cell")
-    print(f"ratio                      {statistics.median(ratios):7.1f}   (lowest {min(ratios):.1f}, highest {max(ratios):.1f})")
+    spread = f"lowest {min(ratios):.1f}, highest {max(ratios):.1f}"
+    print(f"ratio                      {statistics.median(ratios):7.1f}   ({spread})")
     print(f"two threads over one       {statistics.median(threads_over_one(cells)):7.2f}")
 
 

@@ -24,13 +24,16 @@ def fields_table() -> str:
     lines = ["| key | units | what | CF standard name |", "|---|---|---|---|"]
     for field in gridcarb.FIELDS.values():
         if field.part != "input":
-            name = field.standard_name or (f"{field.volume_standard_name} (per volume)" if field.volume_standard_name else "none")
+            by_volume = f"{field.volume_standard_name} (per volume)" if field.volume_standard_name else "none"
+            name = field.standard_name or by_volume
             lines.append(f"| `{field.key}` | {field.units} | {field.long_name} | {name} |")
     return "\n".join(lines) + "\n"
 
 
 @pytest.mark.parametrize("source", blocks("python"), ids=["speciate", "derive"])
-def test_python_of_the_readme_runs(source: str, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> None:
+def test_python_of_the_readme_runs(
+    source: str, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
     monkeypatch.chdir(ROOT)
     exec(compile(source, "README.md", "exec"), {})
     assert re.fullmatch(r"(8\.\d{3}|0\.\d\d to [34]\.\d\d)\n", capsys.readouterr().out)

@@ -59,13 +59,21 @@ def open_raw(path: str) -> xr.Dataset:
     kind = storage_kind(path)
     if kind == "netcdf":
         _refuse_short_classic(path)
+    words = {"engine": "zarr", "consolidated": False} if kind == "zarr" else {"engine": "netcdf4"}
     try:
-        if kind == "zarr":
-            return xr.open_dataset(path, engine="zarr", consolidated=False, chunks=None, **_AS_STORED)
-        return xr.open_dataset(path, engine="netcdf4", **_AS_STORED)
+        dataset = xr.open_dataset(path, chunks=None, **words, **_AS_STORED)
+        groups = {} if dataset.variables else xr.open_groups(path, **words, **_AS_STORED)
     except Exception as error:
         # The libraries raise many classes for damaged files; all of them mean the same to the user.
         raise unreadable(path, error) from error
+    for group in groups.values():
+        group.close()
+    if len(groups) > 1:
+        dataset.close()
+        names = ", ".join(name.strip("/") for name in groups if name != "/")
+        raise InputError(f"all variables of the file lie in groups ({names}), which are not read", where=path,
+                         mend="copy the group with the variables to the top level of a file of its own")
+    return dataset
 
 
 def unreadable(path: str, error: Exception) -> InputError:

@@ -48,7 +48,9 @@ CASES: dict[str, tuple[Callable[[xr.Dataset], xr.Dataset], str, dict[str, str]]]
     "two candidates": (lambda ds: ds.assign(dissic_2=ds["dissic"]), "2 variables could be the dic", {}),
     "swapped": (_swapped, "look swapped", {"NOW_ALKALINITY": "talk", "NOW_DIC": "dissic"}),
     "no silicate": (lambda ds: ds.drop_vars("si"), "silicate is not given", {}),
-    "unknown temperature": (lambda ds: _without("thetao", "standard_name")(ds).rename(thetao="temp"), "in situ, potential", {}),
+    "unknown temperature": (
+        lambda ds: _without("thetao", "standard_name")(ds).rename(thetao="temp"), "in situ, potential", {},
+    ),
 }
 
 

@@ -1,0 +1,152 @@
+"""Real processes through the command line: the invented ocean on disk, a recipe cut into many small blocks."""
+
+from __future__ import annotations
+
+import json
+import re
+import signal
+import subprocess
+import sys
+import time
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from synthetic_grids import grids
+from synthetic_grids.clothes import Clothes, dress
+
+PATIENCE = 40.0
+"""Seconds after which a process that does not do what is waited for has failed the test."""
+
+MIDDLE = r"(?m)^ *(5|10|15|20) %"
+"""What a run in its first fifth has said."""
+
+_START = """
+import signal
+signal.signal(signal.SIGINT, signal.default_int_handler)  # which a shell may have switched off for background jobs
+from gridcarb.cli.main import main
+main()
+"""
+
+
+@pytest.fixture(scope="session")
+def ocean_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """Six months on 10 x 20 columns of 5 levels."""
+    grid, depth = grids.rectilinear(10, 20), grids.levels((0.0, 20.0, 100.0, 500.0, 2000.0, 5000.0))
+    time = grids.months(2010, 2010, "noleap").isel(time=slice(6))
+    truth = grids.sample(grid["lon"], grid["lat"], depth["lev"], time["year"])
+    dressed = dress(truth, depth["lev"], grid["lat"], Clothes(salinity="practical")).drop_vars("year", errors="ignore")
+    path = tmp_path_factory.mktemp("ocean") / "ocean.nc"
+    whole = dressed.assign_coords(grid.merge(depth).merge(time[["time"]]).coords)
+    whole.to_netcdf(path, engine="netcdf4", encoding={name: {"_FillValue": None} for name in whole.coords})
+    return path
+
+
+@dataclass
+class Run:
+    """One ``gridcarb run`` of a recipe in a process of its own, with what it has said so far."""
+
+    recipe: Path
+    words: tuple[str, ...] = ()
+    process: subprocess.Popen[str] = field(init=False)
+
+    def __post_init__(self) -> None:
+        self.log = self.recipe.with_suffix(f".{time.monotonic_ns()}.log")
+        with self.log.open("w") as log:
+            self.process = subprocess.Popen(
+                [sys.executable, "-c", _START, "run", str(self.recipe), *self.words], stdout=log, stderr=log, text=True,
+            )
+
+    @property
+    def said(self) -> str:
+        return self.log.read_text()
+
+    def wait_for(self, pattern: str) -> None:
+        """Wait until the process has said something that matches; fail if it ends or takes too long."""
+        until = time.monotonic() + PATIENCE
+        while not re.search(pattern, self.said):
+            assert self.process.poll() is None, f"ended before it said {pattern!r}:\n{self.said}"
+            assert time.monotonic() < until, f"never said {pattern!r}:\n{self.said}"
+            time.sleep(0.01)
+
+    def wait(self) -> int:
+        """The exit code."""
+        return self.process.wait(PATIENCE)
+
+    def end(self, number: int) -> int:
+        """Send a signal to this process; its exit code."""
+        self.process.send_signal(number)
+        return self.wait()
+
+
+@dataclass
+class Place:
+    """A folder with a recipe in it, and the result the recipe leads to."""
+
+    folder: Path
+    recipe: Path
+    running: list[Run] = field(default_factory=list)
+
+    @property
+    def result(self) -> Path:
+        return self.folder / "result"
+
+    @property
+    def partial(self) -> Path:
+        return self.folder / "result.partial"
+
+    @property
+    def lock(self) -> Path:
+        return self.folder / "result.lock"
+
+    def begin(self, *words: str) -> Run:
+        run = Run(self.recipe, words)
+        self.running.append(run)
+        return run
+
+    def begin_and_reach_the_middle(self, *words: str) -> Run:
+        run = self.begin(*words)
+        run.wait_for(MIDDLE)
+        return run
+
+    def put_earlier_result(self) -> dict[str, bytes]:
+        """A result of an earlier run, as far as one can tell from outside."""
+        self.result.mkdir()
+        (self.result / "journal.json").write_text('{"state": "complete"}')
+        (self.result / "fields.nc").write_bytes(b"numbers of an earlier day")
+        return self.contents()
+
+    def contents(self) -> dict[str, bytes]:
+        return {path.name: path.read_bytes() for path in self.result.rglob("*") if path.is_file()}
+
+    def journal(self, folder: Path) -> dict[str, Any]:
+        told: dict[str, Any] = json.loads((folder / "journal.json").read_text())
+        return told
+
+
+@pytest.fixture
+def place(tmp_path: Path, ocean_file: Path) -> Iterator[Callable[..., Place]]:
+    """Make a place: `place(output={...}, engine={...}, ...)`; by default a run of 120 small blocks, a few seconds long."""
+    made: list[Place] = []
+
+    def make(folder: Path = tmp_path, files: Path = ocean_file, **sections: dict[str, Any]) -> Place:
+        base: dict[str, Any] = {
+            "recipe": 1, "inputs": {"files": str(files)}, "reading": {"density": "1026 kg m-3"},
+            "chemistry": {"fields": ["ph_total_scale"]}, "engine": {"workers": 2, "block": {"time": 1, "cells": 10}},
+            "output": {"folder": str(folder / "result"), "netcdf": False},
+        }
+        for section, words in sections.items():
+            base[section] = base[section] | words
+        recipe = tmp_path / f"recipe{len(made)}.yaml"
+        recipe.write_text(json.dumps(base))
+        made.append(Place(folder, recipe))
+        return made[-1]
+
+    yield make
+    for each in made:
+        for run in each.running:
+            if run.process.poll() is None:
+                run.end(signal.SIGKILL)

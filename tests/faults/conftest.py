@@ -129,13 +129,13 @@ class Place:
 
 @pytest.fixture
 def place(tmp_path: Path, ocean_file: Path) -> Iterator[Callable[..., Place]]:
-    """Make a place: `place(output={...}, engine={...}, ...)`; by default a run of 120 small blocks, a few seconds long."""
+    """Make a place: `place(output={...}, engine={...}, ...)`; by default a run of 60 small blocks, a few seconds long."""
     made: list[Place] = []
 
     def make(folder: Path = tmp_path, files: Path = ocean_file, **sections: dict[str, Any]) -> Place:
         base: dict[str, Any] = {
             "recipe": 1, "inputs": {"files": str(files)}, "reading": {"density": "1026 kg m-3"},
-            "chemistry": {"fields": ["ph_total_scale"]}, "engine": {"workers": 2, "block": {"time": 1, "cells": 10}},
+            "chemistry": {"fields": ["ph_total_scale"]}, "engine": {"workers": 2, "block": {"time": 1, "cells": 20}},
             "output": {"folder": str(folder / "result"), "netcdf": False},
         }
         for section, words in sections.items():

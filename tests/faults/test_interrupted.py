@@ -21,6 +21,7 @@ def test_killed_in_the_middle(place) -> None:
     said = " ".join(after.said.split())
     assert f"had left its lock (process {run.process.pid} on {os.uname().nodename}" in said
     assert "had left an incomplete result; it was removed" in said
+    assert "Warning" not in after.said
     assert here.journal(here.result)["state"] == "complete"
     assert sorted(path.name for path in here.folder.iterdir() if path.name.startswith("result")) == ["result"]
     assert "fields.nc" not in here.contents(), "nothing of the earlier result is mixed into the new one"

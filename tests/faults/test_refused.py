@@ -12,10 +12,10 @@ import pytest
 
 @pytest.fixture
 def tiny_disk(tmp_path):
-    """A disk of 400 kB; mounting it is for root alone."""
+    """A disk of 300 kB; mounting it is for root alone."""
     folder = tmp_path / "disk"
     folder.mkdir()
-    command = ["mount", "-t", "tmpfs", "-o", "size=400k", "tmpfs", str(folder)]
+    command = ["mount", "-t", "tmpfs", "-o", "size=300k", "tmpfs", str(folder)]
     mounted = subprocess.run(command, capture_output=True, check=False)
     if mounted.returncode:
         pytest.skip(f"a small tmpfs cannot be mounted here: {mounted.stderr.decode().strip()}")
@@ -35,7 +35,7 @@ def test_a_full_disk(place, tiny_disk) -> None:
     assert run.wait() == 4, run.said
     where, what, mend = error_lines(run.said)
     assert str(here.partial) in where
-    assert "of 120)" in where
+    assert "of 60)" in where
     assert what.startswith("the disk is full: about ")
     assert mend.startswith("to mend it: free some space")
     assert "Traceback" not in run.said
@@ -105,7 +105,7 @@ def test_an_input_cut_short_under_the_run(place, ocean_file, tmp_path) -> None:
     where, _, mend = error_lines(run.said)
     assert str(moving) in where
     assert "(block " in where
-    assert "of 120)" in where
+    assert "of 60)" in where
     assert "changed after the run began" in mend
     assert "Traceback" not in run.said
     assert not here.result.exists()

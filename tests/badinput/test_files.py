@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import subprocess
 import sys
 
@@ -103,3 +104,39 @@ def test_from_a_terminal_an_error_is_three_lines_and_an_exit_code(bench) -> None
     assert (where, what) == (str(bench.folder / "lost.nc"), "there is no such file")
     assert mend.startswith("to mend it: correct `inputs: files`")
     assert list(bench.folder.iterdir()) == [bench.recipe]
+
+
+def test_a_plan_refuses_what_a_run_refuses(bench, ocean) -> None:
+    bench.put(ocean().drop_vars("talk"))
+    told = bench.refusal(3)
+    ended = CliRunner().invoke(main, ["plan", str(bench.recipe)])
+    assert (ended.exit_code, ended.stdout) == (3, "")
+    assert ended.stderr.splitlines() == [told.where, told.what, f"to mend it: {told.mend}"]
+
+
+def test_for_machines_an_error_is_one_json_document(bench, ocean) -> None:
+    bench.put(ocean().drop_vars("talk"))
+    told = bench.refusal(3)
+    ended = bench.run("--json")
+    assert (ended.exit_code, ended.stdout) == (3, "")
+    error = json.loads(ended.stderr)["error"]
+    assert error == {"kind": "InputError", "where": told.where, "what": told.what, "mend": told.mend, "exit_code": 3}
+
+
+def test_a_chunk_that_breaks_in_the_middle_of_a_run(bench, ocean) -> None:
+    """The headers and the sample are sound; what was there before stays, what was begun is kept with the reason."""
+    ds = ocean().drop_encoding().chunk(lev=1)
+    ds.to_zarr(bench.folder / "ocean.zarr", consolidated=False, zarr_format=2)
+    bench.say({"inputs": {"files": "ocean.zarr"}})
+    assert bench.run("--quiet").exit_code == 0
+    before = (bench.result / "journal.json").read_bytes()
+    deep = bench.folder / "ocean.zarr" / "talk" / "2.0.0"
+    deep.write_bytes(deep.read_bytes()[:20])
+    ended = bench.run()
+    assert ended.exit_code == 3
+    assert f"{bench.folder / 'ocean.zarr'}: talk" in ended.stderr
+    assert "damaged or cut short" in ended.stderr
+    assert "Traceback" not in ended.stderr
+    assert (bench.result / "journal.json").read_bytes() == before
+    assert json.loads((bench.folder / "result.partial" / "journal.json").read_text())["state"] == "failed"
+    assert not (bench.folder / "result.lock").exists()

@@ -174,3 +174,20 @@ def test_a_figure_of_what_is_not_there(bench, ocean) -> None:
     assert "9000" in told.what or "9,000" in told.what
     bench.say({"figures": [{"kind": "map", "field": "ph_total_scale", "depth": 0}]})
     bench.success()
+
+
+@pytest.mark.parametrize("turned", [
+    lambda ds: ds.isel(lev=slice(None, None, -1)), lambda ds: ds.isel(lat=slice(None, None, -1)),
+    lambda ds: ds.transpose("lon", "lat", "lev", "bnds"), lambda ds: ds.roll(lon=5, roll_coords=True),
+    lambda ds: ds.assign_coords(lon=("lon", ds["lon"].values - 360.0, ds["lon"].attrs)),
+    lambda ds: ds.assign_coords(lev=("lev", -ds["lev"].values, ds["lev"].attrs | {"positive": "up"})),
+    lambda ds: ds.assign_coords(lev=("lev", 100 * ds["lev"].values, ds["lev"].attrs | {"units": "cm"})),
+])
+def test_a_file_that_lies_another_way_gives_the_same_numbers(bench, ocean, turned) -> None:
+    bench.put(ocean())
+    true = bench.success()["ph_total_scale"]
+    bench.put(turned(ocean()))
+    found = bench.success()["ph_total_scale"]
+    metres = abs(found["lev"]) * {"m": 1.0, "cm": 0.01}[found["lev"].attrs["units"]]
+    found = found.assign_coords(lon=found["lon"] % 360, lev=metres).sortby(["lev", "lat", "lon"])
+    np.testing.assert_array_equal(found.values, true.values)

@@ -66,7 +66,7 @@ def test_sample_cells_against_the_twin(given: xr.Dataset, found: xr.Dataset) -> 
     cells = np.argwhere(np.isfinite(found["ph_total_scale"].values))[::397]
     assert len(cells) > 50
     for cell in map(tuple, cells):
-        depth, lat, lon = (float(given[name].values[place]) for name, place in zip(("depth", "lat", "lon"), cell, strict=True))
+        depth, lat, lon = (float(given[dim].values[place]) for dim, place in zip(given["salt"].dims, cell, strict=True))
         salt, warm = float(given["salt"].values[cell]), float(given["temp"].values[cell])
         pressure = gsw.p_from_z(-depth, lat)
         absolute = gsw.SA_from_SP(salt, pressure, lon, lat)

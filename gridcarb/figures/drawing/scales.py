@@ -19,6 +19,9 @@ from gridcarb.figures.drawing import theme
 
 Floats = npt.NDArray[np.float64]
 
+_SHORTEST_SIDE = 0.4
+"""Share of half a centred palette that a side needs to be told from the middle."""
+
 
 @dataclass(frozen=True)
 class Scale:
@@ -55,19 +58,38 @@ class Scale:
 def scale_of(values: Floats, ink: Ink, limits: tuple[float, float] | None) -> Scale:
     """The scale for the finite ones of `values`: `limits` as given, else round numbers about the middle 96 %.
 
-    A centred palette keeps its middle at `ink.centre`, whatever the limits.
+    A centred palette keeps its middle at `ink.centre`, whatever the limits, see `_two_sides`.
     """
     known = values[np.isfinite(values)]
     low, high = limits or _robust(known)
     palette, norm = matplotlib.colormaps[ink.palette], Normalize(low, high)
     ticks = _ticks(low, high, 8)
     if ink.centre is not None and low < ink.centre < high:
-        norm = TwoSlopeNorm(ink.centre, low, high)
-        ticks = tuple(sorted({*_ticks(low, ink.centre, 4), ink.centre, *_ticks(ink.centre, high, 4)}))
+        palette, norm, ticks = _two_sides(palette, low, ink.centre, high)
     elif ink.centre is not None:
         palette, low, high = _one_side(palette, ink.centre, (low, high), stated=limits is not None)
         norm, ticks = Normalize(low, high), _ticks(low, high, 8)
     return Scale(palette, norm, ticks, bool((known < low).any()), bool((known > high).any()))
+
+
+def _two_sides(
+    palette: Colormap, low: float, centre: float, high: float
+) -> tuple[Colormap, Normalize, tuple[float, ...]]:
+    """The part of a centred palette for values on both sides of the centre, with norm and ticks.
+
+    Both sides have one measure, a step of colour meaning the same everywhere. Only a side so short that its end could not
+    be told from the middle is stretched, and then no further than the colours need.
+    """
+    below, above = centre - low, high - centre
+    longest = max(below, above)
+    if min(below, above) >= _SHORTEST_SIDE * longest:
+        places = 0.5 + np.linspace(-below, above, 256) / (2 * longest)
+        return ListedColormap(palette(places)), Normalize(low, high), _ticks(low, high, 8)
+    left, right = (0.5 * max(side / longest, _SHORTEST_SIDE) for side in (below, above))
+    places = np.concatenate([np.linspace(0.5 - left, 0.5, 128), np.linspace(0.5, 0.5 + right, 128)])
+    most = (4, 2) if below > above else (2, 4)
+    ticks = {*_ticks(low, centre, most[0]), centre, *_ticks(centre, high, most[1])}
+    return ListedColormap(palette(places)), TwoSlopeNorm(centre, low, high), tuple(sorted(ticks))
 
 
 def _one_side(

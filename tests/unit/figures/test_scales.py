@@ -57,6 +57,21 @@ def test_a_centred_palette_keeps_its_middle(values: list[float]) -> None:
     assert 1.0 in scale.ticks
 
 
+def test_sides_of_like_length_have_one_measure() -> None:
+    scale = scale_of(np.linspace(0.4, 1.4, 50), Ink("BrBG", centre=1.0), (0.4, 1.4))
+    assert type(scale.norm) is matplotlib.colors.Normalize
+    steps = np.diff(scale.ticks)
+    assert np.allclose(steps, steps[0])
+    whole = matplotlib.colormaps["BrBG"]
+    assert np.allclose(scale.colours(np.array([0.4, 1.4])), whole([0.0, 0.5 + 0.4 / 1.2]), atol=0.02)
+
+
+def test_a_side_that_would_vanish_is_stretched_as_far_as_eyes_need() -> None:
+    scale = scale_of(np.array([0.7, 4.0]), Ink("BrBG", centre=1.0), (0.7, 4.0))
+    assert np.allclose(scale.colours(np.array([0.7, 4.0])), matplotlib.colormaps["BrBG"]([0.3, 1.0]), atol=0.02)
+    assert 1.0 in scale.ticks
+
+
 def test_values_on_one_side_use_one_half_and_no_impossible_numbers() -> None:
     above = scale_of(np.linspace(1.2, 4.4, 50), Ink("BrBG", centre=1.0), None)
     assert (above.norm.vmin, above.norm.vmax) == (1.0, 4.4)

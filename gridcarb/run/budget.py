@@ -10,6 +10,9 @@ from gridcarb.errors import BudgetError
 DEFAULT_TASK_BYTES = 200_000_000
 """What one task may take when the recipe states no memory."""
 
+PROGRAM_BYTES = 400_000_000
+"""What the process takes before the first block, for libraries and the compiler (measured); it comes on top."""
+
 _SCRATCH_BYTES = 4_000_000
 """Rows of a chemistry tile, compressed chunks on their way, small things."""
 

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 from gridcarb.chemistry import CONSTANTS
 from gridcarb.errors import Notice
+from gridcarb.run.budget import PROGRAM_BYTES
 from gridcarb.write.disk import free_bytes, sized
 
 if TYPE_CHECKING:
@@ -85,7 +86,7 @@ def plan_data(plan: Plan, notices: Sequence[Notice]) -> dict[str, object]:
         "bytes": {"in": plan.bytes_in, "out": plan.bytes_out},
         "memory": {
             "workers": plan.workers, "allowed_per_task": plan.allowed,
-            "projected_per_task": plan.footprint.projected(plan.layout.cells_per_block),
+            "program": PROGRAM_BYTES, "projected_per_task": plan.footprint.projected(plan.layout.cells_per_block),
         },
         "result": str(plan.folder.target),
     }  # fmt: skip
@@ -120,7 +121,8 @@ def _cost_rows(plan: Plan) -> Rows:
         ("blocks", f"{len(layout)} of up to {size or 'one cell'}"),
         ("bytes in", f"{sized(plan.bytes_in)} uncompressed"),
         ("bytes out", f"{sized(plan.bytes_out)} uncompressed in each copy"),
-        ("memory", f"{sized(projected)} a task, {plan.workers} at a time; {sized(plan.allowed)} a task are allowed"),
+        ("memory", f"{sized(projected)} a task, {plan.workers} at a time; {sized(plan.allowed)} a task are allowed; "
+                   f"the program itself takes about {sized(PROGRAM_BYTES)}"),
     ]
     times = plan.reads_of_a_chunk()
     if times > 1:

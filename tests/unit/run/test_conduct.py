@@ -173,9 +173,9 @@ def test_input_per_mass_becomes_output_per_volume(recipe, watcher, ocean, save_o
 
 def test_blocks_and_workers_change_no_bit(recipe, watcher, ocean, save_ocean, same_bits, tmp_path) -> None:
     """Every array of every cut of the work holds the same bytes, land, status and coordinates included."""
-    path = save_ocean(ocean(4, 5, 3), tmp_path / "ocean.nc", time=2, lat=3)
-    ways = [{"workers": 1}, {"workers": 3, "block": {"time": 1, "cells": 1}}, {"workers": 2, "memory": "8.06 MB"},
-            {"workers": 2, "block": {"time": 2, "cells": 3}}, {"workers": 2, "block": {"time": 3, "cells": 10}}]
+    path = save_ocean(ocean(4, 4, 2), tmp_path / "ocean.nc", time=1, lat=2)
+    ways = [{"workers": 1}, {"workers": 3, "block": {"time": 1, "cells": 1}}, {"workers": 2, "memory": "8.02 MB"},
+            {"workers": 2, "block": {"time": 2, "cells": 3}}, {"workers": 2, "block": {"time": 2, "cells": 8}}]
     stores, counts = [], set()
     for number, engine in enumerate(ways):
         output = {"folder": str(tmp_path / str(number)), "precision": "float64"}
@@ -186,7 +186,7 @@ def test_blocks_and_workers_change_no_bit(recipe, watcher, ocean, save_ocean, sa
     assert len(counts) == len(ways)
     assert all(same_bits(stores[0], other) for other in stores[1:])
     with opened(stores[0]) as whole:
-        assert np.isfinite(whole["ph_total_scale"]).sum() > 100
+        assert np.isfinite(whole["ph_total_scale"]).sum() > 50
 
 
 def test_one_task_a_block_each_solved_once(recipe, watcher, monkeypatch) -> None:

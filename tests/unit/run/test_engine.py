@@ -99,3 +99,20 @@ def test_an_error_of_done_ends_the_run_too() -> None:
 
     with pytest.raises(RuntimeError, match="no more"):
         run_tasks(lambda _, number: number, None, range(100), workers=2, done=refuse)
+
+
+def test_ctrl_c_waits_for_what_is_at_work() -> None:
+    begun, ended = [], []
+
+    def task(_: object, number: int) -> None:
+        begun.append(number)
+        time.sleep(0.05 if number % 2 else 0.001)
+        ended.append(number)
+
+    def interrupt(_: object) -> None:
+        raise KeyboardInterrupt
+
+    with pytest.raises(KeyboardInterrupt):
+        run_tasks(task, None, range(100), workers=4, done=interrupt)
+    assert sorted(ended) == sorted(begun)
+    assert len(begun) < 20

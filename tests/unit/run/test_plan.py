@@ -58,6 +58,7 @@ def test_sections_hold_words_for_people(recipe) -> None:
     rows = {label: value for section in report.sections for label, value in section.rows}
     assert "3 x lev 5 x lat 6 x lon 12 = 1,080 cells" in rows["grid"]
     assert rows["holding"] == "Zarr store (format 3), journal"
+    assert rows["memory"].endswith("the program itself takes about 400 MB")
     assert rows["room there"].endswith("B free")
 
 

@@ -148,9 +148,10 @@ def _unlike_sea_water(role: str, median: float, reading: AmountReading) -> Input
         likely[f"{mass} of {substance}"] = f"{1 / molar_mass:.6g} mol m-3"
     what = f"the median {role} of a sample is {median:.4g} umol/kg, far from sea water"
     if likely:
-        names, first = " or ".join(likely), next(iter(likely.values()))
-        return InputError(f"{what}; the numbers (about {number:.4g}) look like {names}", where=role,
-                          mend=f"write `reading: {{units: {{{role}: {first}}}}}` in the recipe, {_ACCEPT}")
+        lines = " or ".join(f"`reading: {{units: {{{role}: {text}}}}}`" for text in likely.values())
+        choice = ", whichever is true (by volume and by mass differ by 2.5 %)," if len(likely) > 1 else ""
+        return InputError(f"{what}; the numbers (about {number:.4g}) look like {' or '.join(likely)}", where=role,
+                          mend=f"write {lines} in the recipe{choice or ','} {_ACCEPT}")
     return InputError(f"{what}, and no unit of the trade would bring it there", where=role,
                       mend=f"check which variable is read as {role}, {_ACCEPT}")
 

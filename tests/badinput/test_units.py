@@ -84,6 +84,14 @@ def test_units_that_are_not_those_of_the_numbers(bench, ocean, true: xr.Dataset,
     _close(bench.success(), true)
 
 
+def test_where_two_units_are_likely_both_are_named(bench, ocean) -> None:
+    bench.put(_relabelled(ocean(), "dissic", "mol m-3"))
+    told = bench.refusal(3)
+    assert "look like mmol m-3 or umol kg-1" in told.what
+    assert "whichever is true" in told.mend
+    assert [told.line(place)["reading"]["units"]["dic"] for place in (0, 1)] == ["mmol m-3", "umol kg-1"]
+
+
 @pytest.mark.parametrize(("name", "units", "factor"), [
     ("dissic", "MMOL/M3", 1.025), ("dissic", "UMOL/KG", 1), ("talk", "umol/l", 1.025), ("talk", "microeq/kg", 1),
     ("dissic", "μmol kg⁻¹", 1), ("talk", "uEq/L", 1.025), ("po4", "umol P/l", 1.025), ("thetao", "DEG C", 1),

@@ -10,8 +10,12 @@ outputs, always with the words that would state the decision in a recipe.
 from __future__ import annotations
 
 import difflib
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import asdict, dataclass
+from typing import ParamSpec, TypeVar
+
+P = ParamSpec("P")
+R = TypeVar("R")
 
 
 class GridcarbError(Exception):
@@ -22,9 +26,12 @@ class GridcarbError(Exception):
     what : what is wrong, in one sentence.
     where : file, recipe line, variable or block it concerns.
     mend : what the user can do about it.
+
+    `others` holds what else was found wrong by the same checks, so that all of it can be mended at once.
     """
 
     exit_code = 1
+    others: tuple[GridcarbError, ...] = ()
 
     def __init__(self, what: str = "", *, where: str = "", mend: str = "") -> None:
         super().__init__(what)
@@ -36,7 +43,9 @@ class GridcarbError(Exception):
         lines = [line for line in (self.where, self.what) if line]
         if self.mend:
             lines.append(f"to mend it: {self.mend}")
-        return "\n".join(lines)
+        if self.others:
+            lines.append(f"and {len(self.others)} more:")
+        return "\n".join([*lines, *(str(other) for other in self.others)])
 
 
 class UnknownWordError(GridcarbError, ValueError):
@@ -104,6 +113,36 @@ class RecipeError(GridcarbError, ValueError):
 
     def __str__(self) -> str:
         return "\n".join([self.what, *(fault.render(self.where) for fault in self.faults)])
+
+
+class Faults:
+    """Errors put by, so that the first does not hide the next.
+
+    The checks go on with what is whole; `tell` raises what was found, the rest of it in the `others` of the first.
+    """
+
+    def __init__(self) -> None:
+        self.found: list[GridcarbError] = []
+
+    def attempt(self, function: Callable[P, R], /, *args: P.args, **words: P.kwargs) -> R | None:
+        """What `function` gives; None if it raised, and the error is put by."""
+        try:
+            return function(*args, **words)
+        except GridcarbError as error:
+            self.put(error)
+            return None
+
+    def put(self, error: GridcarbError) -> None:
+        """Put an error by, and those it brings along as their own."""
+        others, error.others = error.others, ()
+        self.found += [error, *others]
+
+    def tell(self) -> None:
+        """Raise what was found, if anything."""
+        if self.found:
+            first, *rest = self.found
+            first.others = tuple(rest)
+            raise first
 
 
 @dataclass(frozen=True)

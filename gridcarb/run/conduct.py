@@ -155,7 +155,7 @@ def _refuse_changed(plan: Plan) -> None:
     changed = changed_inputs(plan.collection)
     if changed:
         raise InputError(
-            "the file was changed or moved while the run was reading it", where=", ".join(changed),
+            "input was changed or moved while the run was reading it", where=", ".join(changed),
             mend="run again when nothing writes to the input",
         )
 

@@ -1,6 +1,6 @@
 """Sources: a lazy dataset from files, with nothing changed in it.
 
-`gather` reads headers and checks that all files fit together; `open_collection` gives the numbers as stored, under the
+`gather` reads headers and checks that all files fit together (`survey` tells all that is wrong); `open_collection` gives the numbers as stored, under the
 names of the roles; `find_roles` applies the same rules to a dataset in memory; `close_all` lets go of the files that
 reading has kept open.
 """
@@ -13,8 +13,9 @@ from gridcarb.sources.handles import close_all
 from gridcarb.sources.lazy import open_collection
 from gridcarb.sources.roles import find_roles
 from gridcarb.sources.settings import InputsSettings, RoleInput
+from gridcarb.sources.survey import Chance, FileSurvey, Survey, VariableSurvey, survey
 
 __all__ = [
-    "ArraySource", "Collection", "FileRecord", "InputsSettings", "RoleInput", "RoleSource", "Segment", "close_all",
-    "find_roles", "gather", "open_collection",
+    "ArraySource", "Chance", "Collection", "FileRecord", "FileSurvey", "InputsSettings", "RoleInput", "RoleSource", "Segment",
+    "Survey", "VariableSurvey", "close_all", "find_roles", "gather", "open_collection", "survey",
 ]

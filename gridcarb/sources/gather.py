@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 
 from gridcarb.axes import Axes, grid_kind
-from gridcarb.errors import InputError, Notice
+from gridcarb.errors import Faults, InputError, Notice
 from gridcarb.fields import ROLES
 from gridcarb.sources import grid as grids
 from gridcarb.sources import timeline
@@ -58,23 +58,52 @@ def gather(settings: InputsSettings, base: Path) -> Collection:
     Raises
     ------
     InputError : a file that is missing, damaged or no NetCDF/Zarr; a role without a variable or with two; grids or time
-        axes that disagree, overlap or have gaps. It says where, what, and which recipe line mends it.
+        axes that disagree, overlap or have gaps. It says where, what, and which recipe line mends it; its `others` hold
+        whatever else is wrong.
     """
-    groups, told = _groups(settings, base)
-    chosen, notices = settle(groups, told)
+    faults = Faults()
+    found = explore(settings, base, faults)
+    faults.tell()
+    assert found is not None  # or there would have been a fault
+    return found
+
+
+def explore(settings: InputsSettings, base: Path, faults: Faults) -> Collection | None:
+    """As `gather`, with every error put by in `faults`: a collection of the roles that fit together, None if none does."""
+    groups, told = _groups(settings, base, faults)
+    if not any(groups.values()):
+        return None
+    chosen, notices = settle(groups, told, faults)
+    parts: dict[str, _Part] = {}
     for role, one in chosen.items():
-        _refuse_holes(role, one, groups[role], alone=bool(settings.role(role).files))
-    parts = {role: _part(role, one, settings.time_gaps) for role, one in chosen.items()}
-    reference = parts[_REFERENCE]
+        alone = bool(settings.role(role).files)
+        part = faults.attempt(_whole_part, role, one, groups[role], alone, settings.time_gaps)
+        parts |= {role: part} if part else {}
+    fitting: dict[str, _Part] = {}
+    reference = parts.get(_REFERENCE) or next(iter(parts.values()), None)
     for role, part in parts.items():
-        notices += _checked(role, part, reference)
+        assert reference is not None
+        told_of_it = faults.attempt(_checked, role, part, reference)
+        if told_of_it is not None:
+            notices += told_of_it
+            fitting[role] = part
+    return None if reference is None else faults.attempt(_collection, fitting, reference, notices)
+
+
+def _whole_part(role: str, one: Candidate, group: Sequence[Header], alone: bool, gaps: str) -> _Part:
+    _refuse_holes(role, one, group, alone)
+    return _part(role, one, gaps)
+
+
+def _collection(parts: Mapping[str, _Part], reference: _Part, notices: Sequence[Notice]) -> Collection:
     names = _kept(reference)
     coordinates = _coordinates(reference, names)
     roles = {
         role: RoleSource(role, part.variable, part.how, _field(part, reference, names)) for role, part in parts.items()
     }
     headers = {header.path: header.record for part in parts.values() for header in part.headers}
-    sizes = dict(zip(roles[_REFERENCE].array.dims, roles[_REFERENCE].array.shape, strict=True))
+    field = next(roles[role].array for role, part in parts.items() if part is reference)
+    sizes = dict(zip(field.dims, field.shape, strict=True))
     return Collection(
         roles=roles, coordinates=coordinates, axes=reference.axes,
         kind=grid_kind(reference.headers[0].skeleton(reference.variable), reference.axes), sizes=sizes,
@@ -82,14 +111,20 @@ def gather(settings: InputsSettings, base: Path) -> Collection:
     )
 
 
-def _groups(settings: InputsSettings, base: Path) -> tuple[dict[str, list[Header]], dict[str, str]]:
+def _groups(
+    settings: InputsSettings, base: Path, faults: Faults
+) -> tuple[dict[str, list[Header]], dict[str, str]]:
     """For each role the headers its variable may lie in, and the variable names the recipe tells."""
-    paths = {"": locate(settings.files, base)}
-    paths |= {role: locate(settings.role(role).files, base) for role in ROLES if settings.role(role).files}
-    if not any(paths.values()):
-        raise InputError("the recipe names no input files", where="inputs", mend="write `inputs: {files: [data/*.nc]}`")
-    headers = {path: read_header(path) for path in dict.fromkeys(path for group in paths.values() for path in group)}
-    groups = {role: [headers[path] for path in paths.get(role, paths[""])] for role in ROLES}
+    paths = {"": faults.attempt(locate, settings.files, base)}
+    paths |= {role: faults.attempt(locate, settings.role(role).files, base) for role in ROLES if settings.role(role).files}
+    if all(found == [] for found in paths.values()):
+        faults.put(InputError("the recipe names no input files", where="inputs",
+                              mend="write `inputs: {files: [data/*.nc]}`"))
+    every = dict.fromkeys(path for group in paths.values() for path in group or ())
+    headers = {path: faults.attempt(read_header, path) for path in every}
+    groups = {
+        role: [header for path in paths.get(role, paths[""]) or () if (header := headers[path])] for role in ROLES
+    }
     told = {role: name for role in ROLES if (name := settings.role(role).variable)}
     return groups, told
 

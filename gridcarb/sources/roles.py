@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import xarray as xr
 
-from gridcarb.errors import InputError, Notice, UnknownWordError, did_you_mean
+from gridcarb.errors import Faults, InputError, Notice, UnknownWordError, did_you_mean
 from gridcarb.fields import REQUIRED_ROLES, ROLES
 from gridcarb.sources.collection import FileRecord
 from gridcarb.sources.conventions import CONVENTIONS
@@ -114,25 +114,23 @@ def _fields_of(header: Header) -> list[str]:
     return [name for name, head in header.heads.items() if name not in pointed and head.dims and name not in head.dims]
 
 
-def settle(groups: Mapping[str, Sequence[Header]], names: Mapping[str, str]) -> tuple[dict[str, Candidate], list[Notice]]:
-    """One variable for every role that has one.
+def settle(
+    groups: Mapping[str, Sequence[Header]], names: Mapping[str, str], faults: Faults
+) -> tuple[dict[str, Candidate], list[Notice]]:
+    """One variable for every role that has one; roles with two, or none where one is needed, are put by as faults.
 
     Parameters
     ----------
     groups : role -> headers of the files it may lie in.
     names : role -> variable, as the user told.
-
-    Raises
-    ------
-    InputError : nothing is known as a role that is needed, or two variables are known equally well.
     """
-    found = {
-        role: [told(role, names[role], headers)] if role in names else candidates(role, headers)
-        for role, headers in groups.items()
-    }
-    _refuse_missing([role for role in REQUIRED_ROLES if not found.get(role)], groups)
+    sought = {role: faults.attempt(_known, role, headers, names.get(role)) for role, headers in groups.items()}
+    found = {role: several for role, several in sought.items() if several}
+    lacking = [role for role in REQUIRED_ROLES if sought.get(role, []) == []]
+    faults.attempt(_refuse_missing, lacking, groups)
     found, notices = _of_one_depth(found)
-    chosen = {role: _only(role, found[role]) for role in ROLES if found.get(role)}
+    settled = {role: faults.attempt(_only, role, found[role]) for role in ROLES if found.get(role)}
+    chosen = {role: one for role, one in settled.items() if one}
     notices += [
         Notice("role-by-name", f"{role} is '{one.variable}', recognised {one.how}: it has no standard_name",
                f"inputs: {{{role}: {one.variable}}}")
@@ -141,9 +139,13 @@ def settle(groups: Mapping[str, Sequence[Header]], names: Mapping[str, str]) -> 
     return chosen, notices
 
 
+def _known(role: str, headers: Sequence[Header], name: str | None) -> list[Candidate]:
+    return candidates(role, headers) if name is None else [told(role, name, headers)]
+
+
 def _of_one_depth(found: dict[str, list[Candidate]]) -> tuple[dict[str, list[Candidate]], list[Notice]]:
     """Water columns where every needed role has one, else surface fields: never a mixture."""
-    deep = all(any(one.levels for one in found[role]) for role in REQUIRED_ROLES)
+    deep = all(any(one.levels for one in found[role]) for role in REQUIRED_ROLES if role in found)
     kept, notices = {}, []
     for role, several in found.items():
         fitting = [one for one in several if bool(one.levels) == deep or one.how == TOLD]
@@ -204,5 +206,7 @@ def find_roles(ds: xr.Dataset, names: Mapping[str, str] | None = None) -> dict[s
         if word not in ROLES:
             raise UnknownWordError(f"there is no role '{word}'", mend=did_you_mean(word, ROLES))
     header = Header("", heads_of(ds), ds.attrs, {}, FileRecord("", 0, 0, ""))
-    chosen, _ = settle(dict.fromkeys(ROLES, (header,)), names or {})
+    faults = Faults()
+    chosen, _ = settle(dict.fromkeys(ROLES, (header,)), names or {}, faults)
+    faults.tell()
     return {role: one.variable for role, one in chosen.items()}

@@ -1,8 +1,8 @@
 """Sources: a lazy dataset from files, with nothing changed in it.
 
-`gather` reads headers and checks that all files fit together (`survey` tells all that is wrong); `open_collection` gives the numbers as stored, under the
-names of the roles; `find_roles` applies the same rules to a dataset in memory; `close_all` lets go of the files that
-reading has kept open.
+`gather` reads headers and checks that all files fit together, `survey` tells all that is there and all that is wrong;
+`open_collection` gives the numbers as stored, under the names of the roles; `find_roles` applies the same rules to a
+dataset in memory; `close_all` lets go of the files that reading has kept open.
 """
 
 from __future__ import annotations
@@ -16,6 +16,6 @@ from gridcarb.sources.settings import InputsSettings, RoleInput
 from gridcarb.sources.survey import Chance, FileSurvey, Survey, VariableSurvey, survey
 
 __all__ = [
-    "ArraySource", "Chance", "Collection", "FileRecord", "FileSurvey", "InputsSettings", "RoleInput", "RoleSource", "Segment",
-    "Survey", "VariableSurvey", "close_all", "find_roles", "gather", "open_collection", "survey",
+    "ArraySource", "Chance", "Collection", "FileRecord", "FileSurvey", "InputsSettings", "RoleInput", "RoleSource",
+    "Segment", "Survey", "VariableSurvey", "close_all", "find_roles", "gather", "open_collection", "survey",
 ]

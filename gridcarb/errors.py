@@ -10,6 +10,7 @@ outputs, always with the words that would state the decision in a recipe.
 from __future__ import annotations
 
 import difflib
+import re
 from collections.abc import Callable, Iterable
 from dataclasses import asdict, dataclass
 from typing import ParamSpec, TypeVar
@@ -133,9 +134,14 @@ class Faults:
             return None
 
     def put(self, error: GridcarbError) -> None:
-        """Put an error by, and those it brings along as their own."""
+        """Put an error by, and those it brings along as their own; one fault of several places is told once, with all."""
         others, error.others = error.others, ()
-        self.found += [error, *others]
+        for each in (error, *others):
+            same = next((known for known in self.found if _gist(known) == _gist(each)), None)
+            if same is None:
+                self.found.append(each)
+            elif each.where not in same.where:
+                same.where += f"; {each.where}"
 
     def tell(self) -> None:
         """Raise what was found, if anything."""
@@ -143,6 +149,12 @@ class Faults:
             first, *rest = self.found
             first.others = tuple(rest)
             raise first
+
+
+def _gist(error: GridcarbError) -> list[str]:
+    """The words of an error without those that name its place: the same for one fault met in several roles."""
+    names = set(re.findall(r"\w+", error.where.partition("; ")[0].rpartition(": ")[2]))
+    return [word for word in re.findall(r"\w+|\S", error.what) if word not in names]
 
 
 @dataclass(frozen=True)

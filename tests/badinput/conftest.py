@@ -116,8 +116,8 @@ class Bench:
 
 
 def _three_lines(text: str) -> Refusal:
-    """Where, what and mend of an error or of the one fault of a recipe."""
-    lines = text.strip().split("\n")
+    """Where, what and mend of the first error, or of the one fault of a recipe."""
+    lines = re.split(r"\nand \d+ more:\n", text.strip())[0].split("\n")
     if lines[0] == "the recipe has one fault":
         lines = lines[1:]
     assert len(lines) == 3, text

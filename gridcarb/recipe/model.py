@@ -38,8 +38,7 @@ def derived_fields() -> tuple[str, ...]:
 
 
 def _known_field(key: str) -> str:
-    if FIELDS[key].part == "input":
-        raise UnknownWordError(f"'{key}' is an input, not a field to compute", mend="remove it from the list")
+    FIELDS[key]
     return key
 
 
@@ -65,7 +64,9 @@ class ChemistrySettings(Settings):
     """Which fields are computed, and with which equilibrium constants."""
 
     constants: SetKey = Field("guide2007", description="set of equilibrium constants")
-    fields: tuple[FieldKey, ...] = Field(min_length=1, description="fields to compute, by catalogue key, or 'all'")
+    fields: tuple[FieldKey, ...] = Field(
+        min_length=1, description="fields to compute, by catalogue key, or 'all'; an input is written as it was understood"
+    )
 
     @field_validator("fields", mode="before")
     @classmethod

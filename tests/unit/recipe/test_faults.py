@@ -66,7 +66,6 @@ def changed(old: str, new: str) -> str:
     ("temperature: potential", "units: {dic: [1]}", 7, "reading.units.dic", "a list is not text", "units: "),
     ("guide2007", "guide2070", 9, "chemistry.constants", "no set of constants 'guide2070'", "'guide2007'"),
     ("[ph_total_scale,", "[ph_total_scal, ph_total_scale,", 10, "chemistry.fields[0]", "no field", "'ph_total_scale'"),
-    ("[ph_total_scale,", "[dic, ph_total_scale,", 10, "chemistry.fields[0]", "an input", "remove"),
     ("[ph_total_scale,", "[ph_total_scale, ph_total_scale,", 10, "chemistry.fields", "more than once", "once"),
     ("  fields: [ph_total_scale, aragonite_saturation]\n", "", 8, "chemistry.fields", "missing in chemistry", "'all'"),
     ("  folder: ../results/first", "  netcdf: false", 11, "output.folder", "missing in output", "write `folder: ...`"),

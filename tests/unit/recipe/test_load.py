@@ -131,6 +131,11 @@ def test_a_byte_order_mark_is_no_fault(path):
     assert load(path).recipe == 1
 
 
+def test_inputs_may_be_asked_for_as_they_were_understood():
+    recipe = check(TEXT.replace("[ph_total_scale]", "[pressure, ph_total_scale]"))
+    assert recipe.chemistry.fields == ("pressure", "ph_total_scale")
+
+
 def test_all_means_every_derived_field():
     recipe = check(TEXT.replace("[ph_total_scale]", "all"))
     assert recipe.chemistry.fields == tuple(key for key, field in FIELDS.items() if field.part == "derived")

@@ -17,7 +17,7 @@ import gsw
 import numpy as np
 import xarray as xr
 
-FILL = np.float32(1e20)
+FILL = 1e20
 GRAMS_PER_PRACTICAL = 35.16504 / 35.0
 
 KINDS_OF_TEMPERATURE = {
@@ -71,6 +71,7 @@ class Clothes:
     tracer_units : units of carbon, alkalinity and nutrients; per volume needs `density`.
     density : kg m-3, the one density of all tracers per volume.
     rounding : step each variable is rounded to, in its own units; not rounded where absent.
+    precision : type of the numbers and of their fill value, 1e20.
     """
 
     names: Mapping[str, str] = field(default_factory=lambda: dict(MODEL_NAMES))
@@ -80,6 +81,7 @@ class Clothes:
     tracer_units: Literal["mol m-3", "mmol m-3", "umol kg-1"] = "mol m-3"
     density: float = 1026.0
     rounding: Mapping[str, float] = field(default_factory=dict)
+    precision: Literal["float32", "float64"] = "float32"
 
 
 def _temperature(
@@ -107,14 +109,17 @@ def _tracer(key: str, values: xr.DataArray, clothes: Clothes) -> tuple[xr.DataAr
     return factor * values, PER_VOLUME[key], clothes.tracer_units
 
 
-def filled(values: xr.DataArray, attributes: Mapping[str, object]) -> xr.Variable:
-    """The values as float32, missing ones replaced by 1e20, with the attributes that say so."""
-    numbers = np.where(np.isnan(values.values), FILL, values.values.astype(np.float32))
-    return xr.Variable(values.dims, numbers, {**attributes, "_FillValue": FILL, "missing_value": FILL})
+def filled(
+    values: xr.DataArray, attributes: Mapping[str, object], precision: Literal["float32", "float64"] = "float32"
+) -> xr.Variable:
+    """The values in a precision, missing ones replaced by 1e20 of the same type, with the attributes that say so."""
+    fill = np.dtype(precision).type(FILL)
+    numbers = np.where(np.isnan(values.values), fill, values.values.astype(precision))
+    return xr.Variable(values.dims, numbers, {**attributes, "_FillValue": fill, "missing_value": fill})
 
 
 def dress(truth: xr.Dataset, depth: xr.DataArray, latitude: xr.DataArray, clothes: Clothes) -> xr.Dataset:
-    """The tracers of `grids.sample` as float32 model variables with CF attributes and fill values; dims and coords stay.
+    """The tracers of `grids.sample` as model variables with CF attributes and fill values; dims and coords stay.
 
     `depth` in m (positive down) and `latitude` in degrees north give the pressure the kinds of temperature need.
     """
@@ -130,7 +135,7 @@ def dress(truth: xr.Dataset, depth: xr.DataArray, latitude: xr.DataArray, clothe
         attributes = {"standard_name": standard_name, "long_name": LONG_NAMES[key], "units": units}
         if key == "temperature":
             attributes["units_metadata"] = "temperature: on_scale"
-        found[name] = filled(values.transpose(*truth[key].dims), attributes)
+        found[name] = filled(values.transpose(*truth[key].dims), attributes, clothes.precision)
     return xr.Dataset(found, truth.coords)
 
 

@@ -17,11 +17,12 @@ from gridcarb.errors import OutputError
 from gridcarb.fields import Field
 from gridcarb.write.coordinates import auxiliary
 from gridcarb.write.coverage import geospatial, time_coverage
+from gridcarb.write.pointers import names_in
 
-_INHERITED = ("cell_methods", "cell_measures", "grid_mapping")
-"""What inputs on one grid say of every field on it."""
+_OF_THE_GRID = ("cell_measures", "grid_mapping", "mesh", "location")
+"""What the inputs, all on one grid, say of that grid: it holds for every field, even if only one of them says so."""
 
-_KEPT = ("institution", "project", "license", "acknowledgement", "geography", "source_id", "experiment_id", "variant_label")
+_KEPT = ("institution", "project", "license", "acknowledgement", "geography", "featureType", "source_id", "experiment_id", "variant_label")
 """Global attributes of the input that hold for what is computed from it as well."""
 
 _OURS = ("Conventions", "history")
@@ -50,8 +51,9 @@ def global_attributes(
             mend=f"leave '{refused[0]}' out of `output: {{attributes: ...}}` in the recipe",
         )
     program = f"gridcarb {version('gridcarb')}"
+    inherited = inherited_attributes(template)
     found: dict[str, object] = {
-        "Conventions": "CF-1.11, ACDD-1.3",
+        "Conventions": "CF-1.11, ACDD-1.3" + (", UGRID-1.0" if "mesh" in inherited else ""),
         "title": title,
         "summary": "Computed cell by cell from gridded temperature, salinity, dissolved inorganic carbon and total "
                    f"alkalinity: {'; '.join(field.long_name for field in fields if field.part != 'status')}.",
@@ -62,6 +64,7 @@ def global_attributes(
         "comment": " ".join(notes),
         "date_created": _utc(now),
         "standard_name_vocabulary": "CF Standard Name Table v93",
+        "external_variables": " ".join(_external(inherited, template)),
         **{key: template.attrs[key] for key in _KEPT if key in template.attrs},
         **geospatial(template, axes),
         **time_coverage(template, axes),
@@ -71,13 +74,22 @@ def global_attributes(
 
 
 def inherited_attributes(template: xr.Dataset) -> dict[str, str]:
-    """What all data variables of `template` say alike about how a value stands for its cell."""
+    """What the data variables of `template` say of their grid without contradiction, and of their cells all alike."""
     found = {}
-    for key in _INHERITED:
+    for key in ("cell_methods", *_OF_THE_GRID):
         values = {str(variable.attrs.get(key, "")) for variable in template.data_vars.values()}
+        if key in _OF_THE_GRID:
+            values.discard("")
         if len(values) == 1 and "" not in values:
             found[key] = values.pop()
-    return found
+    return _on_a_known_mesh(found, template)
+
+
+def _on_a_known_mesh(inherited: dict[str, str], template: xr.Dataset) -> dict[str, str]:
+    """`mesh` and `location` mean nothing without each other and without the topology."""
+    if "location" in inherited and inherited.get("mesh") in template.coords:
+        return inherited
+    return {key: value for key, value in inherited.items() if key not in ("mesh", "location")}
 
 
 def field_attributes(
@@ -94,22 +106,31 @@ def field_attributes(
         found["flag_meanings"] = " ".join(word for _, word in field.flags)
     if status not in (None, field.key):
         found["ancillary_variables"] = status
-    names = auxiliary(dims, coordinates)
+    measured = names_in("cell_measures", inherited.get("cell_measures", ""))
+    names = [name for name in auxiliary(dims, coordinates) if name not in measured]
     if names:
         found["coordinates"] = " ".join(names)
-    if inherited.get("grid_mapping") in coordinates:
-        found["grid_mapping"] = inherited["grid_mapping"]
-    measures = _measures(inherited.get("cell_measures", ""), dims, coordinates)
+    mapping = inherited.get("grid_mapping", "")
+    if mapping and coordinates.keys() >= set(names_in("grid_mapping", mapping)):
+        found["grid_mapping"] = mapping
+    measures = _measures(inherited.get("cell_measures", ""), field, dims, coordinates)
     if measures:
         found["cell_measures"] = measures
+    found |= {key: inherited[key] for key in ("mesh", "location") if key in inherited}
     return found | _methods(field, inherited.get("cell_methods", ""), dims, coordinates)
 
 
-def _measures(text: str, dims: Sequence[str], coordinates: Mapping[str, xr.Variable]) -> str:
+def _measures(text: str, field: Field, dims: Sequence[str], coordinates: Mapping[str, xr.Variable]) -> str:
+    """The cell measures that fit `field`; one in another file (an external variable) is taken to fit if its kind does."""
     return " ".join(
         f"{measure}: {name}" for measure, name in re.findall(r"(\w+):\s*(\S+)", text)
-        if name in coordinates and set(coordinates[name].dims) <= set(dims)
+        if (set(coordinates[name].dims) <= set(dims) if name in coordinates else measure == "area" or field.extent == "cell")
     )
+
+
+def _external(inherited: Mapping[str, str], template: xr.Dataset) -> list[str]:
+    """Cell measures which the inputs name and do not hold."""
+    return [name for name in names_in("cell_measures", inherited.get("cell_measures", "")) if name not in template.coords]
 
 
 def _methods(field: Field, text: str, dims: Sequence[str], coordinates: Mapping[str, xr.Variable]) -> dict[str, object]:

@@ -2,101 +2,121 @@
 
 from __future__ import annotations
 
-import re
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
+from typing import Any
 
 import numpy as np
 import xarray as xr
 
 from gridcarb.axes import Axes
+from gridcarb.write.pointers import helpers, names_in
 
-_OF_THE_SOURCE = ("_FillValue", "missing_value", "coordinates", "_ARRAY_DIMENSIONS", "_NCProperties")
+_FILLS = ("_FillValue", "missing_value")
+_OF_THE_SOURCE = (*_FILLS, "coordinates", "_ARRAY_DIMENSIONS", "_NCProperties")
 """Attributes that belong to the file a coordinate came from, not to the coordinate."""
 
 
 def clean_coordinates(template: xr.Dataset, axes: Axes) -> dict[str, xr.Variable]:
-    """Every coordinate, bound and helper variable among the coords of `template`, ready to be stored.
+    """Every coordinate, bound, measure, term and topology among the coords of `template`, ready to be stored.
 
-    Numbers and dimensions are kept as they are, in native byte order; character arrays become strings. A coordinate
-    never carries a fill value: where an auxiliary one holds its source's fill (latitudes on land), NaN stands instead.
-    Attributes that point to a variable which is not there are dropped, and what `axes` knows is stated where the
-    source was silent (`standard_name` of latitude, longitude and time; `axis` of one-dimensional coordinates).
+    What is lazy stays so: take the numbers, whole or in pieces, with `numbers`. Values and dimensions are kept as they
+    are, in their own type and native byte order; character arrays become strings. Floating-point ones carry no fill
+    value: where they hold that of their source (latitudes on land), NaN stands instead, which is missing to every reader.
+    Integers have no NaN: auxiliary ones keep their fill (the connectivity of a mesh, the codes of basins), coordinate
+    variables and bounds have none (CF 1.11, sections 2.5.1 and 7.1). Attributes that point to a variable which is not
+    there are dropped, and what `axes` knows is stated where the source was silent (`standard_name` of latitude,
+    longitude and time; `axis` of one-dimensional coordinates).
     """
-    found = {str(name): _clean(coord.variable) for name, coord in template.coords.items()}
+    parents = _parents(template)
+    found = {
+        str(name): _clean(coord.variable, axes, template.coords.get(parents.get(str(name))), str(name))
+        for name, coord in template.coords.items()
+    }
     stated = _stated(found, axes)
     for name, variable in found.items():
-        kept = {
-            key: value for key, value in variable.attrs.items()
-            if key not in _POINTERS or all(word in found for word in _POINTERS[key](value))
-        }
+        kept = {key: value for key, value in variable.attrs.items() if all(word in found for word in names_in(key, value))}
         variable.attrs = kept | {key: value for key, value in stated.get(name, {}).items() if key not in kept}
     return found
 
 
 def auxiliary(dims: Sequence[str], coordinates: Mapping[str, xr.Variable]) -> list[str]:
     """The names a field with these `dims` lists in its CF attribute `coordinates`."""
-    hidden = pointed_at(variable.attrs for variable in coordinates.values())
+    hidden = helpers(variable.attrs for variable in coordinates.values())
     return [
         name for name, variable in coordinates.items()
         if name not in variable.dims and name not in hidden and set(variable.dims) <= set(dims)
-        and not {"grid_mapping_name", "cf_role"} & variable.attrs.keys()
+        and "grid_mapping_name" not in variable.attrs and not _is_topology(variable)
     ]
 
 
-def pointed_at(attributes: Iterable[Mapping[str, object]]) -> set[str]:
-    """The variables that attributes such as `bounds` and `formula_terms` point to."""
-    return {
-        word for attrs in attributes for key, names in _POINTERS.items() if key in attrs for word in names(attrs[key])
-    }
-
-
-def unfilled(variable: xr.Variable) -> np.ndarray:
-    """The numbers of a coordinate in native byte order; in floating-point ones, NaN stands for a fill of the source."""
-    values = variable.values.astype(variable.dtype.newbyteorder("="))
-    if values.dtype.kind != "f":
+def numbers(variable: xr.Variable) -> np.ndarray:
+    """The values of a cleaned coordinate or of a piece of it, as they are stored: NaN for what was a fill of the source."""
+    values = np.asarray(variable.values)
+    if values.dtype.kind == "b":
+        return values.astype("i1")
+    if values.dtype.kind == "O":
         return values
-    fills = [variable.attrs[key] for key in ("_FillValue", "missing_value") if key in variable.attrs]
-    values[np.isin(values, np.asarray(fills, dtype=values.dtype).ravel())] = np.nan
+    values = values.astype(values.dtype.newbyteorder("="))
+    if values.dtype.kind == "f":
+        values[_is_fill(values, variable.encoding.get("fills", ()))] = np.nan
     return values
 
 
-def _one(value: object) -> list[str]:
-    return [str(value)]
-
-
-def _words_after_colons(value: object) -> list[str]:
-    return re.findall(r":\s*(\S+)", str(value))
-
-
-_POINTERS = {
-    "bounds": _one, "climatology": _one, "formula_terms": _words_after_colons, "cell_measures": _words_after_colons,
-}
-"""Attributes that name other variables, and how to read the names."""
-
-
-def _clean(variable: xr.Variable) -> xr.Variable:
+def plain_numbers(variable: xr.Variable) -> np.ndarray:
+    """The values of a raw coordinate or of a piece of it as float64: unpacked, NaN for a fill of the source."""
     values = np.asarray(variable.values)
-    dims = tuple(str(dim) for dim in variable.dims)
-    if values.dtype.kind in "mM":
+    found = values.astype(np.float64)
+    found[_is_fill(values, _fills(variable))] = np.nan
+    return found * float(variable.attrs.get("scale_factor", 1.0)) + float(variable.attrs.get("add_offset", 0.0))
+
+
+def _parents(template: xr.Dataset) -> dict[str, str]:
+    """Bounds variable -> the coordinate whose bounds they are."""
+    return {
+        word: str(name) for name, coord in template.coords.items() for key in ("bounds", "climatology")
+        if key in coord.attrs for word in names_in(key, coord.attrs[key])
+    }
+
+
+def _is_topology(variable: xr.Variable) -> bool:
+    role = str(variable.attrs.get("cf_role", ""))
+    return role.endswith("_connectivity") or role in ("mesh_topology", "location_index_set")
+
+
+def _fills(variable: xr.Variable) -> list[Any]:
+    return [value for key in _FILLS if key in variable.attrs for value in np.ravel(variable.attrs[key])]
+
+
+def _is_fill(values: np.ndarray, fills: Sequence[Any]) -> np.ndarray:
+    """Compared in the precision of the values: a fill may be told in another."""
+    told = [fill for fill in fills if values.dtype.kind == "f" or np.isfinite(fill)]
+    return np.isin(values, np.asarray(told, dtype=values.dtype))
+
+
+def _clean(variable: xr.Variable, axes: Axes, parent: xr.DataArray | None, name: str) -> xr.Variable:
+    kind = variable.dtype.kind
+    if kind in "mM":
         raise TypeError("coordinates are stored as the raw numbers of the source, not as decoded times")
-    if values.dtype.kind == "S":
-        values, dims = _strings(values, dims)
-    elif values.dtype.kind in "UO":
-        values = values.astype(object)
-    elif values.dtype.kind == "b":
-        values = values.astype("i1")
-    else:
-        values = unfilled(variable)
     attrs = {key: value for key, value in variable.attrs.items() if key not in _OF_THE_SOURCE}
-    return xr.Variable(dims, values, attrs)
+    if kind in "SUO":
+        return _texts(variable, axes, attrs)
+    if kind in "iu" and parent is None and variable.dims != (name,):
+        attrs |= {key: variable.attrs[key] for key in _FILLS if key in variable.attrs}
+    cleaned = variable.copy(deep=False)
+    if parent is not None and set(parent.dims) <= set(variable.dims):
+        cleaned = cleaned.transpose(*parent.dims, ...)  # CF wants the corners last
+    cleaned.attrs, cleaned.encoding = attrs, {"fills": _fills(variable)}
+    return cleaned
 
 
-def _strings(values: np.ndarray, dims: tuple[str, ...]) -> tuple[np.ndarray, tuple[str, ...]]:
-    """Bytes as strings; an array of single characters loses the dimension along which the characters run."""
-    if values.dtype.itemsize == 1 and values.ndim:
-        values = np.ascontiguousarray(values).view(f"S{values.shape[-1]}")[..., 0]
-        dims = dims[:-1]
-    return np.char.decode(values, "utf-8", errors="replace").astype(object), dims
+def _texts(variable: xr.Variable, axes: Axes, attrs: dict[str, Any]) -> xr.Variable:
+    """Strings; an array of single characters loses the dimension along which the characters run."""
+    values, dims = np.asarray(variable.values), variable.dims
+    if values.dtype.kind == "S":
+        if values.dtype.itemsize == 1 and values.ndim and dims[-1] not in axes.order:
+            values, dims = np.ascontiguousarray(values).view(f"S{values.shape[-1]}")[..., 0], dims[:-1]
+        values = np.char.decode(values, "utf-8", errors="replace")
+    return xr.Variable(dims, values.astype(object), attrs)
 
 
 def _stated(found: Mapping[str, xr.Variable], axes: Axes) -> dict[str, dict[str, str]]:

@@ -10,7 +10,8 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from gridcarb.axes import Axes
-from gridcarb.write.coordinates import unfilled
+from gridcarb.write.coordinates import plain_numbers
+from gridcarb.write.encoding import pieces, split_chunks
 
 _GREGORIAN = ("standard", "gregorian", "proleptic_gregorian")
 _DAY = 86400.0
@@ -20,14 +21,14 @@ def geospatial(template: xr.Dataset, axes: Axes) -> dict[str, object]:
     """The attributes ``geospatial_*``: extremes of latitude, longitude and the vertical, bounds included where present."""
     found: dict[str, object] = {}
     for word, name, units in (("lat", axes.latitude, "degrees_north"), ("lon", axes.longitude, "degrees_east")):
-        values = _numbers(template, name)
+        values = _ends(template, name)
         if name and values.size:
             if str(template[name].attrs.get("units", "")).startswith("rad"):
                 values = np.degrees(values)
             found |= _extremes(word, values) | {f"geospatial_{word}_units": units}
-    values = _numbers(template, axes.vertical_coordinate)
-    if axes.vertical_coordinate and values.size:
-        attrs = template[axes.vertical_coordinate].attrs
+    values = _ends(template, axes.vertical_coordinate)
+    attrs = template[axes.vertical_coordinate].attrs if axes.vertical_coordinate in template.coords else {}
+    if values.size and "formula_terms" not in attrs:  # a fraction of the water column is no place
         found |= _extremes("vertical", values)
         found |= {f"geospatial_vertical_{key}": str(attrs[key]) for key in ("units", "positive") if key in attrs}
     return found
@@ -40,8 +41,7 @@ def time_coverage(template: xr.Dataset, axes: Axes) -> dict[str, object]:
         return {}
     attrs = template[name].attrs
     units, calendar = str(attrs.get("units", "")), str(attrs.get("calendar", "standard")).lower()
-    steps = _numbers(template, name, bounds=False)
-    reach = _numbers(template, name)
+    steps, reach = _finite(template[name].variable), _ends(template, name)
     if not reach.size:
         return {}
     try:
@@ -63,14 +63,22 @@ def time_coverage(template: xr.Dataset, axes: Axes) -> dict[str, object]:
     return found
 
 
-def _numbers(template: xr.Dataset, name: str | None, *, bounds: bool = True) -> NDArray[np.float64]:
-    """All finite numbers of a coordinate, and of its bounds if wanted; fills of the source are no numbers."""
+def _ends(template: xr.Dataset, name: str | None) -> NDArray[np.float64]:
+    """Least and greatest finite numbers of a coordinate and of its bounds, piece by piece; fills of the source are none."""
     if name is None or name not in template.coords:
         return np.empty(0)
     attrs = template[name].attrs
-    names = [name, *(str(attrs[key]) for key in ("bounds", "climatology") if bounds and key in attrs)]
-    parts = [unfilled(template[key].variable).astype(np.float64).ravel() for key in names if key in template]
-    flat: NDArray[np.float64] = np.concatenate(parts)
+    names = [name, *(str(attrs[key]) for key in ("bounds", "climatology") if key in attrs)]
+    found: list[float] = []
+    for variable in (template[key].variable for key in names if key in template):
+        for piece in pieces(variable.shape, split_chunks(variable.shape, 8)):
+            values = _finite(variable[piece])
+            found += [values.min(), values.max()] if values.size else []
+    return np.asarray(found)
+
+
+def _finite(variable: xr.Variable) -> NDArray[np.float64]:
+    flat: NDArray[np.float64] = plain_numbers(variable).ravel()
     return flat[np.isfinite(flat)]
 
 

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+import itertools
 import zlib
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from typing import Any, Literal
 
 import numcodecs
@@ -15,6 +16,10 @@ from gridcarb.axes import Axes
 from gridcarb.fields import Field
 
 Precision = Literal["float32", "float64"]
+Selection = tuple[slice, ...]
+
+_PIECE_BYTES = 16 * 2**20
+"""Coordinates are mostly read whole: one chunk, unless they are so large that memory would feel it."""
 
 
 def dims_of(field: Field, axes: Axes) -> tuple[str, ...]:
@@ -30,6 +35,24 @@ def dtype_of(field: Field, precision: Precision) -> np.dtype[np.generic]:
 def chunks_of(shape: Mapping[str, int], chunks: Mapping[str, int]) -> tuple[int, ...]:
     """The chunk lengths along each dimension of `shape`: as in `chunks`, the whole length where nothing is said."""
     return tuple(max(1, min(chunks.get(dim, size), size)) for dim, size in shape.items())
+
+
+def split_chunks(shape: Sequence[int], itemsize: int) -> tuple[int, ...]:
+    """The chunk of a coordinate: all of it, or as much of its leading dimensions as makes a piece of 16 MiB."""
+    chunk = [max(1, size) for size in shape]
+    for axis, size in enumerate(chunk):
+        rest = itemsize * int(np.prod(chunk[axis + 1 :], dtype=np.int64))
+        chunk[axis] = max(1, min(size, _PIECE_BYTES // rest))
+        if rest <= _PIECE_BYTES:
+            break
+    return tuple(chunk)
+
+
+def pieces(shape: Sequence[int], chunks: Sequence[int]) -> Iterator[Selection]:
+    """The chunks of an array as slices, the last dimension fastest."""
+    starts = (range(0, size, chunk) for size, chunk in zip(shape, chunks, strict=True))
+    for corner in itertools.product(*starts):
+        yield tuple(slice(at, min(at + chunk, size)) for at, chunk, size in zip(corner, chunks, shape, strict=True))
 
 
 def fill_of(dtype: np.dtype[Any], zarr_format: Literal[2, 3], *, missing: bool) -> object:

@@ -6,9 +6,8 @@ whole. The lock of the HDF5 library is held for each piece written, not while th
 
 from __future__ import annotations
 
-import itertools
 import os
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from contextlib import suppress
 from pathlib import Path
 from typing import Any
@@ -18,17 +17,16 @@ import numpy as np
 import xarray as xr
 
 from gridcarb.netcdf_lock import NETCDF_LOCK
-from gridcarb.write.coordinates import pointed_at
 from gridcarb.write.disk import room_for, settle
+from gridcarb.write.encoding import pieces
+from gridcarb.write.pointers import pointed_at
 
 _CHUNK_BYTES = 2 * 2**20
 _DEFLATE_LEVEL = 4
 _TYPED = frozenset({
-    "flag_values", "flag_masks", "valid_min", "valid_max", "valid_range", "actual_range",
+    "flag_values", "flag_masks", "valid_min", "valid_max", "valid_range", "actual_range", "missing_value", "start_index",
 })
 """Attributes which CF wants in the type of their variable; the store keeps them as plain numbers."""
-
-Selection = tuple[slice, ...]
 
 
 def export(
@@ -81,7 +79,7 @@ def _copy(
         done = 0
         for name in names:
             variable = source.variables[name]
-            for selection in _pieces(variable.shape, variable.encoding["chunks"]):
+            for selection in pieces(variable.shape, variable.encoding["chunks"]):
                 values = variable[selection].values
                 with NETCDF_LOCK:  # which takes strings as objects only
                     file.variables[name][selection] = values.astype(object) if values.dtype.kind == "T" else values
@@ -107,20 +105,21 @@ def _time_dimension(source: xr.Dataset) -> str | None:
 def _fields(source: xr.Dataset) -> list[str]:
     """The variables that are neither coordinates nor pointed to as bounds, terms or the mapping of the grid."""
     attrs = [variable.attrs for variable in source.variables.values()]
-    lists = (str(entry.get(key, "")).split() for entry in attrs for key in ("coordinates", "grid_mapping"))
-    helpers = pointed_at(attrs).union(*lists)
-    return [str(name) for name in source.data_vars if name not in helpers]
+    coordinates = (str(entry.get("coordinates", "")).split() for entry in attrs)
+    aside = pointed_at(attrs).union(*coordinates)
+    return [str(name) for name in source.data_vars if name not in aside]
 
 
 def _declare(file: netCDF4.Dataset, name: str, variable: xr.Variable, time: str | None, *, is_field: bool) -> None:
     options: dict[str, Any] = {}
-    if is_field and variable.ndim:
+    text = variable.dtype.kind in "OUT"
+    if variable.ndim and not text and (is_field or variable.nbytes > _CHUNK_BYTES):
         options = {"zlib": True, "complevel": _DEFLATE_LEVEL, "shuffle": True,
                    "chunksizes": chunk_shape(variable.shape, variable.encoding["chunks"], variable.dtype.itemsize)}
     elif time in variable.dims:
         options = {"chunksizes": [max(1, size) for size in variable.shape]}
-    text = variable.dtype.kind in "OUT"
-    fill = np.nan if is_field and variable.dtype.kind == "f" else None
+    # A coordinate has a fill only where it is an integer one that cannot do without: the connectivity of a mesh.
+    fill = np.nan if is_field and variable.dtype.kind == "f" else variable.attrs.get("_FillValue")
     # A vlen string has no fill to switch off; for numbers, no fill means no attribute and no prefilling.
     made = file.createVariable(name, str if text else variable.dtype.newbyteorder("="), [str(dim) for dim in variable.dims],
                                fill_value=fill if text or fill is not None else False, **options)
@@ -146,12 +145,6 @@ def _split(size: int, *, whole: bool) -> int:
     if whole:
         return -(-size // 2)
     return size // next(factor for factor in range(2, size + 1) if size % factor == 0)
-
-
-def _pieces(shape: Sequence[int], chunks: Sequence[int]) -> Iterator[Selection]:
-    starts = (range(0, size, chunk) for size, chunk in zip(shape, chunks, strict=True))
-    for corner in itertools.product(*starts):
-        yield tuple(slice(at, min(at + chunk, size)) for at, chunk, size in zip(corner, chunks, shape, strict=True))
 
 
 def _typed(attributes: Mapping[Any, object], dtype: np.dtype[Any] | None) -> dict[str, object]:

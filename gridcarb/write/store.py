@@ -19,9 +19,11 @@ from gridcarb.axes import Axes
 from gridcarb.errors import BlockError, OutputError
 from gridcarb.fields import Field
 from gridcarb.write.attributes import field_attributes, inherited_attributes
-from gridcarb.write.coordinates import clean_coordinates
+from gridcarb.write.coordinates import clean_coordinates, numbers
 from gridcarb.write.disk import room_for
-from gridcarb.write.encoding import Precision, checksum, chunks_of, compressor, dims_of, dtype_of, fill_of, stored
+from gridcarb.write.encoding import (
+    Precision, checksum, chunks_of, compressor, dims_of, dtype_of, fill_of, pieces, split_chunks, stored,
+)  # fmt: skip
 
 _DIMS_V2 = "_ARRAY_DIMENSIONS"
 """Where format 2 keeps the names of dimensions; format 3 has a place of its own for them."""
@@ -35,7 +37,7 @@ def create(
 
     Parameters
     ----------
-    template : the grid: loaded raw coords (bounds among them) and sizes. Attributes of its data variables that hold for
+    template : the grid: raw coords (bounds among them; lazy ones are copied in pieces) and sizes. Attributes of its data variables that hold for
         every field (cell_methods, cell_measures, grid_mapping) are carried over.
     fields : what will be written, each under its key.
     axes : the axes of `template`.
@@ -61,7 +63,7 @@ def create(
             attrs = field_attributes(field, dims, coordinates, inherited, status)
             dtype = dtype_of(field, precision)
             _make(group, field.key, shape=shape, dtype=dtype, chunks=chunks_of(shape, chunks), attributes=attrs,
-                  missing=dtype.kind == "f")
+                  fill=fill_of(dtype, zarr_format, missing=dtype.kind == "f"))
         _consolidate(path)
 
 
@@ -114,21 +116,30 @@ def _aligned(
 
 def _put_coordinate(group: zarr.Group, name: str, variable: xr.Variable) -> None:
     shape = {str(dim): size for dim, size in variable.sizes.items()}
-    # One chunk: coordinates are read whole.
-    array = _make(group, name, shape=shape, dtype=variable.dtype, chunks=chunks_of(shape, {}),
-                  attributes=variable.attrs, missing=False)
-    array[...] = variable.values
+    dtype = np.dtype("i1") if variable.dtype.kind == "b" else variable.dtype.newbyteorder("=")
+    chunks = split_chunks(variable.shape, dtype.itemsize)
+    array = _make(group, name, shape=shape, dtype=dtype, chunks=chunks, attributes=variable.attrs,
+                  fill=_own_fill(variable, dtype, group.metadata.zarr_format))
+    for piece in pieces(variable.shape, chunks):
+        array[piece] = numbers(variable[piece])
+
+
+def _own_fill(variable: xr.Variable, dtype: np.dtype[Any], zarr_format: Literal[2, 3]) -> object:
+    """Readers of format 2 know the fill of an integer from the array, not from its attributes."""
+    if "_FillValue" in variable.attrs and dtype.kind in "iu":
+        return int(np.ravel(variable.attrs["_FillValue"])[0])
+    return fill_of(dtype, zarr_format, missing=False)
 
 
 def _make(
     group: zarr.Group, name: str, *, shape: Mapping[str, int], dtype: np.dtype[Any], chunks: tuple[int, ...],
-    attributes: Mapping[str, object], missing: bool,
+    attributes: Mapping[str, object], fill: object,
 ) -> zarr.Array[Any]:
     dims = list(shape)
     third = group.metadata.zarr_format == 3
     return group.create_array(
         name, shape=tuple(shape.values()), dtype=str if dtype.kind == "O" else dtype, chunks=chunks,
-        fill_value=fill_of(dtype, group.metadata.zarr_format, missing=missing),
+        fill_value=fill,
         compressors=compressor(group.metadata.zarr_format), dimension_names=dims if third else None,
         attributes=_plain(attributes if third else {**attributes, _DIMS_V2: dims}),
     )

@@ -9,7 +9,7 @@ import xarray as xr
 from gridcarb.axes import Axes
 from gridcarb.errors import OutputError
 from gridcarb.write.attributes import field_attributes, global_attributes, inherited_attributes
-from gridcarb.write.coordinates import auxiliary, clean_coordinates
+from gridcarb.write.coordinates import auxiliary, clean_coordinates, numbers
 from gridcarb.write.coverage import geospatial, time_coverage
 
 NOW = datetime(2020, 5, 4, 3, 2, 1, tzinfo=timezone(timedelta(hours=2)))
@@ -180,7 +180,7 @@ def test_a_fill_in_another_precision_is_recognised():
     ds = xr.Dataset(coords={"lat": ("cell", lat, {"units": "degrees_north", "_FillValue": 1e20})})
     axes = Axes(None, None, ("cell",), None, None, "lat", None)
     assert geospatial(ds, axes)["geospatial_lat_max"] == 20.0
-    assert np.isnan(clean_coordinates(ds, axes)["lat"].values[1])
+    assert np.isnan(numbers(clean_coordinates(ds, axes)["lat"])[1])
 
 
 def test_only_a_time_with_a_base_date_is_called_time():

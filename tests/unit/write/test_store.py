@@ -80,7 +80,7 @@ def test_fields_say_how_they_hang_together(tmp_path, fill_store):
     assert ph["coordinates"].split() == ["basin", "letters", "run"]
     assert ph["cell_methods"] == "time: mean"
     assert ph["comment"].startswith("As said. Computed from inputs averaged")
-    assert "cell_measures" not in ph  # areacello is not in the file
+    assert ph["cell_measures"] == "area: areacello"  # an external variable
     status = raw["solution_status"].attrs
     assert status["flag_values"] == [0, 1, 2]
     assert status["flag_meanings"] == "solved outside_validity missing_input"

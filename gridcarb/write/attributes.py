@@ -22,7 +22,8 @@ from gridcarb.write.pointers import names_in
 _OF_THE_GRID = ("cell_measures", "grid_mapping", "mesh", "location")
 """What the inputs, all on one grid, say of that grid: it holds for every field, even if only one of them says so."""
 
-_KEPT = ("institution", "project", "license", "acknowledgement", "geography", "featureType", "source_id", "experiment_id", "variant_label")
+_KEPT = ("institution", "project", "license", "acknowledgement", "geography", "source_id", "experiment_id", "variant_label",
+         "featureType")
 """Global attributes of the input that hold for what is computed from it as well."""
 
 _OURS = ("Conventions", "history")
@@ -122,10 +123,13 @@ def field_attributes(
 
 def _measures(text: str, field: Field, dims: Sequence[str], coordinates: Mapping[str, xr.Variable]) -> str:
     """The cell measures that fit `field`; one in another file (an external variable) is taken to fit if its kind does."""
-    return " ".join(
-        f"{measure}: {name}" for measure, name in re.findall(r"(\w+):\s*(\S+)", text)
-        if (set(coordinates[name].dims) <= set(dims) if name in coordinates else measure == "area" or field.extent == "cell")
-    )
+    def fits(measure: str, name: str) -> bool:
+        if name in coordinates:
+            return set(coordinates[name].dims) <= set(dims)
+        return measure == "area" or field.extent == "cell"
+
+    pairs = re.findall(r"(\w+):\s*(\S+)", text)
+    return " ".join(f"{measure}: {name}" for measure, name in pairs if fits(measure, name))
 
 
 def _external(inherited: Mapping[str, str], template: xr.Dataset) -> list[str]:

@@ -22,7 +22,16 @@ from gridcarb.write.attributes import field_attributes, inherited_attributes
 from gridcarb.write.coordinates import clean_coordinates, numbers
 from gridcarb.write.disk import room_for
 from gridcarb.write.encoding import (
-    Precision, checksum, chunks_of, compressor, dims_of, dtype_of, fill_of, pieces, split_chunks, stored,
+    Precision,
+    checksum,
+    chunks_of,
+    compressor,
+    dims_of,
+    dtype_of,
+    fill_of,
+    pieces,
+    split_chunks,
+    stored,
 )  # fmt: skip
 
 _DIMS_V2 = "_ARRAY_DIMENSIONS"
@@ -37,8 +46,8 @@ def create(
 
     Parameters
     ----------
-    template : the grid: raw coords (bounds among them; lazy ones are copied in pieces) and sizes. Attributes of its data variables that hold for
-        every field (cell_methods, cell_measures, grid_mapping) are carried over.
+    template : the grid: raw coords (bounds among them; lazy ones are copied in pieces) and sizes. Attributes of its data
+        variables that hold for every field (cell_methods, cell_measures, grid_mapping, mesh) are carried over.
     fields : what will be written, each under its key.
     axes : the axes of `template`.
     chunks : chunk length by dimension; a dimension not named is one chunk.

@@ -70,7 +70,8 @@ def _check_bounds(coord: xr.DataArray, bounds: xr.DataArray) -> None:
     if not fits or bounds.sizes[corners[0]] < (2 if coord.ndim < 2 else 3):
         _refuse(
             f"bounds of shape {dict(bounds.sizes)} do not fit their coordinate of shape {dict(coord.sizes)}: they have its "
-            "dimensions and one more, of two ends or of the corners of a cell", f"'{bounds.name}', bounds of '{coord.name}'",
+            "dimensions and one more, of two ends or of the corners of a cell",
+            f"'{bounds.name}', bounds of '{coord.name}'",
             f"mend the bounds in the input files, or take the attribute `bounds` away from '{coord.name}'",
         )
 
@@ -114,7 +115,7 @@ def _left_behind(template: xr.Dataset) -> Iterator[Notice]:
             if gone:
                 yield Notice(
                     "grid.attribute_dropped",
-                    f"the attribute {key} of '{name}' names {', '.join(gone)}, which the input does not hold; it is left out",
+                    f"the attribute {key} of '{name}' names {', '.join(gone)}, which the input does not hold; dropped",
                 )
     mapping = inherited_attributes(template).get("grid_mapping", "")
     gone = [word for word in names_in("grid_mapping", mapping) if word not in template.coords]

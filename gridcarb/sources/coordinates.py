@@ -7,7 +7,8 @@ from typing import Any
 
 from gridcarb.axes import Axes
 from gridcarb.fields import ROLES
-from gridcarb.sources.headers import Header, words
+from gridcarb.sources.headers import Header
+from gridcarb.sources.stored import words
 
 _NUMBERS = "iufb"
 

@@ -17,10 +17,11 @@ from gridcarb.sources import timeline
 from gridcarb.sources.collection import ArraySource, Collection, RoleSource, Segment
 from gridcarb.sources.coordinates import carried, pruned
 from gridcarb.sources.grid import Grid
-from gridcarb.sources.headers import Head, Header, read_header
+from gridcarb.sources.headers import Header, read_header
 from gridcarb.sources.locate import locate
 from gridcarb.sources.roles import Candidate, settle
 from gridcarb.sources.settings import InputsSettings
+from gridcarb.sources.stored import Head
 from gridcarb.sources.timeline import Piece, Timeline, Units
 
 _PACKING = ("units", "scale_factor", "add_offset", "_FillValue", "missing_value", "_Unsigned", "valid_min", "valid_max",

@@ -10,7 +10,8 @@ import numpy.typing as npt
 
 from gridcarb.axes import Axes
 from gridcarb.errors import InputError
-from gridcarb.sources.headers import POINTERS, Header
+from gridcarb.sources.headers import Header
+from gridcarb.sources.stored import POINTERS
 
 _DEGREES = 1e-4
 _DEPTH = 1e-3

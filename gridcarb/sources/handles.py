@@ -12,43 +12,39 @@ from collections import OrderedDict
 from collections.abc import Iterator
 from typing import Any
 
-import numpy as np
 import numpy.typing as npt
-import xarray as xr
 
 from gridcarb.errors import InputError
 from gridcarb.netcdf_lock import NETCDF_LOCK
-from gridcarb.sources.storage import open_raw, stamp, storage_kind, unreadable
+from gridcarb.sources.places import is_url, split
+from gridcarb.sources.storage import open_stored, stamp, storage_kind, unreadable
+from gridcarb.sources.stored import Key, Stored
 
 LIMIT = 32
 """Most files of one kind held open at a time."""
 
-Key = tuple[Any, ...]
-"""One integer, slice or 1-D integer array for each dimension; arrays select each dimension by itself."""
-
-
 class Handles:
-    """Open datasets by path, the least recently used closed first; a file that changed since is opened anew."""
+    """Open files by path, the least recently used closed first; a file of this disk that changed since is opened anew."""
 
     def __init__(self, lock: contextlib.AbstractContextManager[Any], limit: int = LIMIT) -> None:
         self.lock = lock
         self.limit = limit
-        self._open: OrderedDict[str, tuple[tuple[int, int], xr.Dataset]] = OrderedDict()
+        self._open: OrderedDict[str, tuple[tuple[int, int], Stored]] = OrderedDict()
 
     def __len__(self) -> int:
         return len(self._open)
 
-    def dataset(self, path: str) -> xr.Dataset:
-        """The open dataset; the caller holds the lock while it uses it, unless the kind needs none."""
+    def stored(self, path: str) -> Stored:
+        """The open file or store; the caller holds the lock while it uses it, unless the kind needs none."""
         with self.lock:
-            now = stamp(path)
+            now = (0, 0) if is_url(path) else stamp(path)
             held = self._open.pop(path, None)
             if held is not None and held[0] != now:
                 held[1].close()
                 held = None
             while len(self._open) >= self.limit:
                 self._open.popitem(last=False)[1][1].close()
-            self._open[path] = held or (now, open_raw(path))
+            self._open[path] = held or (now, open_stored(path))
             return self._open[path][1]
 
     def close(self) -> None:
@@ -77,11 +73,11 @@ def read(path: str, variable: str, key: Key) -> npt.NDArray[Any]:
     InputError : the file is gone, damaged, or no longer holds the variable.
     """
     try:
-        zarr = os.path.isdir(path)
+        zarr = _is_zarr(path)
         handles = ZARR_HANDLES if zarr else NETCDF_HANDLES
         # NetCDF is read under the lock of the whole process; Zarr reads run side by side.
         with contextlib.nullcontext() if zarr else handles.lock:
-            return np.asarray(handles.dataset(path).variables[variable][key].values)
+            return handles.stored(path).read(variable, key)
     except InputError:
         raise
     except (KeyError, FileNotFoundError):
@@ -99,9 +95,16 @@ def close_all() -> None:
     ZARR_HANDLES.close()
 
 
+def _is_zarr(path: str) -> bool:
+    return storage_kind(path) == "zarr" if is_url(path) else os.path.isdir(split(path)[0])
+
+
 @contextlib.contextmanager
-def opened(path: str) -> Iterator[xr.Dataset]:
-    """The dataset behind `path` for a look at its header, closed afterwards."""
-    zarr = storage_kind(path) == "zarr"
-    with ZARR_HANDLES.lock if zarr else NETCDF_LOCK, open_raw(path) as dataset:
-        yield dataset
+def opened(path: str) -> Iterator[Stored]:
+    """The file or store behind `path` for a look at its header, closed afterwards."""
+    with ZARR_HANDLES.lock if storage_kind(path) == "zarr" else NETCDF_LOCK:
+        stored = open_stored(path)
+        try:
+            yield stored
+        finally:
+            stored.close()

@@ -15,27 +15,14 @@ from gridcarb.axes import Axes, find_axes
 from gridcarb.errors import InputError
 from gridcarb.sources.collection import FileRecord
 from gridcarb.sources.handles import opened
-from gridcarb.sources.storage import fingerprint, stamp
+from gridcarb.sources.places import join, split
+from gridcarb.sources.storage import Kind, fingerprint, stamp, storage_kind, unreadable
+from gridcarb.sources.stored import POINTERS, Head, Stored, words
 
 _SMALL = 20_000
 _LINE = 1_000_000
 """Coordinates up to so many values are read whole (_LINE: of one dimension, or with two bounds); larger ones are sampled,
 and left unread where one slab is larger still."""
-
-POINTERS = ("coordinates", "bounds", "climatology")
-
-
-@dataclass(frozen=True)
-class Head:
-    """One variable without its values."""
-
-    name: str
-    dims: tuple[str, ...]
-    shape: tuple[int, ...]
-    dtype: np.dtype[Any]
-    attrs: Mapping[str, Any]
-    chunks: tuple[int, ...] | None = None
-
 
 @dataclass(frozen=True, eq=False)
 class Header:
@@ -46,6 +33,7 @@ class Header:
     attrs: Mapping[str, Any]
     values: Mapping[str, npt.NDArray[Any]]
     record: FileRecord
+    kind: Kind = "netcdf"
 
     def place(self, variable: str) -> str:
         """File and variable, for errors; a dataset in memory has no path."""
@@ -81,39 +69,24 @@ class Header:
             raise InputError(error.what, where=self.place(variable), mend=error.mend) from None
 
 
-def words(text: object) -> list[str]:
-    """The words of an attribute that lists variables."""
-    return text.split() if isinstance(text, str) else []
-
-
 def read_header(path: str) -> Header:
     """Open a file, note what its header says and the values of its coordinates, close it.
 
+    The path of the header names the group that was found to hold the fields, where it is not the top level.
+
     Raises
     ------
-    InputError : missing, not NetCDF or Zarr, damaged or cut short.
+    InputError : missing, not NetCDF or Zarr, damaged or cut short, or its fields lie in several groups.
     """
-    with opened(path) as dataset:
-        heads = heads_of(dataset)
-        values = {name: _values(dataset.variables[name]) for name in _coordinate_names(heads)}
-        size, changed = stamp(path)
-        record = FileRecord(path, size, changed, fingerprint(path))
-        return Header(path, heads, dict(dataset.attrs), values, record)
-
-
-def heads_of(dataset: xr.Dataset) -> dict[str, Head]:
-    """The variables of an open dataset, or of one in memory."""
-    found = {}
-    for name, variable in dataset.variables.items():
-        dims = tuple(str(dim) for dim in variable.dims)
-        chunks = variable.encoding.get("chunksizes") or variable.encoding.get("chunks")
-        attrs = {**_moved_by_decoding(variable), **variable.attrs}
-        found[str(name)] = Head(str(name), dims, variable.shape, variable.dtype, attrs, tuple(chunks) if chunks else None)
-    return found
-
-
-def _moved_by_decoding(variable: xr.Variable) -> dict[str, Any]:
-    return {key: variable.encoding[key] for key in ("coordinates", "grid_mapping") if key in variable.encoding}
+    kind, (size, changed) = storage_kind(path), stamp(path)
+    with opened(path) as stored:
+        here = join(split(path)[0], stored.group)
+        try:
+            heads = stored.heads()
+            values = {name: _values(stored, heads[name]) for name in _coordinate_names(heads)}
+        except (OSError, RuntimeError, ValueError, UnicodeError) as error:
+            raise unreadable(path, error) from error
+        return Header(here, heads, dict(stored.attrs), values, FileRecord(here, size, changed, fingerprint(path)), kind)
 
 
 def _coordinate_names(heads: Mapping[str, Head]) -> list[str]:
@@ -127,14 +100,14 @@ def _coordinate_names(heads: Mapping[str, Head]) -> list[str]:
     ]
 
 
-def _values(variable: xr.Variable) -> npt.NDArray[Any]:
+def _values(stored: Stored, head: Head) -> npt.NDArray[Any]:
     """All values, or three slabs of a large coordinate: first, middle, last."""
-    line = variable.ndim == 1 or (variable.ndim == 2 and variable.shape[-1] == 2)
-    if variable.size <= (_LINE if line else _SMALL):
-        return np.asarray(variable.values)
-    length, thick = variable.shape[0], 1000 if variable.ndim == 1 else 1
-    starts = (0, (length - thick) // 2, length - thick)
-    return np.concatenate([variable[start:start + thick].values for start in starts])
+    line = len(head.dims) == 1 or (len(head.dims) == 2 and head.shape[-1] == 2)
+    if math.prod(head.shape) <= (_LINE if line else _SMALL):
+        return stored.read(head.name, (slice(None),) * len(head.dims))
+    length, thick = head.shape[0], 1000 if len(head.dims) == 1 else 1
+    starts, rest = (0, (length - thick) // 2, length - thick), (slice(None),) * (len(head.dims) - 1)
+    return np.concatenate([stored.read(head.name, (slice(start, start + thick), *rest)) for start in starts])
 
 
 def _hollow(head: Head, keep_pointers: bool) -> xr.Variable:

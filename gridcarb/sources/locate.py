@@ -8,34 +8,55 @@ from collections.abc import Sequence
 from pathlib import Path
 
 from gridcarb.errors import InputError, near_words
+from gridcarb.sources.places import is_url, join, localised, reached, split
 
 
 def locate(patterns: Sequence[str], base: Path) -> list[str]:
-    """Absolute paths of all files and stores meant, each once, in the order given (globs sorted).
+    """Absolute paths (or URLs) of all files and stores meant, each once, in the order given (globs sorted).
 
     Parameters
     ----------
-    patterns : paths or globs (`**` crosses folders), relative to `base`; `~` is the home folder.
+    patterns : paths, globs (`**` crosses folders) or URLs that fsspec opens; paths are relative to `base`, `~` is the home
+        folder. `#GROUP` behind any of them names a group of the files.
 
     Raises
     ------
-    InputError : a glob without a match, or a path with nothing there.
+    InputError : a glob without a match, a path with nothing there, or a URL that cannot be reached.
     """
     found: dict[str, str] = {}
     for pattern in patterns:
-        full = str(base.absolute() / Path(pattern).expanduser())
-        if Path(full).exists():
-            matches = [full]
-        elif glob.has_magic(full):
-            matches = sorted(glob.glob(full, recursive=True))
-        else:
-            raise InputError("there is no such file", where=full, mend=_near(full))
-        if not matches:
-            raise InputError(f"no file matches '{pattern}'", where=full, mend=_near(full))
-        for match in matches:
+        for name, match in _matches(localised(pattern), base):
             # Links keep their names, which say more than what they point at; a file meant twice counts once.
-            found.setdefault(os.path.realpath(match), os.path.normpath(match))
+            found.setdefault(name, match)
     return list(found.values())
+
+
+def _matches(pattern: str, base: Path) -> list[tuple[str, str]]:
+    """Every file meant: its true name, and the name it is called by."""
+    if is_url(pattern):
+        store, group = split(pattern)
+        matches = _behind_url(store)
+        return [(join(match, group), join(match, group)) for match in matches]
+    full, group = split(str(base.absolute() / Path(pattern).expanduser()))
+    if Path(full).exists():
+        matches = [full]
+    elif glob.has_magic(full):
+        matches = sorted(glob.glob(full, recursive=True))
+    else:
+        raise InputError("there is no such file", where=full, mend=_near(full))
+    if not matches:
+        raise InputError(f"no file matches '{pattern}'", where=full, mend=_near(full))
+    return [(join(os.path.realpath(match), group), join(os.path.normpath(match), group)) for match in matches]
+
+
+def _behind_url(url: str) -> list[str]:
+    with reached(url) as (system, inner):
+        if not glob.has_magic(inner):
+            return [url.rstrip("/")]
+        matches = [system.unstrip_protocol(match) for match in sorted(system.glob(inner.rstrip("/")))]
+    if not matches:
+        raise InputError("no file matches the URL", where=url, mend="correct `inputs: files` in the recipe")
+    return matches
 
 
 def _near(full: str) -> str:

@@ -11,7 +11,9 @@ from gridcarb.errors import Faults, InputError, Notice, UnknownWordError, did_yo
 from gridcarb.fields import REQUIRED_ROLES, ROLES
 from gridcarb.sources.collection import FileRecord
 from gridcarb.sources.conventions import CONVENTIONS
-from gridcarb.sources.headers import POINTERS, Head, Header, heads_of, words
+from gridcarb.sources.headers import Header
+from gridcarb.sources.stored import POINTERS, Head, words
+from gridcarb.sources.zarr_store import heads_of
 
 TOLD = "as told"
 
@@ -205,7 +207,7 @@ def find_roles(ds: xr.Dataset, names: Mapping[str, str] | None = None) -> dict[s
     for word in names or {}:
         if word not in ROLES:
             raise UnknownWordError(f"there is no role '{word}'", mend=did_you_mean(word, ROLES))
-    header = Header("", heads_of(ds), ds.attrs, {}, FileRecord("", 0, 0, ""))
+    header = Header("", heads_of(ds.variables), ds.attrs, {}, FileRecord("", 0, 0, ""))
     faults = Faults()
     chosen, _ = settle(dict.fromkeys(ROLES, (header,)), names or {}, faults)
     faults.tell()

@@ -2,14 +2,17 @@
 
 from __future__ import annotations
 
+import functools
 import hashlib
 from pathlib import Path
-from typing import Any, BinaryIO, Literal
-
-import xarray as xr
+from typing import BinaryIO, Literal
 
 from gridcarb.errors import InputError
 from gridcarb.sources.classic import expected_length
+from gridcarb.sources.netcdf_file import NetcdfFile
+from gridcarb.sources.places import is_url, reached, split
+from gridcarb.sources.stored import Stored
+from gridcarb.sources.zarr_store import ZarrStore
 
 Kind = Literal["netcdf", "zarr"]
 
@@ -20,7 +23,6 @@ _HDF5_STARTS = (0, 512, 1024, 2048, 4096, 8192, 16384, 32768)
 
 _ZARR_METADATA = ("zarr.json", ".zgroup", ".zmetadata", ".zattrs", ".zarray")
 _HEAD_BYTES = 65536
-_AS_STORED: dict[str, Any] = {"decode_cf": False, "mask_and_scale": False, "decode_times": False, "cache": False}
 
 
 def storage_kind(path: str) -> Kind:
@@ -30,7 +32,10 @@ def storage_kind(path: str) -> Kind:
     ------
     InputError : there is nothing, or it is neither a NetCDF file nor a Zarr store.
     """
-    place = Path(path)
+    store = split(path)[0]
+    if is_url(store):
+        return _kind_behind_url(store)
+    place = Path(store)
     if place.is_dir():
         if any((place / name).is_file() for name in _ZARR_METADATA):
             return "zarr"
@@ -46,7 +51,24 @@ def storage_kind(path: str) -> Kind:
                 return "netcdf"
     except OSError as error:
         raise InputError(f"the file cannot be read: {error.strerror}", where=path, mend="check its permissions") from None
-    raise InputError("this is neither a NetCDF file nor a Zarr store", where=path, mend="leave it out of `inputs: files`")
+    raise _neither(path)
+
+
+@functools.lru_cache(maxsize=10_000)
+def _kind_behind_url(store: str) -> Kind:
+    with reached(store) as (system, inner):
+        if any(system.exists(f"{inner}/{name}") for name in _ZARR_METADATA[:2]):
+            return "zarr"
+        if not system.isfile(inner):
+            raise InputError("there is no file and no Zarr store", where=store, mend="correct `inputs: files`")
+        head = system.cat_file(inner, 0, _HDF5_STARTS[-1] + len(_HDF5))
+    if head[:4] in _CLASSIC or any(head[at:at + len(_HDF5)] == _HDF5 for at in _HDF5_STARTS):
+        return "netcdf"
+    raise _neither(store)
+
+
+def _neither(path: str) -> InputError:
+    return InputError("this is neither a NetCDF file nor a Zarr store", where=path, mend="leave it out of `inputs: files`")
 
 
 def _signature(file: BinaryIO, at: int) -> bytes:
@@ -54,26 +76,18 @@ def _signature(file: BinaryIO, at: int) -> bytes:
     return file.read(len(_HDF5))
 
 
-def open_raw(path: str) -> xr.Dataset:
-    """The dataset behind `path` with numbers and attributes as stored; the caller holds the lock of its kind."""
+def open_stored(path: str) -> Stored:
+    """The file or store behind `path`, numbers and attributes as stored; the caller holds the lock of its kind."""
     kind = storage_kind(path)
-    if kind == "netcdf":
+    if kind == "netcdf" and not is_url(path):
         _refuse_short_classic(path)
-    words = {"engine": "zarr", "consolidated": False} if kind == "zarr" else {"engine": "netcdf4"}
     try:
-        dataset = xr.open_dataset(path, chunks=None, **words, **_AS_STORED)
-        groups = {} if dataset.variables else xr.open_groups(path, **words, **_AS_STORED)
+        return ZarrStore(path) if kind == "zarr" else NetcdfFile(path)
+    except InputError:
+        raise
     except Exception as error:
         # The libraries raise many classes for damaged files; all of them mean the same to the user.
         raise unreadable(path, error) from error
-    for group in groups.values():
-        group.close()
-    if len(groups) > 1:
-        dataset.close()
-        names = ", ".join(name.strip("/") for name in groups if name != "/")
-        raise InputError(f"all variables of the file lie in groups ({names}), which are not read", where=path,
-                         mend="copy the group with the variables to the top level of a file of its own")
-    return dataset
 
 
 def unreadable(path: str, error: Exception) -> InputError:
@@ -85,7 +99,7 @@ def unreadable(path: str, error: Exception) -> InputError:
 
 
 def _refuse_short_classic(path: str) -> None:
-    place = Path(path)
+    place = Path(split(path)[0])
     with place.open("rb") as file:
         if file.read(4) not in _CLASSIC:
             return
@@ -102,16 +116,39 @@ def _refuse_short_classic(path: str) -> None:
 
 
 def stamp(path: str) -> tuple[int, int]:
-    """Size in bytes and time of the last change (ns); for a Zarr store, those of its metadata files."""
-    stats = [place.stat() for place in _head_files(Path(path))]
+    """Size in bytes and time of the last change (ns, 0 if unknown); for a Zarr store, those of its metadata files."""
+    store = split(path)[0]
+    if is_url(store):
+        return _stamp_behind_url(store)
+    stats = [place.stat() for place in _head_files(Path(store))]
     return sum(stat.st_size for stat in stats), max((stat.st_mtime_ns for stat in stats), default=0)
+
+
+def _stamp_behind_url(store: str) -> tuple[int, int]:
+    with reached(store) as (system, inner):
+        heads = _heads_behind_url(store)
+        found = [system.info(place) for place in heads or [inner]]
+    changed = [entry.get("LastModified") or entry.get("mtime") or entry.get("created") for entry in found]
+    times = [int(time.timestamp() * 1e9) for time in changed if hasattr(time, "timestamp")]
+    return sum(int(entry.get("size") or 0) for entry in found), max(times, default=0)
+
+
+def _heads_behind_url(store: str) -> list[str]:
+    """The metadata files at the top of a Zarr store; none for a file."""
+    with reached(store) as (system, inner):
+        return [place for name in _ZARR_METADATA if system.exists(place := f"{inner}/{name}")]
 
 
 def fingerprint(path: str) -> str:
     """SHA-256 (hex) of the first 64 kB of a file, or of all metadata of a Zarr store."""
-    digest = hashlib.sha256()
-    for place in _head_files(Path(path)):
-        with place.open("rb") as file:
+    digest, store = hashlib.sha256(), split(path)[0]
+    if is_url(store):
+        with reached(store) as (system, inner):
+            for place in _heads_behind_url(store) or [inner]:
+                digest.update(system.cat_file(place, 0, _HEAD_BYTES))
+        return digest.hexdigest()
+    for head in _head_files(Path(store)):
+        with head.open("rb") as file:
             digest.update(file.read(_HEAD_BYTES))
     return digest.hexdigest()
 

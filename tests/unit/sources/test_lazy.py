@@ -15,10 +15,10 @@ import pytest
 import xarray as xr
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from xarray.backends.netCDF4_ import NetCDF4ArrayWrapper
 
 from gridcarb.netcdf_lock import NETCDF_LOCK
 from gridcarb.sources import Collection, InputsSettings, gather, handles, lazy, open_collection
+from gridcarb.sources.netcdf_file import NetcdfFile
 
 TIMES = np.arange(10) * 30.0
 FORMS = ["nc4", "nc3", "zarr2", "zarr3"]
@@ -116,13 +116,13 @@ def test_nothing_is_read_that_nobody_asked_for(
 def test_gathering_reads_no_field(ocean, save, gathered, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     save(ocean(), tmp_path / "a.nc")
     asked: list[str] = []
-    original = NetCDF4ArrayWrapper.__getitem__
+    original = NetcdfFile.read
 
-    def noted(self: NetCDF4ArrayWrapper, key: object) -> object:
-        asked.append(self.variable_name)
-        return original(self, key)
+    def noted(self: NetcdfFile, name: str, key: handles.Key) -> object:
+        asked.append(name)
+        return original(self, name, key)
 
-    monkeypatch.setattr(NetCDF4ArrayWrapper, "__getitem__", noted)
+    monkeypatch.setattr(NetcdfFile, "read", noted)
     gathered(tmp_path, files="a.nc")
     assert set(asked) == {"time", "lev", "lat", "lon"}
 

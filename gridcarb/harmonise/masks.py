@@ -106,6 +106,12 @@ def unmask(raw: npt.NDArray[Any], reading: MaskReading) -> tuple[Numbers, dict[s
     return numbers, found
 
 
+def decoded(raw: xr.Dataset, name: str, readings: Mapping[str, MaskReading]) -> xr.DataArray:
+    """A coordinate of loaded data as float64 numbers in the units of the file, NaN where missing, without attributes."""
+    variable = raw[name]
+    return xr.DataArray(unmask(np.asarray(variable.values), readings[name])[0], dims=variable.dims)
+
+
 def unmask_roles(
     raw: xr.Dataset, readings: Mapping[str, MaskReading], roles: tuple[str, ...]
 ) -> tuple[dict[str, xr.DataArray], dict[str, int]]:

@@ -13,7 +13,7 @@ import xarray as xr
 from gridcarb.axes import find_axes
 from gridcarb.errors import InputError, UnitsError
 from gridcarb.harmonise.decisions import Decided
-from gridcarb.harmonise.depth import Place, PlaceReading, coordinate_masks, locate, read_place, top_level
+from gridcarb.harmonise.depth import Place, PlaceReading, coordinate_masks, locate, read_place
 from gridcarb.harmonise.settings import ReadingSettings
 
 Ocean = Callable[..., xr.Dataset]
@@ -96,11 +96,6 @@ def test_contradictions_are_refused(ocean: Ocean, values: list[float], attrs: di
     assert caught.value.mend
 
 
-def test_parametric_coordinates_are_not_taken_for_depths(ocean: Ocean) -> None:
-    with pytest.raises(InputError, match="parametric"):
-        read(vertical(ocean(), [-0.9, -0.1], units="1", standard_name="ocean_sigma_coordinate"))
-
-
 def test_centimetres_can_be_stated(ocean: Ocean) -> None:
     raw = vertical(ocean(), [500.0, 400000.0], units="m", positive="down")
     assert read(raw, units={"depth": "cm"}).reading.vertical.deepest == 4000.0
@@ -142,9 +137,7 @@ def test_depth_needs_a_latitude(ocean: Ocean) -> None:
 
 def test_top_level_is_the_shallowest(ocean: Ocean) -> None:
     for raw, index in ((ocean(), 0), (ocean().isel(depth=slice(None, None, -1)), 3)):
-        axes = find_axes(raw)
-        masks = coordinate_masks(raw, axes)
-        assert top_level(raw, axes, masks, read(raw).reading) == index
+        assert read(raw).reading.vertical.top == index
 
 
 @pytest.mark.parametrize("west", [-157.3, -0.1, 12.3456])

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
+import numpy.typing as npt
 import xarray as xr
 
 from gridcarb.chemistry.constants_set import CONSTANTS
@@ -34,14 +35,14 @@ def solve(clothed: xr.Dataset, fields: Sequence[str], constants: str) -> xr.Data
     UnknownWordError : an unknown field or set.
     """
     wanted = [FIELDS[key] for key in fields]
-    values = dict(zip(_ARGUMENTS, xr.broadcast(*(clothed[name] for name in _ARGUMENTS)), strict=True))
     order = _dimension_order(clothed)
-    arrays = {name: value.transpose(*order).values for name, value in values.items()}
+    arrays = {name: _aligned(clothed[name].variable, order) for name in _ARGUMENTS}
     computed = [field.key for field in wanted if field.part != "input"]
     results = speciate(**arrays, fields=computed, constants=constants) if computed else {}
+    shape = np.broadcast_shapes(*(array.shape for array in arrays.values()))
     solved = xr.Dataset(coords=clothed.coords)
     for field in wanted:
-        data = np.array(arrays[field.key]) if field.part == "input" else results[field.key]
+        data = np.broadcast_to(arrays[field.key], shape).copy() if field.part == "input" else results[field.key]
         solved[field.key] = (order, data, {**field.attributes(), **_provenance(field.part, constants)})
     return solved
 
@@ -50,6 +51,14 @@ def _dimension_order(clothed: xr.Dataset) -> tuple[str, ...]:
     """The dimensions of the variable that has most of them, which the harmonised inputs keep in canonical order."""
     widest = max((clothed[name] for name in _ARGUMENTS), key=lambda value: value.ndim)
     return tuple(str(dim) for dim in widest.dims)
+
+
+def _aligned(variable: xr.Variable, order: tuple[str, ...]) -> npt.NDArray[np.float64]:
+    """The numbers with one axis for each dimension of `order`, of length 1 where they do not vary; a scalar as it is."""
+    if not variable.ndim:
+        return variable.values
+    missing = [dim for dim in order if dim not in variable.dims]
+    return variable.expand_dims(missing).transpose(*order).values
 
 
 def _provenance(part: str, constants: str) -> dict[str, str]:

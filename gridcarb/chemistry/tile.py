@@ -19,6 +19,7 @@ from gridcarb.errors import InputError, UnknownWordError, did_you_mean
 Array = npt.NDArray[np.float64]
 
 _TO_CANONICAL = (1.0, 1.0, 0.1, 1e-6, 1e-6, 1e-6, 1e-6)
+_FEW = 0.85
 _PADDING = (15.0, 35.0, 0.0, 2.1e-3, 2.3e-3, 0.0, 0.0)
 
 
@@ -70,8 +71,8 @@ def speciate(
     made = program(constants, wanted)
     ranges = (*CONSTANTS[constants].temperature_range, *CONSTANTS[constants].salinity_range)
     size = int(np.prod(shape))
-    results = {key: np.empty(size, dtype=np.float64) for key in wanted}
-    status = np.empty(size, dtype=np.int8)
+    results = {key: np.full(size, np.nan) for key in wanted}
+    status = np.full(size, MISSING, dtype=np.int8)
     _solve_all([_flat(array, shape) for array in given], made, ranges, results, status)
     every: dict[str, npt.NDArray[np.generic]] = {**results, SOLUTION_STATUS.key: status}
     return {key: every[key].reshape(shape) for key in keys}
@@ -129,11 +130,13 @@ def _solve_all(
     flags = np.empty(TILE, dtype=np.int8)
     bound = made.bind(scratch)
     outputs = list(made.outputs.values())
-    for start in range(0, status.size, TILE):
-        stop = min(start + TILE, status.size)
-        count = stop - start
+    wet = _wet(inputs, status.size)
+    total = status.size if wet is None else wet.size
+    for start in range(0, total, TILE):
+        count = min(TILE, total - start)
+        here = slice(start, start + count) if wet is None else wet[start : start + count]
         for row, (array, factor) in enumerate(zip(inputs, _TO_CANONICAL, strict=True)):
-            values = array if array.size == 1 else array[start:stop]
+            values = array if array.size == 1 else array[here]
             np.multiply(values, factor, out=scratch[row, :count], dtype=np.float64)
             scratch[row, count:] = _PADDING[row]
         judge(flags, *scratch[: len(INPUTS)], *ranges)
@@ -142,5 +145,16 @@ def _solve_all(
         if worst >= MISSING:
             scratch[outputs] = np.where(flags >= MISSING, np.nan, scratch[outputs])
         for key, row in made.outputs.items():
-            results[key][start:stop] = scratch[row, :count]
-        status[start:stop] = flags[:count]
+            results[key][here] = scratch[row, :count]
+        status[here] = flags[:count]
+
+
+def _wet(inputs: list[npt.NDArray[np.floating]], size: int) -> npt.NDArray[np.intp] | None:
+    """The places of the cells that miss no input; None where there are so many that picking them out would cost more
+    than solving the rest with them. Land and sea floor are often half of a grid."""
+    missing = np.zeros(size, dtype=bool)
+    for array in inputs:
+        if array.size > 1:
+            missing |= np.isnan(array)
+    wet = np.flatnonzero(~missing)
+    return wet if wet.size < _FEW * size else None

@@ -90,6 +90,19 @@ def test_selection_of_fields_changes_no_bit() -> None:
         np.testing.assert_array_equal(speciate(**cells, fields=[key])[key], every[key])
 
 
+@pytest.mark.parametrize("share", [0.0, 0.1, 0.5, 0.99, 1.0])
+def test_any_share_of_land_changes_no_bit_of_the_sea(share: float) -> None:
+    cells = waters(3 * TILE + 5)
+    expected = speciate(**cells, fields=[*KEYS, "solution_status"])
+    land = np.random.default_rng(1).random(3 * TILE + 5) < share
+    cells["dic"] = np.where(land, np.nan, cells["dic"])
+    result = speciate(**cells, fields=[*KEYS, "solution_status"])
+    for key, value in result.items():
+        np.testing.assert_array_equal(value[~land], expected[key][~land])
+    assert (result["solution_status"][land] == 2).all()
+    assert all(np.isnan(result[key][land]).all() for key in KEYS)
+
+
 @pytest.mark.parametrize("name", ["temperature", "salinity", "pressure", "dic", "alkalinity", "phosphate", "silicate"])
 def test_nan_in_gives_nan_out(name: str) -> None:
     cells = waters(5)

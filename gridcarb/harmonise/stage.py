@@ -7,17 +7,17 @@ per kilogram of sea water.
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from typing import Any
 
 import numpy as np
 import xarray as xr
 
 from gridcarb.axes import Axes, find_axes
-from gridcarb.errors import InputError, Notice, UnitsError
+from gridcarb.errors import Faults, InputError, Notice
 from gridcarb.fields import FIELDS, REQUIRED_ROLES, ROLES
 from gridcarb.harmonise import amounts, depth, masks, nutrients, plausibility, salinity, temperature
-from gridcarb.harmonise.decisions import Decided, Understanding
+from gridcarb.harmonise.decisions import Decided, Decision, Understanding
 from gridcarb.harmonise.settings import ReadingSettings
 
 
@@ -34,23 +34,57 @@ def understand(
 
     Raises
     ------
-    InputError, UnitsError : for whatever cannot be read safely; the message says which recipe line settles it.
+    InputError, UnitsError : for whatever cannot be read safely; the message says which recipe line settles it, and
+        `others` hold whatever else is wrong.
     """
-    try:
-        return _understand(raw, settings, raw.attrs if file_attributes is None else file_attributes)
-    except (InputError, UnitsError) as error:
+    faults = Faults()
+    found = examine(raw, settings, faults, file_attributes=file_attributes)
+    faults.tell()
+    assert found.understanding is not None  # or there would have been a fault
+    return found.understanding
+
+
+@dataclasses.dataclass(frozen=True)
+class Examination:
+    """How far the input is understood; `understanding` is None where a fault was in the way."""
+
+    decisions: tuple[Decision, ...] = ()
+    notices: tuple[Notice, ...] = ()
+    understanding: Understanding | None = None
+
+
+def examine(
+    raw: xr.Dataset, settings: ReadingSettings, faults: Faults, *, file_attributes: Mapping[Any, Any] | None = None,
+    absent: Collection[str] = (),
+) -> Examination:
+    """As `understand`, topic by topic, with every error put by in `faults`.
+
+    `absent` : roles that are known to be missing, and told already.
+    """
+    own = Faults()
+    attributes = raw.attrs if file_attributes is None else file_attributes
+    found = own.attempt(_examine, raw, settings, attributes, own, absent) or Examination()
+    for error in own.found:
         error.where = _with_file(error.where, raw)
-        raise
+        faults.put(error)
+    return found
 
 
-def _understand(raw: xr.Dataset, settings: ReadingSettings, attributes: Mapping[Any, Any]) -> Understanding:
+def _examine(
+    raw: xr.Dataset, settings: ReadingSettings, attributes: Mapping[Any, Any], faults: Faults, absent: Collection[str]
+) -> Examination:
     axes = find_axes(raw)
-    present = _present(raw, axes)
-    draft, decided = _read_headers(raw, axes, present, settings, attributes)
-    decisions = [decision for part in decided for decision in part.decisions]
-    notices = [notice for part in decided for notice in part.notices]
-    sampled = _check_sample(raw, draft, settings)
-    return dataclasses.replace(draft, decisions=tuple(decisions), notices=(*notices, *sampled))
+    present = tuple(role for role in ROLES if role in raw.data_vars)
+    _refuse_missing([role for role in REQUIRED_ROLES if role not in present and role not in absent])
+    for role in present:
+        faults.attempt(_refuse_strange_dims, role, raw, axes)
+    draft, decided = _read_headers(raw, axes, present, settings, attributes, faults)
+    decisions = tuple(decision for part in decided for decision in part.decisions)
+    notices = tuple(notice for part in decided for notice in part.notices)
+    if draft is None or faults.found:
+        return Examination(decisions, notices)
+    notices += _check_sample(raw, draft, settings, faults)
+    return Examination(decisions, notices, dataclasses.replace(draft, decisions=decisions, notices=notices))
 
 
 def _with_file(where: str, raw: xr.Dataset) -> str:
@@ -112,53 +146,70 @@ def _attributes(key: str) -> dict[str, object]:
     return FIELDS[key].attributes()
 
 
-def _present(raw: xr.Dataset, axes: Axes) -> tuple[str, ...]:
-    """The roles the data give; refuse missing ones and strange dims."""
-    present = tuple(role for role in ROLES if role in raw.data_vars)
-    absent = [role for role in REQUIRED_ROLES if role not in present]
+def _refuse_missing(absent: list[str]) -> None:
     if absent:
         raise InputError(f"the data give no {' and no '.join(absent)}", where=", ".join(absent),
                          mend=f"name the variable by `inputs: {{{absent[0]}: ...}}` in the recipe")
-    for role in present:
-        strange = [str(dim) for dim in raw[role].dims if dim not in axes.order]
-        if strange:
-            raise InputError(f"its dimension '{strange[0]}' is neither time nor vertical nor horizontal", where=role,
-                             mend="select one place along it, or give it a coordinate with CF attributes")
-    return present
+
+
+def _refuse_strange_dims(role: str, raw: xr.Dataset, axes: Axes) -> None:
+    strange = [str(dim) for dim in raw[role].dims if dim not in axes.order]
+    if strange:
+        raise InputError(f"its dimension '{strange[0]}' is neither time nor vertical nor horizontal", where=role,
+                         mend="select one place along it, or give it a coordinate with CF attributes")
 
 
 def _read_headers(
-    raw: xr.Dataset, axes: Axes, present: tuple[str, ...], settings: ReadingSettings, attributes: Mapping[Any, Any]
-) -> tuple[Understanding, tuple[Decided[Any], ...]]:
-    """The understanding as far as headers and coordinates go, and what was decided, in order."""
-    marks = {role: masks.read_mask(raw[role], role) for role in present}
-    marks.update(depth.coordinate_masks(raw, axes))
+    raw: xr.Dataset, axes: Axes, present: tuple[str, ...], settings: ReadingSettings, attributes: Mapping[Any, Any],
+    faults: Faults,
+) -> tuple[Understanding | None, list[Decided[Any]]]:
+    """The understanding as far as headers and coordinates go (None: not far enough), and what was decided, in order."""
+    marks = {role: mark for role in present if (mark := faults.attempt(masks.read_mask, raw[role], role))}
     names = {str(raw[role].attrs.get("standard_name", "")) for role in present}
-    place = depth.read_place(raw, axes, marks, settings, names)
-    deepest = place.reading.vertical.deepest
-    warm = temperature.read_temperature(raw["temperature"].attrs, settings, deepest, attributes)
-    salt = salinity.read_salinity(raw["salinity"].attrs, settings)
-    assumed = nutrients.read_nutrients(present, settings, deepest)
-    given = [role for role in present[2:] if role not in assumed.reading]
-    tracers = {role: amounts.read_amount(role, raw[role].attrs, settings) for role in given}
-    per_volume = {role: raw[role].attrs for role in given if tracers[role].reading.per_volume}
-    per_volume |= {role: {} for role, reading in assumed.reading.items() if reading.amount.per_volume}
-    rho = amounts.read_density(per_volume, settings, attributes)
+    place = faults.attempt(_read_place, raw, axes, marks, settings, names)
+    # Without a place the depth is unknown, and nothing that was assumed because of it would be worth telling.
+    deepest = place.reading.vertical.deepest if place else np.nan
+    heads = {role: raw[role].attrs for role in present}
+    warm = faults.attempt(
+        temperature.read_temperature, heads["temperature"], settings, deepest, attributes
+    ) if "temperature" in heads else None
+    salt = faults.attempt(salinity.read_salinity, heads["salinity"], settings) if "salinity" in heads else None
+    assumed = faults.attempt(nutrients.read_nutrients, present, settings, deepest)
+    rest = [role for role in present if role not in ("temperature", "salinity")]
+    given = [role for role in rest if not (assumed and role in assumed.reading)]
+    amount = {role: faults.attempt(amounts.read_amount, role, heads[role], settings) for role in given}
+    tracers = {role: part for role, part in amount.items() if part}
+    per_volume = {role: heads[role] for role, part in tracers.items() if part.reading.per_volume}
+    stated = assumed.reading if assumed else {}
+    per_volume |= {role: {} for role, reading in stated.items() if reading.amount.per_volume}
+    rho = faults.attempt(amounts.read_density, per_volume, settings, attributes)
+    decided = [part for part in (place and warm, salt, place, *tracers.values(), rho, place and assumed) if part]
+    if not (place and warm and salt and rho and assumed) or faults.found:
+        return None, decided
     draft = Understanding(
         axes=axes, masks=marks, place=place.reading, temperature=warm.reading, salinity=salt.reading,
         amounts={role: part.reading for role, part in tracers.items()}, density=rho.reading, nutrients=assumed.reading,
     )
-    return draft, (warm, salt, place, *tracers.values(), rho, assumed)
+    return draft, decided
 
 
-def _check_sample(raw: xr.Dataset, draft: Understanding, settings: ReadingSettings) -> tuple[Notice, ...]:
+def _read_place(
+    raw: xr.Dataset, axes: Axes, marks: dict[str, masks.MaskReading], settings: ReadingSettings, names: set[str]
+) -> Decided[depth.PlaceReading]:
+    marks.update(depth.coordinate_masks(raw, axes))
+    return depth.read_place(raw, axes, marks, settings, names)
+
+
+def _check_sample(
+    raw: xr.Dataset, draft: Understanding, settings: ReadingSettings, faults: Faults
+) -> tuple[Notice, ...]:
     """Look at small samples of the first time step, and refuse what is not plausible."""
     roles = _roles_read(draft)
     samples = _wet_samples(raw[list(roles)], draft)
     pieces = [masks.unmask_roles(sample, draft.masks, roles) for sample in samples]
     missing = [xr.broadcast(*(clean[role].isnull() for role in roles)) for clean, _ in pieces]
     flat = {role: np.concatenate([part[n].values.ravel() for part in missing]) for n, role in enumerate(roles)}
-    notices = plausibility.check_masks(flat, settings)
+    notices = faults.attempt(plausibility.check_masks, flat, settings) or ()
     clothed = [clothe(sample, draft) for sample in samples]
     medians: dict[str, float] = {}
     for role in roles:
@@ -166,7 +217,7 @@ def _check_sample(raw: xr.Dataset, draft: Understanding, settings: ReadingSettin
         if not np.isnan(values).all():
             medians[role] = float(np.nanmedian(values))
     shallowest = min(float(part["pressure"].min()) for part in clothed)
-    plausibility.check_values(medians, shallowest, draft.amounts, settings)
+    faults.attempt(plausibility.check_values, medians, shallowest, draft.amounts, settings)
     return (*notices, *_mask_notices([counts for _, counts in pieces]))
 
 
@@ -184,8 +235,7 @@ def _mask_notices(counts: list[dict[str, int]]) -> tuple[Notice, ...]:
 def _wet_samples(raw: xr.Dataset, draft: Understanding) -> list[xr.Dataset]:
     """Loaded patches if any has water in it, else the first slab that has; InputError if the whole first step has none."""
     axes = draft.axes
-    top = depth.top_level(raw, axes, draft.masks, draft.place)
-    spread = [_load(raw, window) for window in plausibility.patches(axes, raw.sizes, top)]
+    spread = [_load(raw, window) for window in plausibility.patches(axes, raw.sizes, draft.place.vertical.top)]
     if any(_wet(piece, draft) for piece in spread):
         return spread
     for window in plausibility.slabs(axes, raw.sizes):

@@ -141,7 +141,8 @@ class Faults:
             if same is None:
                 self.found.append(each)
             elif each.where not in same.where:
-                same.where += f"; {each.where}"
+                path, _, name = each.where.rpartition(": ")
+                same.where += f", {name}" if path and same.where.startswith(f"{path}: ") else f"; {each.where}"
 
     def tell(self) -> None:
         """Raise what was found, if anything."""

@@ -238,9 +238,15 @@ def height(
     return z.where(np.isfinite(z)), values.get("eta", xr.DataArray(0.0))
 
 
-def below_surface(raw: xr.Dataset, masks: Mapping[str, MaskReading], reading: ParametricReading) -> Numbers:
-    """Depth below the sea surface of that moment, eta - z, in m; less than zero where a fixed level has fallen dry."""
-    z, eta = height(raw, masks, reading)
+def below_surface(
+    raw: xr.Dataset, masks: Mapping[str, MaskReading], reading: ParametricReading,
+    instead: Mapping[str, Numbers] | None = None,
+) -> Numbers:
+    """Depth below the sea surface of that moment, eta - z, in m; less than zero where a fixed level has fallen dry.
+
+    raw, instead : as in `height`.
+    """
+    z, eta = height(raw, masks, reading, instead)
     return z if reading.downward else eta - z
 
 

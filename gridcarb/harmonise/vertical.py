@@ -1,4 +1,4 @@
-"""How the vertical coordinate becomes depth below the surface or sea pressure; refused where the way down is not certain."""
+"""How the vertical coordinate becomes depth below the surface or sea pressure; refused where the sense is unsure."""
 
 from __future__ import annotations
 

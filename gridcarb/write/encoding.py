@@ -5,6 +5,7 @@ from __future__ import annotations
 import itertools
 import zlib
 from collections.abc import Iterator, Mapping, Sequence
+from pathlib import Path
 from typing import Any, Literal
 
 import numcodecs
@@ -17,6 +18,9 @@ from gridcarb.fields import Field
 
 Precision = Literal["float32", "float64"]
 Selection = tuple[slice, ...]
+
+# The threads of Blosc put their pieces into a chunk in the order they finish: its bytes would differ from run to run.
+numcodecs.blosc.use_threads = False
 
 _PIECE_BYTES = 16 * 2**20
 """Coordinates are mostly read whole: one chunk, unless they are so large that memory would feel it."""
@@ -90,3 +94,11 @@ def stored(values: NDArray[np.generic], dtype: np.dtype[np.generic]) -> NDArray[
 def checksum(values: NDArray[np.generic]) -> str:
     """A CRC-32 of the bytes of C-ordered `values` in little-endian order, to find damage, not malice."""
     return f"crc32:{zlib.crc32(values.astype(values.dtype.newbyteorder('<'), copy=False).data):08x}"
+
+
+def file_checksum(path: Path) -> str:
+    """The same of the bytes of a file; "" if there is none."""
+    try:
+        return f"crc32:{zlib.crc32(path.read_bytes()):08x}"
+    except FileNotFoundError:
+        return ""

@@ -5,10 +5,11 @@ Opening it asks nothing special of xarray: metadata are consolidated as a courte
 
 from __future__ import annotations
 
+import itertools
 import warnings
 from collections.abc import Mapping, Sequence
 from pathlib import Path
-from typing import Any, Literal, cast
+from typing import Any, Literal, NamedTuple, cast
 
 import numpy as np
 import xarray as xr
@@ -28,6 +29,7 @@ from gridcarb.write.encoding import (
     compressor,
     dims_of,
     dtype_of,
+    file_checksum,
     fill_of,
     pieces,
     split_chunks,
@@ -76,8 +78,19 @@ def create(
         _consolidate(path)
 
 
-def write_block(path: Path, region: Mapping[str, slice], block: xr.Dataset) -> dict[str, str]:
-    """Write the data variables of `block` into their place and give back the checksum of each, as stored.
+class Written(NamedTuple):
+    """What proves that a region of a field is as it was written.
+
+    values : checksum of its numbers, as stored.
+    chunks : checksum of each chunk file, in the order of the chunks; "" for a chunk of nothing but fill, which has no file.
+    """
+
+    values: str
+    chunks: tuple[str, ...]
+
+
+def write_block(path: Path, region: Mapping[str, slice], block: xr.Dataset) -> dict[str, Written]:
+    """Write the data variables of `block` into their place and give back the checksums of each.
 
     region : dimension -> slice of the whole grid; a dimension not named is taken whole. The region must consist of
         whole chunks, since two writers in one chunk lose data silently: anything else is a `BlockError`, before a byte
@@ -99,7 +112,17 @@ def write_block(path: Path, region: Mapping[str, slice], block: xr.Dataset) -> d
     with room_for(path, sum(values.nbytes for *_, values in work)):
         for array, selection, values in work:
             array[selection] = values
-    return {array.basename: checksum(values) for array, _, values in work}
+    return {
+        array.basename: Written(checksum(values), tuple(map(file_checksum, chunk_files(path, array, selection))))
+        for array, selection, values in work
+    }
+
+
+def chunk_files(path: Path, array: zarr.Array[Any], selection: Sequence[slice]) -> list[Path]:
+    """The chunk files of a selection made of whole chunks of `array` in the store `path`; a chunk of only fill has none."""
+    cut = zip(selection, array.chunks, strict=True)
+    places = [range(part.start // chunk, -(-part.stop // chunk)) for part, chunk in cut]
+    return [path / array.basename / array.metadata.encode_chunk_key(at) for at in itertools.product(*places)]
 
 
 def _array(group: zarr.Group, key: str, path: Path) -> zarr.Array[Any]:

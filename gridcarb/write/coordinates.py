@@ -25,7 +25,7 @@ def clean_coordinates(template: xr.Dataset, axes: Axes) -> dict[str, xr.Variable
     Integers have no NaN: auxiliary ones keep their fill (the connectivity of a mesh, the codes of basins), coordinate
     variables and bounds have none (CF 1.11, sections 2.5.1 and 7.1). Attributes that point to a variable which is not
     there are dropped, and what `axes` knows is stated where the source was silent (`standard_name` of latitude,
-    longitude and time; `axis` of one-dimensional coordinates).
+    longitude and time; `axis` of one-dimensional coordinates; that nothing is known of leap seconds).
     """
     parents = _parents(template)
     found = {
@@ -119,6 +119,11 @@ def _texts(variable: xr.Variable, axes: Axes, attrs: dict[str, Any]) -> xr.Varia
     return xr.Variable(dims, values.astype(object), attrs)
 
 
+def _has_leap_seconds(time: xr.Variable) -> bool:
+    """Calendars of the real world may count them; CF 1.11, section 4.4, wants said whether."""
+    return str(time.attrs.get("calendar", "standard")).lower() in ("standard", "gregorian", "proleptic_gregorian", "julian")
+
+
 def _stated(found: Mapping[str, xr.Variable], axes: Axes) -> dict[str, dict[str, str]]:
     roles = ((axes.time_coordinate, "T", "time"), (axes.vertical_coordinate, "Z", None),
              (axes.latitude, "Y", "latitude"), (axes.longitude, "X", "longitude"))
@@ -130,4 +135,6 @@ def _stated(found: Mapping[str, xr.Variable], axes: Axes) -> dict[str, dict[str,
                 entry["standard_name"] = standard_name
             if found[name].dims == (name,):
                 entry["axis"] = axis
+            if axis == "T" and "since" in str(found[name].attrs.get("units")) and _has_leap_seconds(found[name]):
+                entry["units_metadata"] = "leap_seconds: unknown"
     return stated

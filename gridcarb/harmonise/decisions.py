@@ -13,9 +13,11 @@ if TYPE_CHECKING:
     from gridcarb.harmonise.amounts import AmountReading, DensityReading
     from gridcarb.harmonise.depth import PlaceReading
     from gridcarb.harmonise.masks import MaskReading
+    from gridcarb.harmonise.measures import MeasuresReading
     from gridcarb.harmonise.nutrients import NutrientReading
     from gridcarb.harmonise.salinity import SalinityReading
     from gridcarb.harmonise.temperature import TemperatureReading
+    from gridcarb.harmonise.thickness import ThicknessReading
 
 R = TypeVar("R")
 
@@ -48,6 +50,8 @@ class Understanding:
     decisions, notices : for people, in the order they were taken.
     axes : the axes of the grid.
     masks : role or coordinate name -> how missing values are marked in it.
+    measures : how cells are weighed in means over space; None where nobody asked for such.
+    thickness : how thick cells are; None where nobody asked, or it cannot be known.
     """
 
     axes: Axes
@@ -58,5 +62,7 @@ class Understanding:
     amounts: Mapping[str, AmountReading]
     density: DensityReading
     nutrients: Mapping[str, NutrientReading]
+    measures: MeasuresReading | None = None
+    thickness: ThicknessReading | None = None
     decisions: tuple[Decision, ...] = ()
     notices: tuple[Notice, ...] = ()

@@ -16,7 +16,7 @@ import xarray as xr
 from gridcarb.axes import Axes, find_axes
 from gridcarb.errors import Faults, InputError, Notice
 from gridcarb.fields import FIELDS, REQUIRED_ROLES, ROLES
-from gridcarb.harmonise import amounts, depth, masks, nutrients, plausibility, salinity, temperature
+from gridcarb.harmonise import amounts, depth, masks, nutrients, plausibility, salinity, temperature, thickness
 from gridcarb.harmonise.decisions import Decided, Decision, Understanding
 from gridcarb.harmonise.settings import ReadingSettings
 
@@ -101,9 +101,9 @@ def clothe(raw: xr.Dataset, understanding: Understanding) -> xr.Dataset:
     """A loaded block, or any slice of the grid, as float64 numbers in canonical units.
 
     Gives the keys temperature (degC, in situ), salinity (practical), pressure (dbar), dic, alkalinity, phosphate, silicate
-    (umol/kg) and, where amounts per volume were met or a density was stated, density (kg m-3); NaN where masked; dims in
-    the order time, vertical, horizontal. Pressure, a constant density and an assumed nutrient have no more dims than they
-    vary over, down to none.
+    (umol/kg) and, where amounts per volume were met or a density was stated, density (kg m-3), and where the understanding
+    knows it, cell_thickness (m); NaN where masked; dims in the order time, vertical, horizontal. Pressure, a constant density
+    and an assumed nutrient have no more dims than they vary over, down to none.
     `attrs["masked_cells"]` counts the masked cells by rule. A cell's numbers do not depend on the slice it comes in.
     """
     clean, counts = masks.unmask_roles(raw, understanding.masks, _roles_read(understanding))
@@ -114,6 +114,9 @@ def clothe(raw: xr.Dataset, understanding: Understanding) -> xr.Dataset:
         key: values.transpose(*(dim for dim in order if dim in values.dims)).assign_attrs(_attributes(key))
         for key, values in fields.items()
     }
+    thick = thickness.thickness(raw, understanding, place)
+    if thick is not None:
+        variables["cell_thickness"] = thick
     return xr.Dataset(variables, coords=raw.coords, attrs={"masked_cells": counts})
 
 

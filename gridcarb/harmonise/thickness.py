@@ -18,8 +18,8 @@ from gridcarb import units
 from gridcarb.axes import Axes
 from gridcarb.errors import Notice
 from gridcarb.harmonise import parametric
-from gridcarb.harmonise.decisions import Decided, Decision
-from gridcarb.harmonise.depth import Place
+from gridcarb.harmonise.decisions import Decided, Decision, Understanding
+from gridcarb.harmonise.depth import Place, locate
 from gridcarb.harmonise.masks import MaskReading, decoded, read_mask
 from gridcarb.harmonise.parametric import ParametricReading
 from gridcarb.harmonise.vertical import VerticalReading, down_of, downward
@@ -84,22 +84,22 @@ def read_thickness(raw: xr.Dataset, axes: Axes, vertical: VerticalReading) -> De
     return Decided(reading, *_told(reading, coordinate, vertical.parametric))
 
 
-def cell_thickness(
-    raw: xr.Dataset, axes: Axes, masks: Mapping[str, MaskReading], vertical: VerticalReading, reading: ThicknessReading,
-    place: Place,
-) -> xr.DataArray | None:
-    """Thickness (m) of the cells of a loaded block, in as few dims as it varies over; None if it lacks some levels.
+def thickness(raw: xr.Dataset, understanding: Understanding, place: Place | None = None) -> xr.DataArray | None:
+    """Thickness (m) of the cells of a loaded block, in as few dims as it varies over.
 
-    0 for a cell that lies below the sea floor, NaN where it is not known.
+    0 for a cell that lies below the sea floor, NaN where it is not known; None if nobody asked for it, it cannot be known,
+    or the block lacks some of the levels. place : where the cells lie, if that was found out already.
     """
-    if axes.vertical and raw.sizes[axes.vertical] != reading.levels:
+    reading, axes = understanding.thickness, understanding.axes
+    if reading is None or (axes.vertical and raw.sizes[axes.vertical] != reading.levels):
         return None
-    own = {**masks, **dict(reading.masks)}
+    masks = {**understanding.masks, **dict(reading.masks)}
     found: xr.DataArray
     if reading.kind == "given":
-        found = reading.to_metres(decoded(raw, reading.variable, own))
+        found = reading.to_metres(decoded(raw, reading.variable, masks))
     else:
-        found = _between(raw, axes, own, vertical, reading, place)
+        place = place or locate(raw, axes, understanding.masks, understanding.place)
+        found = _between(raw, axes, masks, understanding.place.vertical, reading, place)
     ordered = found.transpose(*(dim for dim in axes.order if dim in found.dims))
     return ordered.assign_attrs(long_name="thickness of the cell", units="m", standard_name="cell_thickness")
 

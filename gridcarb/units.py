@@ -19,7 +19,7 @@ from gridcarb.errors import UnitsError
 
 Kind = Literal[
     "amount per mass", "amount per volume", "mass per volume", "mass fraction", "practical salinity", "temperature",
-    "length", "pressure", "number",
+    "length", "area", "pressure", "number",
 ]
 
 ACCEPTED: dict[Kind, tuple[str, ...]] = {
@@ -30,6 +30,7 @@ ACCEPTED: dict[Kind, tuple[str, ...]] = {
     "practical salinity": ("1", "0.001", "1e-3", "psu", "PSS-78"),
     "temperature": ("degC", "degree_Celsius", "celsius", "K", "kelvin"),
     "length": ("m", "cm", "km"),
+    "area": ("m2", "km2", "cm^2"),
     "pressure": ("dbar", "bar", "Pa"),
     "number": (),
 }
@@ -74,6 +75,7 @@ _KINDS: dict[frozenset[str], Kind] = {
     frozenset({"mol", "m-3"}): "amount per volume",
     frozenset({"kg", "m-3"}): "mass per volume",
     frozenset({"m"}): "length",
+    frozenset({"m2"}): "area",
     frozenset({"m-1", "kg", "s-2"}): "pressure",
     frozenset(): "number",
 }

@@ -56,9 +56,8 @@ def _dimension_order(clothed: xr.Dataset) -> tuple[str, ...]:
 def _aligned(variable: xr.Variable, order: tuple[str, ...]) -> npt.NDArray[np.float64]:
     """The numbers with one axis for each dimension of `order`, of length 1 where they do not vary; a scalar as it is."""
     if not variable.ndim:
-        return variable.values
-    missing = [dim for dim in order if dim not in variable.dims]
-    return variable.expand_dims(missing).transpose(*order).values
+        return np.asarray(variable.values)
+    return np.asarray(variable.set_dims(order).values)  # type: ignore[no-untyped-call]
 
 
 def _provenance(part: str, constants: str) -> dict[str, str]:

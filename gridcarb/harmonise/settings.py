@@ -34,6 +34,9 @@ class ReadingSettings(Settings):
     depth: Literal["surface"] | None = Field(
         None, description="'surface': data without a vertical coordinate lie at 0 dbar"
     )
+    coverage: Literal["global", "part"] | None = Field(
+        None, description="'global': the sea area must be that of the ocean within 2 %; 'part': it need not be"
+    )
     units: dict[str, str] = Field(
         default_factory=dict, description="role (or depth): units, where the file gives none or the wrong ones"
     )

@@ -9,7 +9,6 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field
-from fractions import Fraction
 from typing import Any
 
 import numpy as np
@@ -17,15 +16,13 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from gridcarb.fields import Field
+from gridcarb.products.exact import ExactSum
 from gridcarb.products.shelf import PRODUCTS, Product
-
-_BITS = 1074
-"""Every finite float64 is a whole multiple of 2**-1074."""
 
 
 @dataclass
 class Range:
-    """What is known of one field so far; `total` is the sum of its values in units of 2**-1074."""
+    """What is known of one field so far."""
 
     low: float
     high: float
@@ -33,7 +30,7 @@ class Range:
     values: int = 0
     minimum: float = math.inf
     maximum: float = -math.inf
-    total: int = 0
+    total: ExactSum = field(default_factory=ExactSum)
     below: int = 0
     above: int = 0
 
@@ -46,7 +43,7 @@ class Range:
         self.values += values.size
         self.minimum = min(self.minimum, float(values.min()))
         self.maximum = max(self.maximum, float(values.max()))
-        self.total += _exact(float(values.sum()))
+        self.total.add(float(values.sum()))
         self.below += int(np.count_nonzero(values < self.low))
         self.above += int(np.count_nonzero(values > self.high))
 
@@ -56,7 +53,7 @@ class Range:
         self.values += other.values
         self.minimum = min(self.minimum, other.minimum)
         self.maximum = max(self.maximum, other.maximum)
-        self.total += other.total
+        self.total.merge(other.total)
         self.below += other.below
         self.above += other.above
 
@@ -66,7 +63,7 @@ class Range:
         return {
             "cells": self.cells, "values": self.values,
             "minimum": self.minimum if some else None, "maximum": self.maximum if some else None,
-            "mean_of_cells": float(Fraction(self.total, self.values << _BITS)) if some else None,
+            "mean_of_cells": self.total.over(self.values),
             "sane_range": [self.low, self.high], "below_sane_range": self.below, "above_sane_range": self.above,
         }
 
@@ -117,12 +114,6 @@ class Ranges:
     def report(self) -> dict[str, Any]:
         """Field key -> its counts and extremes, or its counts by flag."""
         return {key: share.report() for key, share in self.shares.items()}
-
-
-def _exact(value: float) -> int:
-    """A finite float64 as a whole number of 2**-1074."""
-    top, bottom = value.as_integer_ratio()
-    return top << (_BITS + 1 - bottom.bit_length())
 
 
 PRODUCTS.put("ranges", Product(

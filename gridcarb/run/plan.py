@@ -13,7 +13,7 @@ import xarray as xr
 from gridcarb.errors import Notice
 from gridcarb.fields import FIELDS, Field
 from gridcarb.figures import FIGURES
-from gridcarb.harmonise import Understanding, understand
+from gridcarb.harmonise import Understanding, understand, weigh
 from gridcarb.recipe import Recipe
 from gridcarb.run.blocks import Layout, lay_out, reads_of_a_chunk
 from gridcarb.run.budget import Footprint, allowed_per_task, refuse_over_budget
@@ -22,6 +22,7 @@ from gridcarb.run.task import Job
 from gridcarb.sources import Collection, gather, open_collection
 from gridcarb.write.amounts import per_volume, per_volume_field
 from gridcarb.write.folder import ResultFolder
+from gridcarb.write.validate import check_grid
 
 if TYPE_CHECKING:
     from gridcarb.run.report import Report
@@ -49,11 +50,12 @@ class Plan:
     footprint: Footprint
     allowed: int
     folder: ResultFolder
+    grid_notices: tuple[Notice, ...] = ()
 
     @property
     def notices(self) -> tuple[Notice, ...]:
         """What was decided for the user, each once."""
-        found = (*self.collection.notices, *self.understanding.notices)
+        found = (*self.collection.notices, *self.understanding.notices, *self.grid_notices)
         return tuple({(notice.code, notice.text): notice for notice in found}.values())
 
     @property
@@ -97,7 +99,8 @@ def prepare(recipe: Recipe) -> Plan:
     folder.check()
     collection = gather(recipe.inputs, recipe.base)
     raw = open_collection(collection)
-    understanding = understand(raw, recipe.reading)
+    understanding = weigh(raw, understand(raw, recipe.reading), recipe.reading)
+    grid_notices = check_grid(raw, collection.axes)
     header = raw.coords.to_dataset().assign_attrs(raw.attrs)
     for settings in recipe.figures:
         FIGURES[settings.kind].check(header, settings)
@@ -108,7 +111,7 @@ def prepare(recipe: Recipe) -> Plan:
     layout = _layout(recipe, collection, footprint, allowed, workers)
     column = layout.sizes[collection.axes.vertical] if collection.axes.vertical else 1
     refuse_over_budget(footprint, layout.cells_per_block, column=column, memory=recipe.engine.memory_bytes, workers=workers)
-    return Plan(recipe, collection, understanding, layout, fields, workers, footprint, allowed, folder)
+    return Plan(recipe, collection, understanding, layout, fields, workers, footprint, allowed, folder, grid_notices)
 
 
 def source_chunks(collection: Collection) -> dict[str, int]:

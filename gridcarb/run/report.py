@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 
 from gridcarb.chemistry import CONSTANTS
 from gridcarb.errors import Notice
+from gridcarb.fields import Field
 from gridcarb.run.budget import PROGRAM_BYTES
 from gridcarb.write.disk import free_bytes, sized
 
@@ -165,8 +166,15 @@ def _range_rows(outcome: Outcome) -> Rows:
         units = "" if entry.units == "1" else f" {entry.units}"
         strange = found["below_sane_range"] + found["above_sane_range"]
         note = f"; {strange:,} outside the usual range" if strange else ""
-        rows.append((entry.key, f"{low} to {high}{units}{note}"))
+        rows.append((entry.key, f"{low} to {high}{units}{_mean_words(outcome, entry)}{note}"))
     return rows
+
+
+def _mean_words(outcome: Outcome, entry: Field) -> str:
+    """The mean by area at the top of the sea, where areas are known."""
+    surface = outcome.products["means"]["surface"]
+    mean = surface and surface["fields"][entry.key]["mean"]
+    return "" if mean is None else f"; mean of the surface by area {_number(mean, entry.digits)}"
 
 
 def _number(value: float, digits: int) -> str:

@@ -12,7 +12,7 @@ import xarray as xr
 from gridcarb.chemistry.stage import solve
 from gridcarb.errors import BlockError, GridcarbError, InputError
 from gridcarb.fields import Field
-from gridcarb.harmonise import Understanding, clothe
+from gridcarb.harmonise import Understanding, clothe, weights
 from gridcarb.products import PRODUCTS, Tally
 from gridcarb.run.blocks import Layout
 from gridcarb.sources import Collection, open_collection
@@ -102,7 +102,7 @@ def _run_block(job: Job, number: int) -> Record:
     if job.volumes:
         solved = per_volume(solved, clothed.get("density"))
     clock.lap("solve")
-    tallies = _tallies(job.fields, solved)
+    tallies = _tallies(job.fields, solved.assign_coords(weights(raw, clothed, job.understanding, region)))
     clock.lap("summarise")
     checksums = write_block(job.store, region, solved)
     clock.lap("write")

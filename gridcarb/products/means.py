@@ -1,0 +1,147 @@
+"""Means over space: by area at the top of the sea, by volume over all of it, with how much of it had values.
+
+Every cell counts by its area (or volume) and by the part its time step is of the whole time, so that areas and volumes
+are those of the mean time. Sums within a block are float64, blocks are added exactly (see `ranges`).
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+from typing import Any
+
+import numpy as np
+import xarray as xr
+from numpy.typing import NDArray
+
+from gridcarb.fields import Field
+from gridcarb.products.exact import ExactSum
+from gridcarb.products.shelf import PRODUCTS, Product
+
+Numbers = NDArray[np.float64]
+
+
+@dataclass
+class Mean:
+    """Weight that had values, weighted values, and for a pH its hydrogen ion."""
+
+    is_ph: bool
+    weight: ExactSum = field(default_factory=ExactSum)
+    total: ExactSum = field(default_factory=ExactSum)
+    hydrogen: ExactSum = field(default_factory=ExactSum)
+
+    def add(self, values: Numbers, weights: Numbers) -> None:
+        """Count in values with their weights; NaN has none."""
+        there = np.isfinite(values) & (weights > 0)
+        values, weights = values[there], weights[there]
+        self.weight.add(float(weights.sum()))
+        self.total.add(float((values * weights).sum()))
+        if self.is_ph:
+            self.hydrogen.add(float((np.power(10.0, -values) * weights).sum()))
+
+    def merge(self, other: Mean) -> None:
+        """Count in another share of the same field."""
+        self.weight.merge(other.weight)
+        self.total.merge(other.total)
+        self.hydrogen.merge(other.hydrogen)
+
+    def report(self, whole: ExactSum) -> dict[str, float | None]:
+        """The mean, the part of the `whole` weight that had values, and for a pH the one of the mean hydrogen ion."""
+        found = {"mean": self.total.over(self.weight), "coverage": self.weight.over(whole)}
+        if self.is_ph:
+            hydrogen = self.hydrogen.over(self.weight)
+            found["ph_of_mean_hydrogen_ion"] = -math.log10(hydrogen) if hydrogen else None
+        return found
+
+
+@dataclass
+class Extents:
+    """Weight by each value of a status; `words` names them."""
+
+    words: tuple[tuple[int, str], ...]
+    weights: dict[int, ExactSum] = field(default_factory=dict)
+
+    def add(self, values: NDArray[np.generic], weights: Numbers) -> None:
+        """Count in the weights of each value."""
+        for value in np.unique(values[weights > 0]):
+            self.weights.setdefault(int(value), ExactSum()).add(float(weights[values == value].sum()))
+
+    def merge(self, other: Extents) -> None:
+        """Count in another share of the same status."""
+        for value, weight in other.weights.items():
+            self.weights.setdefault(value, ExactSum()).merge(weight)
+
+    def report(self, whole: ExactSum) -> dict[str, float | None]:
+        """The part of the `whole` weight by word; a value that was never declared appears as the number it is."""
+        words = dict(self.words)
+        return {words.get(value, str(value)): self.weights[value].over(whole) for value in sorted(self.weights)}
+
+
+class Means:
+    """The means of several fields; `known` says which weights the blocks came with."""
+
+    def __init__(self, fields: Sequence[Field]) -> None:
+        self.known: set[str] = set()
+        self.sizes = {extent: ExactSum() for extent in ("surface", "volume")}
+        self.shares: dict[str, dict[str, Mean | Extents]] = {
+            extent: {entry.key: _empty(entry) for entry in fields} for extent in self.sizes
+        }
+
+    def add(self, block: xr.Dataset) -> None:
+        """Count in a block.
+
+        Its coordinates tell its weights: cell_area (m2), sea (whether a cell is water), top_level (index of the uppermost
+        water of a column, -1 without any), time_share, and cell_thickness (m) where it is known. Without areas nothing is
+        counted.
+        """
+        if "cell_area" not in block.coords:
+            return
+        area = block["cell_area"] * block.coords.get("time_share", 1.0)
+        fields = xr.Dataset({key: block[key].variable for key in self.shares["surface"]})
+        top = block["top_level"]
+        vertical = next((dim for dim in block["sea"].dims if dim not in top.dims), None)
+        surface = fields if vertical is None else fields.isel({vertical: np.maximum(top.variable, 0)})
+        self._count("surface", surface, area.where(top >= 0, 0.0))
+        if "cell_thickness" in block.coords:
+            volume = area * block["cell_thickness"]
+            self._count("volume", fields, volume.where(block["sea"] & (volume > 0), 0.0))
+
+    def _count(self, extent: str, fields: xr.Dataset, weights: xr.DataArray) -> None:
+        self.known.add(extent)
+        dims = next(iter(fields.data_vars.values())).dims
+        flat = weights.transpose(*dims).values
+        self.sizes[extent].add(float(flat.sum()))
+        for key, share in self.shares[extent].items():
+            values = fields[key].transpose(*dims).values
+            share.add(values if isinstance(share, Extents) else values.astype(np.float64, copy=False), flat)
+
+    def merge(self, other: Means) -> None:
+        """Count in the shares of another tally of the same fields."""
+        self.known |= other.known
+        for extent, size in self.sizes.items():
+            size.merge(other.sizes[extent])
+            for key, share in self.shares[extent].items():
+                share.merge(other.shares[extent][key])  # type: ignore[arg-type]
+
+    def report(self) -> dict[str, Any]:
+        """For the surface (m2) and the volume (m3): its size, and for each field its mean and coverage; None: not known."""
+        return {
+            extent: {
+                "units": units, "sea": float(size),
+                "fields": {key: share.report(size) for key, share in self.shares[extent].items()},
+            } if extent in self.known else None
+            for (extent, size), units in zip(self.sizes.items(), ("m2", "m3"), strict=True)
+        }  # fmt: skip
+
+
+def _empty(entry: Field) -> Mean | Extents:
+    if entry.part == "status":
+        return Extents(entry.flags)
+    return Mean(is_ph=entry.scale is not None and entry.key.startswith("ph_"))
+
+
+PRODUCTS.put("means", Product(
+    "means", "means by area at the top of the sea and by volume over all of it, with the part of the sea that had values",
+    Means,
+))

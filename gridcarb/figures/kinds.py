@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Collection
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -18,12 +18,13 @@ class FigureKind:
     """One kind of figure.
 
     settings : the class of its section in a recipe.
-    check : `check(header, settings)` raises InputError for what cannot be drawn; reads no field.
+    check : `check(header, settings, fields)` raises InputError for what cannot be drawn of a result that will hold
+        `fields`; reads no field.
     draw : `draw(result, settings, folder)` writes one PNG and gives its path.
     """
 
     settings: type[FigureSettings]
-    check: Callable[[xr.Dataset, Any], None]
+    check: Callable[[xr.Dataset, Any, Collection[str]], None]
     draw: Callable[[xr.Dataset, Any, Path], Path]
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime
+from collections.abc import Collection
 from pathlib import Path
 from typing import Literal
 
@@ -63,8 +64,10 @@ class MapSettings(FigureSettings):
         return value
 
 
-def check(header: xr.Dataset, settings: MapSettings) -> None:
+def check(header: xr.Dataset, settings: MapSettings, fields: Collection[str] = ()) -> None:
     """Refuse what cannot be drawn, from coordinates alone; the fields may be absent or not computed yet.
+
+    fields : what the result will hold besides.
 
     Raises
     ------

@@ -103,7 +103,7 @@ def prepare(recipe: Recipe) -> Plan:
     grid_notices = check_grid(raw, collection.axes)
     header = raw.coords.to_dataset().assign_attrs(raw.attrs)
     for settings in recipe.figures:
-        FIGURES[settings.kind].check(header, settings)
+        FIGURES[settings.kind].check(header, settings, recipe.chemistry.fields)
     fields = _fields(recipe, understanding)
     workers = recipe.engine.workers or cores()
     footprint = _footprint(recipe, collection, fields)

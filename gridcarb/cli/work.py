@@ -24,6 +24,8 @@ _SPOKEN = (
     click.option("--result", "folder", metavar="FOLDER", help=(
         "The result folder, instead of the recipe's `output: folder`. Relative to the working directory.")),
     click.option("--replace", is_flag=True, help="Replace a result of that name once the new one is complete."),
+    click.option("--engine", metavar="KIND", help=(
+        "Who does the blocks: threads, processes, hosts, queue, or the address of a dask scheduler (tcp://host:8786).")),
     click.option("--workers", type=int, metavar="N", help="Blocks computed at the same time."),
     click.option("--memory", metavar="TEXT", help="Memory all workers share, such as '2 GB'."),
     quiet_option,

@@ -14,6 +14,7 @@ from pydantic import ValidationError
 from gridcarb.errors import Fault, RecipeError, did_you_mean
 from gridcarb.harmonise.settings import ReadingSettings
 from gridcarb.recipe.across import disagreements
+from gridcarb.recipe.engine import spoken_engine
 from gridcarb.recipe.faults import explain
 from gridcarb.recipe.model import Origin, Recipe
 from gridcarb.recipe.text import KeyPath, Parsed, dotted, parse
@@ -24,7 +25,7 @@ COMMAND_LINE = " (from the command line)"
 
 def load(
     path: Path, *, inputs: Sequence[str] = (), folder: str | None = None, replace: bool = False,
-    workers: int | None = None, memory: str | None = None,
+    workers: int | None = None, memory: str | None = None, engine: str | None = None,
 ) -> Recipe:
     """Read the recipe at `path`.
 
@@ -44,6 +45,8 @@ def load(
         spoken["engine", "workers"] = workers
     if memory is not None:
         spoken["engine", "memory"] = memory
+    if engine is not None:
+        spoken |= {("engine", key): value for key, value in spoken_engine(engine).items()}
     return _checked(_read(path), str(path), Path(os.path.abspath(path)), spoken)
 
 

@@ -8,7 +8,6 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Annotated, Any, Literal
 
-from dask.utils import parse_bytes
 from pydantic import (
     AfterValidator,
     BaseModel,
@@ -16,7 +15,6 @@ from pydantic import (
     Field,
     PrivateAttr,
     SerializeAsAny,
-    StringConstraints,
     field_validator,
     model_validator,
 )
@@ -27,6 +25,7 @@ from gridcarb.fields import FIELDS
 from gridcarb.figures import FIGURES
 from gridcarb.figures.settings import FigureSettings
 from gridcarb.harmonise.settings import ReadingSettings
+from gridcarb.recipe.engine import EngineSettings
 from gridcarb.settings import Settings
 from gridcarb.sources.settings import InputsSettings
 from gridcarb.write.settings import OutputSettings
@@ -56,8 +55,6 @@ def _known_kind(key: object) -> object:
 
 FieldKey = Annotated[str, AfterValidator(_known_field)]
 SetKey = Annotated[str, AfterValidator(_known_set)]
-Memory = Annotated[str, StringConstraints(pattern=r"(?i)^\d+(\.\d+)? ?[kMGT]i?B$")]
-Count = Annotated[int, Field(ge=1, strict=True)]
 
 
 class ChemistrySettings(Settings):
@@ -82,28 +79,6 @@ class ChemistrySettings(Settings):
         if twice:
             raise UnknownWordError(f"written more than once: {', '.join(twice)}", mend="name each field once")
         return value
-
-
-class BlockSettings(Settings):
-    """A stated block size, for those who know better than the planner."""
-
-    time: Count | None = Field(None, description="time steps of one block; default: chosen by the planner")
-    cells: Count | None = Field(None, description="grid columns of one block; default: chosen by the planner")
-
-
-class EngineSettings(Settings):
-    """How much of the machine a run may use. Nothing here changes a number of the result."""
-
-    workers: Count | None = Field(None, description="blocks computed at the same time; default: one a core")
-    memory: Memory | None = Field(
-        None, description="memory all workers share, such as '2 GB'; default: chosen by the planner"
-    )
-    block: BlockSettings | None = Field(None, description="stated block size; default: chosen by the planner")
-
-    @property
-    def memory_bytes(self) -> int | None:
-        """The memory allowed, in bytes (kB, MB, GB, TB count in thousands, KiB ... in 1024); None if not stated."""
-        return None if self.memory is None else int(parse_bytes(self.memory))
 
 
 class _KindOnly(BaseModel):

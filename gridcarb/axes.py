@@ -122,7 +122,9 @@ def find_axes(ds: xr.Dataset) -> Axes:
     longitude = survey.best(_LONGITUDE, rest, most=2)
     spherical = _join(ds, latitude, longitude)
     level_dims = [dim for dim in rest if dim not in spherical]
-    vertical_coordinate = survey.best(_VERTICAL, level_dims, most=1) or survey.best_field(_VERTICAL, dims, level_dims)
+    vertical_coordinate = survey.best(_VERTICAL, level_dims, most=1)
+    if vertical_coordinate is None or survey.only_counts(vertical_coordinate):
+        vertical_coordinate = survey.best_field(_VERTICAL, dims, level_dims) or vertical_coordinate
     vertical = next((dim for dim in _dims(ds, vertical_coordinate) if dim in level_dims), None)
     vertical = vertical or _dim_named(level_dims, _VERTICAL)
     left = [dim for dim in level_dims if dim != vertical]
@@ -205,12 +207,20 @@ class _Survey:
                 found.append((variable.ndim > 0, evidence, -place, name))
         return max(found)[-1] if found else None
 
+    def only_counts(self, name: str) -> bool:
+        """Whether a vertical coordinate may number the levels: it says neither units nor what it is."""
+        attrs = {**self.ds.variables[name].encoding, **self.ds.variables[name].attrs}
+        units = str(attrs.get("units", "")).strip().lower()
+        speaks = "formula_terms" in attrs or attrs.get("standard_name") in _VERTICAL.standard_names
+        return not speaks and units in ("", "1", "level", "levels", "layer", "layers", "count")
+
     def best_field(self, marks: _Marks, dims: list[str], level_dims: list[str]) -> str | None:
         """A vertical coordinate with several dimensions (depths that differ from column to column)."""
         for name in self.names:
             own = set(self.ds.variables[name].dims)
             pointed = name in self.pointed or name in self.ds.coords
-            if pointed and self.rank(name, marks) and own <= set(dims) and len(own & set(level_dims)) == 1:
+            fits = len(own) > 1 and own <= set(dims) and len(own & set(level_dims)) == 1
+            if pointed and fits and self.rank(name, marks):
                 return name
         return None
 

@@ -122,8 +122,7 @@ def _read_parametric(
     reading = VerticalReading("depth", deepest=float(numbers.max()), shallowest=max(float(numbers.min()), 0.0),
                               top=_top(below, axes.vertical), parametric=formula)
     moving = next((term.variable for term in formula.terms if term.name == "eta"), None)
-    surface = "" if moving is None else f", below the sea surface '{moving}'"
-    surface += " of each time" if moving and axes.time in raw[moving].dims else ""
+    surface = "" if moving is None else f", below the sea surface '{moving}', not below the datum"
     names = ", ".join(f"{term.name}: {term.variable}" for term in formula.terms)
     decision = Decision("pressure", _BY_LEVELS, f"'{name}' is {formula.kind} with {names}{surface}")
     return Decided(reading, (decision,), (*notices, *sense))

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 from gridcarb.axes import Axes
@@ -54,6 +54,10 @@ class Layout:
             start = place * self.block[dim]
             found[dim] = slice(start, min(start + self.block[dim], self.sizes[dim]))
         return dict(reversed(found.items()))
+
+    def extent(self, region: Region, dims: Sequence[str] | None = None) -> tuple[int, ...]:
+        """The lengths of a region along `dims` (default: all of the grid)."""
+        return tuple(region[dim].stop - region[dim].start for dim in dims or self.sizes)
 
     def regions(self) -> Iterator[Region]:
         """Every region, in the order of the block numbers."""
@@ -116,6 +120,18 @@ def _chunks(block: Mapping[str, int], axes: Axes, item_bytes: int) -> dict[str, 
         layer = math.prod(length for dim, length in block.items() if dim != axes.vertical) * item_bytes
         chunks[axes.vertical] = min(block[axes.vertical], max(1, round(_CHUNK_BYTES / layer)))
     return chunks
+
+
+def halves(region: Region, axes: Axes) -> tuple[Region, ...]:
+    """A region cut in two: in time where it has several steps, else along the longer side of the map; one column is left
+    whole."""
+    lengths = {dim: region[dim].stop - region[dim].start for dim in region}
+    across = max(axes.horizontal, key=lambda dim: lengths[dim])
+    dim = axes.time if axes.time and lengths[axes.time] > 1 else across
+    if lengths[dim] < 2:
+        return (region,)
+    middle = region[dim].start + lengths[dim] // 2
+    return {**region, dim: slice(region[dim].start, middle)}, {**region, dim: slice(middle, region[dim].stop)}
 
 
 def reads_of_a_chunk(layout: Layout, source_chunks: Mapping[str, int]) -> int:

@@ -78,7 +78,7 @@ class Plan:
         """What the blocks have in common, for a store in the folder `partial`."""
         return Job(
             self.collection, self.understanding, self.layout, self.fields, self.recipe.chemistry.constants,
-            self.recipe.output.amounts == "per volume", partial / STORE,
+            self.recipe.output.amounts == "per volume", self.recipe.output.precision, partial / STORE,
         )
 
     def report(self) -> Report:

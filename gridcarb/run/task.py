@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+import math
 import time
+from collections import Counter
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
 
+import numpy as np
 import xarray as xr
 
 from gridcarb.chemistry.stage import solve
@@ -14,10 +17,11 @@ from gridcarb.errors import BlockError, GridcarbError, InputError
 from gridcarb.fields import Field
 from gridcarb.harmonise import Understanding, clothe, weights
 from gridcarb.products import PRODUCTS, Tally
-from gridcarb.run.blocks import Layout
+from gridcarb.run.blocks import Layout, Region, halves
 from gridcarb.sources import Collection, open_collection
 from gridcarb.sources.storage import stamp
 from gridcarb.write.amounts import per_volume
+from gridcarb.write.encoding import Precision, dims_of, dtype_of, stored
 from gridcarb.write.store import write_block
 
 
@@ -31,6 +35,7 @@ class Job:
     fields: tuple[Field, ...]
     constants: str
     volumes: bool
+    precision: Precision
     store: Path
 
     @property
@@ -51,8 +56,11 @@ class Record:
     seconds: Mapping[str, float] = field(default_factory=dict)
 
 
-def run_block(job: Job, number: int) -> Record:
+def run_block(job: Job, number: int, parts: int = 1) -> Record:
     """Do block `number` of a job from its files to the store. Doing it twice leaves the same bytes.
+
+    parts : 2 to compute it in halves, one after the other, in about half the memory. It is written as one all the same:
+        chunks of the store, checksums and the ledger know nothing of halves.
 
     Raises
     ------
@@ -60,7 +68,7 @@ def run_block(job: Job, number: int) -> Record:
     """
     place = f"block {number + 1} of {len(job.layout)}"
     try:
-        return _run_block(job, number)
+        return _run_block(job, number, parts)
     except GridcarbError as error:
         error.where = f"{error.where} ({place})".strip()
         changed = changed_inputs(job.collection) if isinstance(error, InputError) else []
@@ -91,9 +99,25 @@ def _mend(error: Exception) -> str:
     return "run again with --debug to see where it happened; nothing of an earlier result was touched"
 
 
-def _run_block(job: Job, number: int) -> Record:
+def _run_block(job: Job, number: int, parts: int) -> Record:
     clock = _Clock()
     region = job.layout.region(number)
+    share = _solve(job, region, clock) if parts == 1 else _solve_halves(job, region, clock)
+    checksums = write_block(job.store, region, share.solved)
+    clock.lap("write")
+    return Record(number, math.prod(job.layout.extent(region)), checksums, share.tallies, share.masked, clock.laps)
+
+
+@dataclass(frozen=True)
+class _Share:
+    """A region that is solved and not written yet."""
+
+    solved: xr.Dataset
+    tallies: dict[str, Tally]
+    masked: dict[str, int]
+
+
+def _solve(job: Job, region: Region, clock: _Clock) -> _Share:
     raw = open_collection(job.collection).isel(region, missing_dims="ignore").load()
     clock.lap("read")
     clothed = clothe(raw, job.understanding)
@@ -104,10 +128,28 @@ def _run_block(job: Job, number: int) -> Record:
     clock.lap("solve")
     tallies = _tallies(job.fields, solved.assign_coords(weights(raw, clothed, job.understanding, region)))
     clock.lap("summarise")
-    checksums = write_block(job.store, region, solved)
-    clock.lap("write")
-    cells = int(solved[job.keys[0]].size)
-    return Record(number, cells, checksums, tallies, clothed.attrs["masked_cells"], clock.laps)
+    return _Share(solved, tallies, clothed.attrs["masked_cells"])
+
+
+def _solve_halves(job: Job, region: Region, clock: _Clock) -> _Share:
+    """Of each half no more is kept than what will be stored, in the width it is stored in."""
+    dims = {field.key: dims_of(field, job.collection.axes) for field in job.fields}
+    whole = xr.Dataset({
+        field.key: (dims[field.key], np.empty(job.layout.extent(region, dims[field.key]), dtype_of(field, job.precision)))
+        for field in job.fields
+    })
+    tallies, masked = {key: product.start(job.fields) for key, product in PRODUCTS.items()}, Counter[str]()
+    for half in halves(region, job.collection.axes):
+        share = _solve(job, half, clock)
+        for key, variable in share.solved.data_vars.items():
+            place = tuple(slice(half[dim].start - region[dim].start, half[dim].stop - region[dim].start)
+                          for dim in dims[str(key)])  # fmt: skip
+            kept = whole[key].values
+            kept[place] = stored(variable.transpose(*dims[str(key)]).values, kept.dtype)
+        for key, tally in tallies.items():
+            tally.merge(share.tallies[key])
+        masked.update(share.masked)
+    return _Share(whole, tallies, dict(masked))
 
 
 def _tallies(fields: tuple[Field, ...], solved: xr.Dataset) -> dict[str, Tally]:

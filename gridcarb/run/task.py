@@ -22,12 +22,15 @@ from gridcarb.sources import Collection, open_collection
 from gridcarb.sources.storage import stamp
 from gridcarb.write.amounts import per_volume
 from gridcarb.write.encoding import Precision, dims_of, dtype_of, stored
-from gridcarb.write.store import write_block
+from gridcarb.write.store import Written, write_block
 
 
 @dataclass(frozen=True)
 class Job:
-    """What every block of a run has in common; plain data that travels to the workers once."""
+    """What every block of a run has in common; plain data that travels to the workers once.
+
+    recipe, inputs : digests of what the run is made of, for the marks of its blocks.
+    """
 
     collection: Collection
     understanding: Understanding
@@ -37,6 +40,8 @@ class Job:
     volumes: bool
     precision: Precision
     store: Path
+    recipe: str = ""
+    inputs: str = ""
 
     @property
     def keys(self) -> tuple[str, ...]:
@@ -49,8 +54,9 @@ class Record:
     """What is left of a block when it is done."""
 
     number: int
+    region: Region
     cells: int
-    checksums: Mapping[str, str]
+    checksums: Mapping[str, Written]
     tallies: Mapping[str, Tally]
     masked: Mapping[str, int]
     seconds: Mapping[str, float] = field(default_factory=dict)
@@ -105,7 +111,7 @@ def _run_block(job: Job, number: int, parts: int) -> Record:
     share = _solve(job, region, clock) if parts == 1 else _solve_halves(job, region, clock)
     checksums = write_block(job.store, region, share.solved)
     clock.lap("write")
-    return Record(number, math.prod(job.layout.extent(region)), checksums, share.tallies, share.masked, clock.laps)
+    return Record(number, region, math.prod(job.layout.extent(region)), checksums, share.tallies, share.masked, clock.laps)
 
 
 @dataclass(frozen=True)

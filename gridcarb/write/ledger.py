@@ -32,31 +32,16 @@ _TO_A_FOLDER = 1000
 
 
 @dataclass(frozen=True)
-class Part:
-    """A region that was written in one go: a whole block, or a piece of one that was halved.
-
-    region : dimension -> (start, stop).
-    values : field -> checksum of its numbers, as stored.
-    chunks : field -> checksum of each chunk file of the region, in the order of the chunks; "" for one of nothing but
-        fill, which has no file.
-    """
-
-    region: Mapping[str, tuple[int, int]]
-    values: Mapping[str, str]
-    chunks: Mapping[str, tuple[str, ...]]
-
-    def slices(self) -> dict[str, slice]:
-        """The region as slices of the whole grid."""
-        return {dim: slice(*ends) for dim, ends in self.region.items()}
-
-
-@dataclass(frozen=True)
 class Marker:
     """What a finished block left.
 
     block : its number, 0-based.
     recipe, inputs : digests of what the run was made of, as in the charter.
-    parts : what was written; together they make the block.
+    region : dimension -> (start, stop).
+    cells : how many cells it has.
+    values : field -> checksum of its numbers, as stored.
+    chunks : field -> checksum of each chunk file of the region, in the order of the chunks; "" for one of nothing but
+        fill, which has no file.
     status : status word -> number of cells.
     masked : rule -> number of cells masked by it.
     seconds : leg of the task -> seconds.
@@ -66,12 +51,18 @@ class Marker:
     block: int
     recipe: str
     inputs: str
+    region: Mapping[str, tuple[int, int]]
     cells: int
-    parts: tuple[Part, ...]
+    values: Mapping[str, str]
+    chunks: Mapping[str, tuple[str, ...]]
     status: Mapping[str, int] = field(default_factory=dict)
     masked: Mapping[str, int] = field(default_factory=dict)
     seconds: Mapping[str, float] = field(default_factory=dict)
     tallies: Mapping[str, Any] = field(default_factory=dict)
+
+    def slices(self) -> dict[str, slice]:
+        """The region as slices of the whole grid."""
+        return {dim: slice(*ends) for dim, ends in self.region.items()}
 
 
 class DamagedMarkerError(ValueError):
@@ -87,7 +78,7 @@ class Ledger:
     def open(self, charter: Mapping[str, Any]) -> None:
         """Begin a ledger, or put another charter into it."""
         self.folder.mkdir(exist_ok=True)
-        _write(self.folder / _CHARTER, json.dumps(charter, indent=1, ensure_ascii=False, sort_keys=True), lasting=True)
+        _write(self.folder / _CHARTER, json.dumps(charter, indent=1, ensure_ascii=False), lasting=True)
 
     def charter(self) -> dict[str, Any] | None:
         """What `open` was given; None if there is none that can be read."""
@@ -119,10 +110,11 @@ class Ledger:
             content = json.loads(self.place(block).read_bytes())
             if content.pop("check", None) != _check(content):
                 raise DamagedMarkerError("its own checksum is not right")
-            parts = tuple(Part(**{**part, "chunks": {key: tuple(sums) for key, sums in part["chunks"].items()},
-                                  "region": {dim: tuple(ends) for dim, ends in part["region"].items()}})
-                          for part in content.pop("parts"))  # fmt: skip
-            marker = Marker(**content | {"parts": parts, "tallies": _unpacked(content["tallies"])})
+            marker = Marker(**content | {
+                "region": {dim: tuple(ends) for dim, ends in content["region"].items()},
+                "chunks": {key: tuple(sums) for key, sums in content["chunks"].items()},
+                "tallies": _unpacked(content["tallies"]),
+            })
         except FileNotFoundError:
             return None
         except DamagedMarkerError:
@@ -218,10 +210,17 @@ class _Reader(pickle.Unpickler):
     """A result may come from anyone: nothing but tallies and arrays is made of what its markers say."""
 
     def find_class(self, module_name: str, global_name: str, /) -> Any:
-        known = module_name.startswith(("gridcarb.products.", "numpy._core.")) or module_name in {"numpy", "numpy.dtypes"}
-        if not known:
+        tally = module_name.startswith("gridcarb.products.") and global_name.isidentifier()
+        if not tally and f"{module_name}.{global_name}" not in _OF_ARRAYS:
             raise pickle.UnpicklingError(f"{module_name}.{global_name} has no place in a marker")
         return super().find_class(module_name, global_name)
+
+
+_OF_ARRAYS = frozenset({
+    "numpy.ndarray", "numpy.dtype", "numpy._core.multiarray._reconstruct", "numpy._core.multiarray.scalar",
+    "numpy._core.numeric._frombuffer",
+})
+"""What pickled arrays and numbers of NumPy are put together with."""
 
 
 def _check(content: Mapping[str, Any]) -> str:

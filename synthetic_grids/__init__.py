@@ -10,6 +10,9 @@ in 50 years and goes deep where water is young; a river dilutes everything with 
 the docstring of its function, and a test can work out a cell by hand.
 
 `geography` names the places; `ocean.state` gives the tracers at a point; `grids.sample` puts them on a grid;
-`clothes.dress` writes them as a model would; `make` writes the committed files (`python -m synthetic_grids`). Nothing
-here imports gridcarb: the truth must not depend on what is tested with it.
+`clothes.dress` writes them as a model would; `make` writes the committed files (`python -m synthetic_grids`). `kinds`
+lists every kind of file that the tests write for themselves; a kind is a `scene` of a mesh (`plain_meshes`, `planes`,
+`unstructured`), a vertical coordinate (`uprights`, `parametric`) and `times`, in some `masks` and `forms`, with
+`measures` beside it. All kinds share the `landmarks`. Nothing here imports gridcarb: the truth must not depend on what
+is tested with it.
 """

@@ -12,7 +12,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
-from functools import lru_cache, partial
+from functools import cache, lru_cache, partial
 from pathlib import Path
 from types import MappingProxyType
 
@@ -51,6 +51,12 @@ def _scene(
     return make
 
 
+@cache
+def _plain() -> Scene:
+    """The raster, plain levels and months: what the kinds that are about something else are made from."""
+    return _scene()()
+
+
 def _on_levels(**how: object) -> Callable[[Mesh, Times], Upright]:
     return lambda mesh, time: uprights.levels(**how)  # type: ignore[arg-type]
 
@@ -70,7 +76,7 @@ def _casts() -> Scene:
 
 def _dims_turned() -> Scene:
     """The dims of the tracers in the opposite order: lon, lat, lev, time."""
-    made = _scene()()
+    made = _plain()
     return made.with_dataset(made.dataset.transpose("lon", "lat", "lev", "time", "bnds"))
 
 
@@ -139,18 +145,18 @@ REGISTER: dict[str, Kind] = {
     "vertical_pressure_column": Kind(
         _scene(plain_meshes.single_column, lambda mesh, time: uprights.pressure_of_depths(mesh))),
     **{f"time_{name}": Kind(_scene(when=when)) for name, when in TIMES.items()},
-    **{f"mask_{name}": Kind(lambda clothing=clothing: masks.dressed_again(_scene()(), clothing))  # type: ignore[misc]
+    **{f"mask_{name}": Kind(lambda clothing=clothing: masks.dressed_again(_plain(), clothing))  # type: ignore[misc]
        for name, clothing in masks.CLOTHINGS.items()},
-    "mask_packed": Kind(lambda: masks.packed(_scene()())),
-    "mask_lacking_1_percent": Kind(lambda: masks.lacking(_scene()(), "silicate", 0.01)),
-    "mask_lacking_10_percent": Kind(lambda: masks.lacking(_scene()(), "silicate", 0.10)),
-    "measures_raster": Kind(lambda: measures.with_measures(_scene()()), measured=True),
+    "mask_packed": Kind(lambda: masks.packed(_plain())),
+    "mask_lacking_1_percent": Kind(lambda: masks.lacking(_plain(), "silicate", 0.01)),
+    "mask_lacking_10_percent": Kind(lambda: masks.lacking(_plain(), "silicate", 0.10)),
+    "measures_raster": Kind(lambda: measures.with_measures(_plain()), measured=True),
     "measures_tripolar": Kind(lambda: measures.with_measures(_scene(planes.tripolar)()), measured=True),
     "measures_polygons": Kind(lambda: measures.with_measures(_scene(unstructured.polygons)()), measured=True),
-    **{f"form_{form}": Kind(_scene(), form) for form in WRITERS},
-    "form_file_a_year": Kind(_scene(), by="year"),
-    "form_file_a_variable": Kind(_scene(), by="variable"),
-    "form_file_a_year_and_variable": Kind(_scene(), by="both"),
+    **{f"form_{form}": Kind(_plain, form) for form in WRITERS},
+    "form_file_a_year": Kind(_plain, by="year"),
+    "form_file_a_variable": Kind(_plain, by="variable"),
+    "form_file_a_year_and_variable": Kind(_plain, by="both"),
 }
 """Every kind by name."""
 

@@ -22,8 +22,8 @@ LATITUDES: Numbers = -90.0 + STEP / 2.0 + STEP * np.arange(24.0)
 MERIDIANS = (86.25, 266.25)
 """Degrees east: one great circle through both poles, which rotated and bipolar grids keep exactly."""
 
-EDGES = (0.0, 10.0, 40.0, 110.0, 190.0, 610.0, 990.0, 3010.0)
-"""Bounds of the levels in m. Their middles are `DEPTHS` and 2000 m."""
+EDGES = (0.0, 10.0, 40.0, 110.0, 190.0, 610.0, 990.0, 3010.0, 5990.0)
+"""Bounds of the levels in m. Their middles are `DEPTHS`, 2000 m and 4500 m."""
 
 DEPTHS = (5.0, 25.0, 75.0, 150.0, 400.0, 800.0)
 

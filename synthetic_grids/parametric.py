@@ -5,7 +5,7 @@ with place and time (not at all in the first of the months). At landmarks, where
 exact in binary: whatever the order of the arithmetic, the levels come out at `landmarks.DEPTHS` to the last bit. The
 exception is the stretched s-coordinate, which takes hyperbolic functions: its terms are right to some 1e-12 m.
 
-Depths are CF 1.11, appendix D; z is the height above the datum, the depth of a cell is -z.
+The formulas are those of CF 1.11, appendix D; z is the height above the datum, so the depth of a cell is -z.
 """
 
 from __future__ import annotations
@@ -32,6 +32,9 @@ STRETCHING = (4.0, 0.75)
 SHALLOW = 16.0
 """Critical depth of the stretched s-coordinate and lower half depth of the double sigma coordinate, in m."""
 
+DATUM = "mean_sea_level"
+"""What heights are counted from, as the standard names say it."""
+
 Variables = dict[str, xr.Variable]
 
 
@@ -44,8 +47,8 @@ class Model:
 
     def terms(self) -> Variables:
         """The two as the file has them."""
-        floor = {"standard_name": "sea_floor_depth_below_geoid", "long_name": "depth of the sea floor", "units": "m"}
-        surface = {"standard_name": "sea_surface_height_above_geoid", "long_name": "sea surface height", "units": "m"}
+        floor = {"standard_name": f"sea_floor_depth_below_{DATUM}", "long_name": "depth of the sea floor", "units": "m"}
+        surface = {"standard_name": f"sea_surface_height_above_{DATUM}", "long_name": "sea surface height", "units": "m"}
         return {"floor": _filled(self.floor, floor), "surface": _filled(self.surface, surface)}
 
 
@@ -74,7 +77,7 @@ def _coordinate(values: Numbers, kind: str, terms: Mapping[str, str], positive: 
     attributes = {"standard_name": kind, "long_name": kind.replace("_", " "), "units": "1", "positive": positive,
                   "axis": "Z", "formula_terms": words}
     if kind != "ocean_double_sigma_coordinate":
-        attributes["computed_standard_name"] = "height_above_geoid"
+        attributes["computed_standard_name"] = f"height_above_{DATUM}"
     return xr.Variable(LEVEL, values, attributes)
 
 
@@ -177,15 +180,13 @@ def sigma_over_z(mesh: Mesh, times: Times) -> Upright:
     # Where there is no water below, the fixed heights have none of the model's columns either.
     below = _line(heights) + 0.0 * known.floor + 0.0 * known.surface
     z = above.where(upper, below)
-    terms = {"sigma": "sigma", "eta": "surface", "depth": "floor", "depth_c": "critical", "nsigma": "sigma_layers",
-             "zlev": "heights"}
-    count = xr.Variable((), np.int32(SIGMA_LAYERS), {"long_name": "number of sigma layers"})
+    terms = {"sigma": "sigma", "eta": "surface", "depth": "floor", "depth_c": "critical", "zlev": "heights"}
+    of_heights = {"standard_name": f"height_above_{DATUM}", "long_name": "height of the lower layers", "units": "m"}
     return Upright(-z, {
         **known.terms(),
         LEVEL: _coordinate(np.arange(1.0, DOWN.size + 1.0), "ocean_sigma_z_coordinate", terms, "down"),
         "sigma": _filled(_line(values), {"long_name": "sigma of the upper layers", "units": "1"}),
-        "heights": _filled(_line(heights), {"long_name": "height of the lower layers", "units": "m"}),
-        "critical": _scalar(BREAK, "depth the sigma layers reach"), "sigma_layers": count,
+        "heights": _filled(_line(heights), of_heights), "critical": _scalar(BREAK, "depth the sigma layers reach"),
     })
 
 

@@ -19,7 +19,7 @@ def levels(
     unit: str = "m", *, name: str = "lev", height: bool = False, from_bottom: bool = False,
     says_positive: bool = True, bounds: bool = True, named: bool = True,
 ) -> Upright:
-    """The seven levels of `EDGES`.
+    """The eight levels of `EDGES`.
 
     height : negative numbers above the deep, positive up, instead of depths.
     from_bottom : the deepest level comes first.

@@ -17,7 +17,7 @@ _DEGREES = 1e-4
 """Centres closer than about half of this are one place: single precision places a longitude to 3e-5."""
 
 _WHOLE = 0.45
-"""A fold row or halo column has at least so large a share of repeated cells (half, where a row lies on the fold)."""
+"""Of the sea of a fold row or halo column at least such a share is repeated (half, where a row lies on the fold)."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -69,13 +69,14 @@ def _step(lon: Numbers, lat: Numbers) -> float:
     return min(_DEGREES, float(np.median(away)) / 20.0) if away.size else _DEGREES
 
 
-def where_repeated(flags: Flags, dims: tuple[str, ...]) -> str:
-    """Words for the rows and columns in which repeated cells lie."""
-    if flags.ndim != 2:
+def where_repeated(again: Flags, sea: Flags, dims: tuple[str, ...]) -> str:
+    """Words for the rows and columns whose sea cells are repeated ones."""
+    if again.ndim != 2:
         return ""
     places = []
     for axis, dim in enumerate(dims):
-        lines = np.flatnonzero(flags.mean(axis=1 - axis) >= _WHOLE)
+        wet, both = sea.sum(axis=1 - axis), (again & sea).sum(axis=1 - axis)
+        lines = np.flatnonzero((both > 0) & (both >= _WHOLE * wet))
         if 0 < lines.size <= 6:
             places.append(f"{dim} = {', '.join(str(line) for line in lines)}")
     return f" (at {' and '.join(places)}, counted from 0)" if places else ""

@@ -39,11 +39,12 @@ _STATIONS = frozenset({"timeseries", "profile", "timeseriesprofile", "point", "t
 def weigh(raw: xr.Dataset, understanding: Understanding, settings: ReadingSettings) -> Understanding:
     """An understanding that knows also how cells are weighed in means over space, and says so.
 
-    raw : the whole collection, lazy. Raises InputError as `read_measures` does.
+    raw : the whole collection, lazy. Raises InputError as `read_measures` does. Thickness is of use only with an area.
     """
     vertical = understanding.place.vertical
     found = read_measures(raw, understanding.axes, understanding.masks, vertical.top, settings)
-    thick = read_thickness(raw, understanding.axes, vertical)
+    flat = found.reading.kind == "unknown"
+    thick = Decided(None) if flat else read_thickness(raw, understanding.axes, vertical)
     return replace(
         understanding, measures=found.reading, thickness=thick.reading,
         decisions=(*understanding.decisions, *found.decisions, *thick.decisions),
@@ -143,7 +144,7 @@ class _Whole:
         if (again & sea).any():
             notices.append(Notice(
                 "repeated_cells", f"{int((again & sea).sum()):,} sea cells repeat the place of others"
-                f"{where_repeated(again, self.axes.horizontal)}, such as fold rows and halo columns; they get "
+                f"{where_repeated(again, sea, self.axes.horizontal)}, such as fold rows and halo columns; they get "
                 f"their values, and count for nothing in sums and means (they would add {more:.2%} to the sea area)"))
         return replace(self.reading, excluded=PackedFlags.of(again, self.axes.horizontal)), notices
 

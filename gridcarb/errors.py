@@ -88,6 +88,12 @@ class BlockError(GridcarbError):
     exit_code = 6
 
 
+class EngineError(GridcarbError):
+    """Workers that cannot be reached, or cannot do what a run asks of them."""
+
+    exit_code = 7
+
+
 @dataclass(frozen=True)
 class Fault:
     """One fault of a recipe: its line (1-based, 0 if unknown), dotted key path, what is wrong, how to mend it."""

@@ -5,7 +5,7 @@ from __future__ import annotations
 import hashlib
 import json
 from collections.abc import Mapping
-from dataclasses import asdict, dataclass, field, replace
+from dataclasses import asdict, dataclass, field
 from datetime import UTC, datetime
 from functools import cache
 from importlib.metadata import version
@@ -114,10 +114,6 @@ class Charter:
         today = numeric_versions()
         return [f"program: {name} was {self.versions.get(name, 'not there')}, is {today.get(name, 'not there')}"
                 for name in sorted({*self.versions, *today}) if self.versions.get(name) != today.get(name)]  # fmt: skip
-
-    def with_files(self, **files: Mapping[str, str]) -> Charter:
-        """The same with other checksums of `fixed` or `derived` files."""
-        return replace(self, **files)  # type: ignore[arg-type]
 
 
 @cache

@@ -13,22 +13,22 @@ from typing import Any, Protocol
 
 import xarray as xr
 
-from gridcarb.chemistry import CONSTANTS
 from gridcarb.chemistry.program import program
 from gridcarb.errors import GridcarbError, InputError, Notice
 from gridcarb.figures import FIGURES
 from gridcarb.products import PRODUCTS
 from gridcarb.run.engine import run_tasks
+from gridcarb.run.frame import date_of_writing
 from gridcarb.run.journal import journal_head, journal_tail
+from gridcarb.run.marking import do_block
 from gridcarb.run.plan import FIGURE_FOLDER, FILE, STATUS, STORE, Plan
 from gridcarb.run.report import Report, outcome_report
+from gridcarb.run.resume import Manner, Start, begin, what_next
 from gridcarb.run.stopping import Terminated, ends_tidily, why_it_ended
-from gridcarb.run.task import Record, changed_inputs, run_block
-from gridcarb.sources import open_collection
-from gridcarb.write.attributes import global_attributes
+from gridcarb.run.task import Record, changed_inputs
 from gridcarb.write.journal import JOURNAL, write_journal
+from gridcarb.write.ledger import Marker
 from gridcarb.write.netcdf import export
-from gridcarb.write.store import create
 
 
 class Watcher(Protocol):
@@ -76,7 +76,7 @@ class _Sums:
     def __post_init__(self) -> None:
         self.tallies = {key: product.start(self.plan.fields) for key, product in PRODUCTS.items()}
 
-    def add(self, record: Record) -> None:
+    def add(self, record: Record | Marker) -> None:
         for key, tally in self.tallies.items():
             tally.merge(record.tallies[key])
         for rule, count in record.masked.items():
@@ -91,8 +91,12 @@ class _Sums:
         self.seconds[leg] = time.perf_counter() - begun
 
 
-def conduct(plan: Plan, watcher: Watcher) -> Outcome:
+def conduct(plan: Plan, watcher: Watcher, manner: Manner = "new") -> Outcome:
     """Do everything the plan says. The result folder gets its name only when all of it is there.
+
+    Parameters
+    ----------
+    manner : "resume" goes on from what an interrupted run has finished, "anew" throws that away, "new" refuses to.
 
     Raises
     ------
@@ -100,52 +104,55 @@ def conduct(plan: Plan, watcher: Watcher) -> Outcome:
     Terminated : at SIGTERM, in the main thread; the incomplete result is kept like after an error.
     """
     with ends_tidily():
-        return _conduct(plan, watcher)
+        start = begin(plan, manner, date_of_writing())
+        return _conduct(start, watcher)
 
 
-def _conduct(plan: Plan, watcher: Watcher) -> Outcome:
+def _conduct(start: Start, watcher: Watcher) -> Outcome:
     begun = datetime.now(UTC)
+    plan = start.plan
     sums = _Sums(plan)
-    notices = (*plan.notices, *plan.folder.begin())
+    notices = (*plan.notices, *start.notices)
     journal: dict[str, object] = {}
     partial = plan.folder.partial
     try:
-        journal |= journal_head(plan, begun, notices)
+        with sums.timed("taking up"):
+            notices += start.take_up(sums.add) if start.resumed else ()
+        journal |= journal_head(plan, begun, notices, len(start.done) if start.resumed else None)
         write_journal(partial / JOURNAL, journal)
-        _fill_store(plan, begun, partial, watcher, sums)
+        _fill_store(start, watcher, sums)
         written = _derive_files(plan, partial, watcher, sums)
+        start.note_derived(written.values())
         products = {key: tally.report() for key, tally in sums.tallies.items()}
         journal |= journal_tail("complete", products=products, masked_cells=sums.masked, seconds=sums.seconds,
                                 written=sorted(written.values()))  # fmt: skip
         write_journal(partial / JOURNAL, journal)
         target = plan.folder.complete()
     except BaseException as error:
-        _give_up(plan, journal, error, watcher)
+        _give_up(start, journal, error, watcher)
         raise
     places = {name: target / inside for name, inside in written.items()}
     return Outcome(plan, {**places, "journal": target / JOURNAL}, products, sums.seconds, notices)
 
 
-def _fill_store(plan: Plan, begun: datetime, partial: Path, watcher: Watcher, sums: _Sums) -> None:
-    job = plan.job(partial)
-    raw = open_collection(plan.collection)
-    with sums.timed("store"):
-        create(
-            job.store, template=raw, fields=plan.fields, axes=plan.collection.axes, chunks=plan.layout.chunks,
-            attributes=_attributes(plan, raw, begun), zarr_format=plan.recipe.output.zarr_format,
-            precision=plan.recipe.output.precision,
-        )  # fmt: skip
+def _fill_store(start: Start, watcher: Watcher, sums: _Sums) -> None:
+    plan = start.plan
+    if not start.resumed:
+        with sums.timed("store"):
+            start.lay_foundation()
     watcher.message("preparing the chemistry (a few seconds the first time on this machine)")
     with sums.timed("compile"):
         program(plan.recipe.chemistry.constants, tuple(entry.key for entry in plan.fields if entry.part == "derived"))
-    watcher.start(len(plan.layout), plan.layout.cells)
+    if start.resumed:
+        watcher.message(f"going on with an interrupted run: {len(start.done):,} of {len(plan.layout):,} blocks are done")
+    watcher.start(start.blocks_left, start.cells_left)
 
     def done(record: Record) -> None:
         sums.add(record)
         watcher.block_done(record.cells)
 
     with sums.timed("blocks"):
-        run_tasks(run_block, job, range(len(plan.layout)), workers=plan.workers, done=done)
+        run_tasks(do_block, start.job(), start.to_do(), workers=plan.workers, done=done)
     watcher.stop()
     _refuse_changed(plan)
     _refuse_nothing(sums)
@@ -168,17 +175,6 @@ def _refuse_nothing(sums: _Sums) -> None:
             f"no cell could be computed: {told}", where="inputs",
             mend="check the variables, fill values, units and land masks; `gridcarb plan` shows how they were understood",
         )
-
-
-def _attributes(plan: Plan, raw: xr.Dataset, begun: datetime) -> dict[str, object]:
-    keys = dict.fromkeys(key for keys in CONSTANTS[plan.recipe.chemistry.constants].citations().values() for key in keys)
-    notes = [f"Constants: {plan.recipe.chemistry.constants}."]
-    notes += [f"{str(decision)[:1].upper()}{str(decision)[1:]}." for decision in plan.understanding.decisions]
-    notes += [f"Notice: {notice.text}." for notice in plan.notices]
-    return global_attributes(
-        title=plan.recipe.title, template=raw, axes=plan.collection.axes, fields=plan.fields, now=begun, citations=keys,
-        notes=notes, own=plan.recipe.output.attributes,
-    )
 
 
 def _derive_files(plan: Plan, partial: Path, watcher: Watcher, sums: _Sums) -> dict[str, str]:
@@ -211,15 +207,15 @@ def _draw(plan: Plan, partial: Path, watcher: Watcher) -> dict[str, str]:
     return written
 
 
-def _give_up(plan: Plan, journal: Mapping[str, object], error: BaseException, watcher: Watcher) -> None:
+def _give_up(start: Start, journal: Mapping[str, object], error: BaseException, watcher: Watcher) -> None:
     """Leave the incomplete result beside its target, with a journal that says why it ended."""
     state = "failed" if isinstance(error, Exception) else "interrupted"
     told = {"kind": type(error).__name__, "text": why_it_ended(error)}
     # The disk that failed the run may fail its journal too; the first error is the one to tell.
     with suppress(OSError, GridcarbError):
-        write_journal(plan.folder.partial / JOURNAL, {**journal, **journal_tail(state, error=told)})
-    left = plan.folder.abandon()
+        write_journal(start.plan.folder.partial / JOURNAL, {**journal, **journal_tail(state, error=told)})
+    left = start.plan.folder.abandon()
     if isinstance(error, Terminated):
         watcher.message(why_it_ended(error))
     if left.exists():
-        watcher.message(f"the incomplete result was left in {left}; the next run of this result removes it")
+        watcher.message(f"the incomplete result was left in {left}; {what_next(start)}")

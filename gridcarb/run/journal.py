@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 from gridcarb.chemistry import CONSTANTS
 from gridcarb.citations import CITATIONS
 from gridcarb.errors import Notice
+from gridcarb.run.contents import audit_data
 from gridcarb.run.report import plan_data
 
 if TYPE_CHECKING:
@@ -19,12 +20,16 @@ if TYPE_CHECKING:
 _LIBRARIES = ("gridcarb", "numpy", "numba", "xarray", "dask", "zarr", "netCDF4", "gsw", "cftime", "matplotlib", "cartopy")
 
 
-def journal_head(plan: Plan, begun: datetime, notices: Sequence[Notice]) -> dict[str, object]:
-    """What is known before the first block; `notices` are those of the plan and of the begin."""
+def journal_head(plan: Plan, begun: datetime, notices: Sequence[Notice], resumed: int | None = None) -> dict[str, object]:
+    """What is known before the first block; `notices` are those of the plan and of the begin.
+
+    resumed : blocks that an interrupted run had finished; None if there was none.
+    """
     recipe = plan.recipe
     return {
         "state": "running",
         "begun": begun.isoformat(timespec="seconds"),
+        "blocks_taken_up": resumed,
         "recipe": {"path": str(recipe.path) if recipe.path else None, "sha256": recipe.digest, "text": recipe.text},
         "files": [
             {"path": each.path, "bytes": each.size, "mtime_ns": each.mtime_ns, "fingerprint": each.fingerprint}
@@ -34,6 +39,7 @@ def journal_head(plan: Plan, begun: datetime, notices: Sequence[Notice]) -> dict
         "constants": _constants(recipe.chemistry.constants),
         "engine": recipe.engine.model_dump(),
         "plan": plan_data(plan, notices),
+        "audit": audit_data(plan.survey, plan.findings),
     }
 
 

@@ -67,15 +67,24 @@ class ResultFolder:
         try:
             found += self._recover()
             self.check()
-            if self.partial.exists() and not keep_partial:
-                shutil.rmtree(self.partial)
-                found += (Notice("partial_removed", "an interrupted run had left an incomplete result; it was removed"),)
+            if not keep_partial:
+                found += self.clear()
             with room_for(self.partial, 0):
                 self.partial.mkdir(exist_ok=True)
         except BaseException:
             self._unlock()
             raise
         return found
+
+    def clear(self) -> tuple[Notice, ...]:
+        """Empty the working copy; say so if an interrupted run had left anything there."""
+        left = self.partial.exists() and any(self.partial.iterdir())
+        if self.partial.exists():
+            shutil.rmtree(self.partial)
+        with room_for(self.partial, 0):
+            self.partial.mkdir()
+        told = Notice("partial_removed", "an interrupted run had left an incomplete result; it was removed")
+        return (told,) if left else ()
 
     def complete(self) -> Path:
         """Give the working copy its final name; an earlier result goes only after the new one stands."""

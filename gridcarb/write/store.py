@@ -100,7 +100,7 @@ def write_block(path: Path, region: Mapping[str, slice], block: xr.Dataset) -> d
     work = []
     for key, variable in block.data_vars.items():
         array = _array(group, str(key), path)
-        dims = _dims(array)
+        dims = dims_of_array(array)
         if set(dims) != set(variable.dims):
             raise BlockError(f"'{key}' has dimensions {tuple(variable.dims)}, the store has {dims}", where=str(path))
         selection = _aligned(array, dims, region, f"{path}: {key}")
@@ -177,7 +177,8 @@ def _make(
     )
 
 
-def _dims(array: zarr.Array[Any]) -> tuple[str, ...]:
+def dims_of_array(array: zarr.Array[Any]) -> tuple[str, ...]:
+    """The names of the dimensions of an array of a store, in either format."""
     if array.metadata.zarr_format == 3:
         return tuple(str(dim) for dim in array.metadata.dimension_names or ())
     return tuple(str(dim) for dim in cast(list[str], array.attrs[_DIMS_V2]))

@@ -73,7 +73,7 @@ def read_measures(
                        _unknown_notice(raw, axes))
     whole = _Whole(raw, axes, masks, top, reading)
     notices: list[Notice] = []
-    if whole.may_repeat():
+    if reading.kind == "given" or whole.may_repeat():
         reading, notices = whole.without_repeated()
         whole.reading = reading
     checked = _check_total(whole, settings)
@@ -133,10 +133,7 @@ class _Whole:
         """The reading with repeated cells excluded, and what is to be said of them and of collapsed cells."""
         pieces = [(area, sea) for _, area, sea in self.pieces()]
         area, sea = (np.concatenate(parts) for parts in zip(*pieces, strict=True))
-        lon, lat = self.position(self.axes.longitude), self.position(self.axes.latitude)
-        if grid_kind(self.raw, self.axes) == "rectilinear":
-            lon, lat = np.meshgrid(lon, lat)
-        again = repeated(lon, lat, sea & (area > 0))
+        again = self._repeated(sea & (area > 0))
         notices = _of_collapsed(area, sea & ~again, self.reading.kind)
         if not again.any():
             return self.reading, notices
@@ -147,6 +144,14 @@ class _Whole:
                 f"{where_repeated(again, sea, self.axes.horizontal)}, such as fold rows and halo columns; they get "
                 f"their values, and count for nothing in sums and means (they would add {more:.2%} to the sea area)"))
         return replace(self.reading, excluded=PackedFlags.of(again, self.axes.horizontal)), notices
+
+    def _repeated(self, usable: Flags) -> Flags:
+        if self.axes.longitude is None or self.axes.latitude is None:
+            return np.zeros(self.shape, dtype=bool)
+        lon, lat = self.position(self.axes.longitude), self.position(self.axes.latitude)
+        if lon.shape != self.shape:
+            lon, lat = np.meshgrid(lon, lat)
+        return repeated(lon, lat, usable)
 
     def sea_area(self) -> float:
         """Sea area of the top level, m2."""

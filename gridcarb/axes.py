@@ -25,7 +25,8 @@ class Axes:
     time, vertical : dimension names, None if there is no such dimension.
     horizontal : dimension names, (y, x) for maps, (cell,) for unstructured grids and stations, () for a single column.
     time_coordinate, vertical_coordinate, latitude, longitude : variable names; None where absent. The vertical
-        coordinate may be a scalar (then `vertical` is None) or missing.
+        coordinate may be a scalar (then `vertical` is None) or missing. The time coordinate may be a scalar, or lie along
+        the cells of stations, casts and tracks, each with a moment of its own (then `time` is None).
     """
 
     time: str | None
@@ -77,12 +78,14 @@ _LATITUDE = _Marks(
     axis="", standard_names=frozenset({"latitude"}), units=re.compile(r"^degrees?_?n(orth)?$"),
     names=frozenset({
         "lat", "latitude", "nav_lat", "lats", "latitudes", "yc", "geolat", "geolat_t", "tlat", "lat_rho", "yt_ocean",
+        "clat", "latcell", "gphit", "ulat", "plat", "mesh2d_face_y", "mesh2d_node_y",
     }),
 )
 _LONGITUDE = _Marks(
     axis="", standard_names=frozenset({"longitude"}), units=re.compile(r"^degrees?_?e(ast)?$"),
     names=frozenset({
         "lon", "longitude", "nav_lon", "lons", "longitudes", "xc", "geolon", "geolon_t", "tlong", "lon_rho", "xt_ocean",
+        "clon", "loncell", "glamt", "ulong", "plon", "mesh2d_face_x", "mesh2d_node_x",
     }),
 )
 _Y = _Marks(
@@ -95,7 +98,8 @@ _X = _Marks(
 )
 _CELL_DIMS = frozenset({
     "cell", "cells", "ncell", "ncells", "node", "nodes", "nnode", "nnodes", "nod2", "nod2d", "face", "faces", "nface",
-    "nfaces", "nmesh2d_face", "nmesh2d_node", "station", "stations", "profile", "profiles", "cast", "casts", "column",
+    "nfaces", "nmesh2d_face", "nmesh2d_node", "mesh2d_face", "mesh2d_nface", "mesh2d_node", "mesh2d_nnode", "elem",
+    "ncol", "cell_index", "points", "point", "obs", "station", "stations", "profile", "profiles", "cast", "casts", "column",
     "site",
 })
 
@@ -117,6 +121,8 @@ def find_axes(ds: xr.Dataset) -> Axes:
     dims = survey.dims
     time_coordinate = survey.best(_TIME, dims, most=1)
     time = _dim_of(ds, time_coordinate) or _dim_named(dims, _TIME)
+    if time and _is_track(survey, time):
+        time = None
     rest = [dim for dim in dims if dim != time]
     latitude = survey.best(_LATITUDE, rest, most=2)
     longitude = survey.best(_LONGITUDE, rest, most=2)
@@ -183,7 +189,8 @@ class _Survey:
             return 4
         if units:
             return 3
-        if marks is _VERTICAL and "positive" in attrs and (name in variable.dims or name in self.ds.coords):
+        floor = standard_name.startswith("sea_floor_depth")
+        if marks is _VERTICAL and "positive" in attrs and not floor and (name in variable.dims or name in self.ds.coords):
             return 2
         known = name in variable.dims or name in self.ds.coords or name in self.pointed or marks in (_LATITUDE, _LONGITUDE)
         return _NAMED_ALONE if known and not stranger and name.lower() in marks.names else 0
@@ -242,6 +249,12 @@ def _dims(ds: xr.Dataset, name: str | None) -> tuple[str, ...]:
 def _dim_of(ds: xr.Dataset, name: str | None) -> str | None:
     dims = _dims(ds, name)
     return dims[0] if dims else None
+
+
+def _is_track(survey: _Survey, dim: str) -> bool:
+    """Whether each step along `dim` is a place of its own: casts and tracks, with latitudes and longitudes along it."""
+    placed = [survey.best(marks, [dim], most=1) for marks in (_LATITUDE, _LONGITUDE)]
+    return all(name is not None and survey.ds.variables[name].dims == (dim,) for name in placed)
 
 
 def _dim_named(dims: list[str], marks: _Marks) -> str | None:

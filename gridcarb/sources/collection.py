@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
@@ -11,6 +11,7 @@ import numpy.typing as npt
 
 from gridcarb.axes import Axes, GridKind
 from gridcarb.errors import Notice
+from gridcarb.sources.dates import Stamps
 
 
 @dataclass(frozen=True)
@@ -40,8 +41,8 @@ class Segment:
 class ArraySource:
     """One variable across its files, in the dimensions of the reference grid and in canonical order.
 
-    file_axes : for each dimension, its place among the dimensions of the file; axes of the file that are not named
-        here have one step.
+    file_axes : for each dimension, its place among the dimensions of the file, -1 if each file is one step of it; axes of
+        the file that are not named here have one step.
     file_rank : number of dimensions in the file.
     chunks : chunk shape of the source in canonical order, None if it is contiguous.
     segments : its files, in the order of time.
@@ -75,6 +76,28 @@ class RoleSource:
     array: ArraySource
 
 
+@dataclass(frozen=True)
+class TimeReading:
+    """What the time axis says; nothing of it is ever changed, save months that the recipe says how to read.
+
+    name, dim : the coordinate ('' if there is none) and its dimension (None: one moment, or one of each place).
+    first, last : dates in words. bounds : whether intervals are given. climatological : whether they span many years.
+    stamps : where in their intervals the times lie. told_in : units in the files, where others are used here.
+    """
+
+    name: str
+    dim: str | None
+    units: str
+    calendar: str
+    steps: int
+    first: str
+    last: str
+    bounds: bool
+    climatological: bool
+    stamps: Stamps
+    told_in: str
+
+
 @dataclass(frozen=True, eq=False)
 class Collection:
     """Everything known of the inputs from their headers.
@@ -83,6 +106,8 @@ class Collection:
     coordinates : name -> source of everything that describes the grid: axes, bounds, 2-D positions, scalars, measures.
     axes, kind, sizes : the reference grid, that of the temperature.
     attributes : global attributes of the first file of the temperature.
+    measures : kind of `MEASURES` -> name among the coordinates.
+    time : what the time axis says, None if there is none.
     """
 
     roles: Mapping[str, RoleSource]
@@ -93,6 +118,8 @@ class Collection:
     files: tuple[FileRecord, ...]
     attributes: Mapping[str, Any]
     notices: tuple[Notice, ...]
+    measures: Mapping[str, str] = field(default_factory=dict)
+    time: TimeReading | None = None
 
     def describe(self) -> list[dict[str, Any]]:
         """One plain row a role, for people and for JSON."""

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -42,9 +43,13 @@ class Grid:
         return head.shape[head.dims.index(dim)] if dim in head.dims else 0
 
     def values(self, name: str | None) -> npt.NDArray[Any] | None:
-        """Values of a coordinate (whole or sampled), as float64."""
+        """Values of a coordinate (whole or sampled), unpacked, as float64; NaN where they are missing."""
         found = self.header.values.get(name) if name else None
-        return None if found is None else found.astype(np.float64)
+        return None if found is None or name is None else _unpacked(found, self.header.heads[name].attrs)
+
+    def in_radians(self, name: str | None) -> bool:
+        """Whether an angle is given in radians."""
+        return self.attribute(name, "units").lower().startswith("rad")
 
     def attribute(self, name: str | None, key: str) -> str:
         """An attribute of a coordinate, '' where absent."""
@@ -68,6 +73,22 @@ def refuse_difference(role: str, grid: Grid, reference_name: str, reference: Gri
     InputError : other dimensions, sizes, positions, levels, or units of the levels.
     """
     what = _other_shape(grid, reference) or _other_positions(grid, reference) or _other_levels(grid, reference)
+    _refuse(what, role, grid, reference_name, reference)
+
+
+def refuse_other_place(role: str, grid: Grid, reference_name: str, reference: Grid) -> None:
+    """Refuse `grid` unless it has the horizontal places of `reference`, whatever its levels."""
+    _refuse(_other_cells(grid, reference) or _other_positions(grid, reference), role, grid, reference_name, reference)
+
+
+def refuse_other_levels(role: str, grid: Grid, reference_name: str, reference: Grid) -> None:
+    """Refuse `grid` unless it has the levels of `reference`."""
+    ours, theirs = grid.size(grid.axes.vertical), reference.size(reference.axes.vertical)
+    what = f"{ours} levels, not {theirs}" if ours != theirs else _other_levels(grid, reference)
+    _refuse(what, role, grid, reference_name, reference)
+
+
+def _refuse(what: str, role: str, grid: Grid, reference_name: str, reference: Grid) -> None:
     if what:
         raise InputError(
             f"the grid differs from that of {reference_name} in {reference.header.path}: {what}",
@@ -81,13 +102,18 @@ def _other_shape(grid: Grid, reference: Grid) -> str:
     if bool(ours.vertical) != bool(theirs.vertical):
         bare, full = (grid, reference) if theirs.vertical else (reference, grid)
         return f"'{bare.variable}' has no levels, '{full.variable}' has {full.size(full.axes.vertical)}"
-    if len(ours.horizontal) != len(theirs.horizontal):
-        return f"horizontal dimensions are {ours.horizontal or 'none'}, not {theirs.horizontal or 'none'}"
-    pairs = [("levels", ours.vertical, theirs.vertical)]
-    pairs += [("cells along " + str(b), a, b) for a, b in zip(ours.horizontal, theirs.horizontal, strict=True)]
-    for noun, own, other in pairs:
+    if grid.size(ours.vertical) != reference.size(theirs.vertical):
+        return f"{grid.size(ours.vertical)} levels, not {reference.size(theirs.vertical)}"
+    return _other_cells(grid, reference)
+
+
+def _other_cells(grid: Grid, reference: Grid) -> str:
+    ours, theirs = grid.axes.horizontal, reference.axes.horizontal
+    if len(ours) != len(theirs):
+        return f"horizontal dimensions are {ours or 'none'}, not {theirs or 'none'}"
+    for own, other in zip(ours, theirs, strict=True):
         if grid.size(own) != reference.size(other):
-            return f"{grid.size(own)} {noun}, not {reference.size(other)}"
+            return f"{grid.size(own)} cells along {other}, not {reference.size(other)}"
     return ""
 
 
@@ -101,8 +127,10 @@ def _other_positions(grid: Grid, reference: Grid) -> str:
             continue
         if ours.shape != theirs.shape:
             return f"{noun} have the shape {ours.shape}, not {theirs.shape}"
+        if grid.in_radians(own) != reference.in_radians(other):
+            return f"{noun} are in radians on one side and in degrees on the other"
         both = _present(ours) & _present(theirs)
-        off = np.abs(ours - theirs)[both]
+        off = np.abs(ours - theirs)[both] * (np.degrees(1.0) if grid.in_radians(own) else 1.0)
         if off.size and float(off.max()) > _DEGREES:
             return f"{noun} are up to {float(off.max()):.6g} degrees off{_likely_reason(ours, theirs)}"
     return ""
@@ -136,6 +164,14 @@ def _other_levels(grid: Grid, reference: Grid) -> str:
         return ""
     level = int(np.argmax(off))
     return f"level {level + 1} is {ours[both][level]:.6g}, not {theirs[both][level]:.6g}"
+
+
+def _unpacked(stored: npt.NDArray[Any], attrs: Mapping[str, Any]) -> npt.NDArray[Any]:
+    values = stored.astype(np.float64)
+    for key in ("_FillValue", "missing_value"):
+        for fill in np.ravel(attrs.get(key, ())):
+            values[stored == fill] = np.nan
+    return values * float(attrs.get("scale_factor", 1.0)) + float(attrs.get("add_offset", 0.0))
 
 
 def _present(values: npt.NDArray[Any]) -> npt.NDArray[np.bool_]:

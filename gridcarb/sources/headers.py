@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 import math
 from collections.abc import Mapping
 from dataclasses import dataclass
@@ -34,6 +35,16 @@ class Header:
     values: Mapping[str, npt.NDArray[Any]]
     record: FileRecord
     kind: Kind = "netcdf"
+
+    @functools.cached_property
+    def pointed(self) -> frozenset[str]:
+        """Variables that others name as their coordinates or bounds."""
+        return frozenset(word for head in self.heads.values() for key in POINTERS for word in words(head.attrs.get(key)))
+
+    @functools.cached_property
+    def edges(self) -> frozenset[str]:
+        """Variables that others name as their bounds."""
+        return frozenset(word for head in self.heads.values() for key in POINTERS[1:] for word in words(head.attrs.get(key)))
 
     def place(self, variable: str) -> str:
         """File and variable, for errors; a dataset in memory has no path."""

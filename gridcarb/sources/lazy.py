@@ -56,12 +56,25 @@ class SegmentedArray(BackendArray):
         """Ask the file in its own order of dimensions, then bring the answer into ours."""
         source = self.source
         asked: list[Any] = [0] * source.file_rank
-        for part, axis in zip(key, source.file_axes, strict=True):
+        pairs = [(part, axis) for part, axis in zip(key, source.file_axes, strict=True) if axis >= 0]
+        for part, axis in pairs:
             asked[axis] = part
         found = read(segment.path, segment.variable, tuple(asked))
-        kept = [axis for part, axis in zip(key, source.file_axes, strict=True) if isinstance(part, (slice, np.ndarray))]
+        kept = [axis for part, axis in pairs if isinstance(part, (slice, np.ndarray))]
         found = found.transpose([sorted(kept).index(axis) for axis in kept])
+        if -1 in source.file_axes:
+            found = self._spread(found, key)
         return found.astype(self.dtype, copy=False)
+
+
+    def _spread(self, found: npt.NDArray[Any], key: tuple[Any, ...]) -> npt.NDArray[Any]:
+        """The one step of a file that has no dimension for it."""
+        place = self.source.file_axes.index(-1)
+        part = key[place]
+        if not isinstance(part, (slice, np.ndarray)):
+            return found
+        before = sum(isinstance(other, (slice, np.ndarray)) for other in key[:place])
+        return np.expand_dims(found, before)[(slice(None),) * before + (part,)]
 
 
 def _with(key: tuple[Any, ...], place: int | None, part: Any) -> tuple[Any, ...]:

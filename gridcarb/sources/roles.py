@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
@@ -12,7 +13,7 @@ from gridcarb.fields import REQUIRED_ROLES, ROLES
 from gridcarb.sources.collection import FileRecord
 from gridcarb.sources.conventions import CONVENTIONS
 from gridcarb.sources.headers import Header
-from gridcarb.sources.stored import POINTERS, Head, words
+from gridcarb.sources.stored import Head
 from gridcarb.sources.zarr_store import heads_of
 
 TOLD = "as told"
@@ -52,28 +53,39 @@ def role_of_standard_name(standard_name: object) -> str | None:
 
 def candidates(role: str, headers: Sequence[Header]) -> list[Candidate]:
     """The variables known best as `role` in any of the files; several if they are known equally well."""
+    return [_candidate(name, order, how, headers) for name, (order, how) in known_as(role, headers).items()]
+
+
+def known_as(role: str, headers: Sequence[Header]) -> dict[str, tuple[int, str]]:
+    """Name -> rank and manner of the variables known best as a role or measure."""
     found: dict[str, tuple[int, str]] = {}
     for header in headers:
-        pointed = {word for head in header.heads.values() for key in POINTERS for word in words(head.attrs.get(key))}
         for name, head in header.heads.items():
-            match = _match(role, head)
-            if match and name not in found and name not in pointed and name not in head.dims:
+            match = None if name in found else roles_of(head).get(role)
+            if match and name not in header.pointed and name not in head.dims:
                 found[name] = match
     best = min((order for order, _ in found.values()), default=0)
-    return [_candidate(name, order, how, headers) for name, (order, how) in found.items() if order == best]
+    return {name: match for name, match in found.items() if match[0] == best}
 
 
-def _match(role: str, head: Head) -> tuple[int, str] | None:
-    """Rank and manner in which a variable is known as `role`; a standard name of something else rules names out."""
-    if head.dtype.kind not in "iuf":
-        return None
+def roles_of(head: Head) -> Mapping[str, tuple[int, str]]:
+    """Role or measure -> rank and manner in which a variable is known as it."""
     standard_name = head.attrs.get("standard_name")
+    if head.dtype.kind not in "iuf":
+        return {}
+    return _roles_of_words(head.name.lower(), standard_name.strip() if isinstance(standard_name, str) else "")
+
+
+@functools.lru_cache(maxsize=10_000)
+def _roles_of_words(name: str, standard_name: str) -> Mapping[str, tuple[int, str]]:
+    """A standard name of something else rules out what the name says."""
+    found: dict[str, tuple[int, str]] = {}
     for convention in sorted(CONVENTIONS.values(), key=lambda entry: entry.order):
         by_name = convention.attribute == "name"
-        word = head.name.lower() if by_name else standard_name
-        if word in convention.words.get(role, ()) and not (by_name and standard_name):
-            return convention.order, convention.how()
-    return None
+        for role, known in convention.words.items():
+            if (name if by_name else standard_name) in known and not (by_name and standard_name):
+                found.setdefault(role, (convention.order, convention.how()))
+    return found
 
 
 def _candidate(name: str, order: int, how: str, headers: Sequence[Header]) -> Candidate:
@@ -112,8 +124,9 @@ def told(role: str, name: str, headers: Sequence[Header]) -> Candidate:
 
 def _fields_of(header: Header) -> list[str]:
     """Variables that are no coordinates."""
-    pointed = {word for head in header.heads.values() for key in POINTERS for word in words(head.attrs.get(key))}
-    return [name for name, head in header.heads.items() if name not in pointed and head.dims and name not in head.dims]
+    return [
+        name for name, head in header.heads.items() if name not in header.pointed and head.dims and name not in head.dims
+    ]
 
 
 def settle(

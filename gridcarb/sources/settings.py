@@ -8,6 +8,8 @@ from pydantic import Field, field_validator
 
 from gridcarb.fields import ROLES
 from gridcarb.settings import Settings
+from gridcarb.sources.conventions import MEASURES
+from gridcarb.sources.dates import Months
 
 
 class RoleInput(Settings):
@@ -25,25 +27,37 @@ class RoleInput(Settings):
 class InputsSettings(Settings):
     """Files and roles. A path is relative to the recipe; a role may be given as a bare variable name."""
 
-    files: tuple[str, ...] = Field((), description="NetCDF files, globs, or Zarr stores shared by all roles")
+    files: tuple[str, ...] = Field(
+        (), description="NetCDF files, globs, Zarr stores or URLs shared by all roles; FILE#GROUP reads a group",
+    )
     temperature: RoleInput | None = None
     salinity: RoleInput | None = None
     dic: RoleInput | None = None
     alkalinity: RoleInput | None = None
     phosphate: RoleInput | None = None
     silicate: RoleInput | None = None
+    area: RoleInput | None = Field(None, description="horizontal area of the cells; found by itself in the shared files")
+    volume: RoleInput | None = Field(None, description="volume of the cells")
+    thickness: RoleInput | None = Field(None, description="thickness of the cells, also changing in time")
+    sea_fraction: RoleInput | None = Field(None, description="share of a cell's area that is sea")
+    basin: RoleInput | None = Field(None, description="number of the sea basin a cell belongs to")
+    sea_floor_depth: RoleInput | None = Field(None, description="depth of the sea floor")
     time_gaps: Literal["refuse", "accept"] = Field("refuse", description="steps missing from the time axis")
+    months: Months = Field(
+        "refuse", description="what times in 'months since' a date mean: months of the calendar, or mean months (a twelfth "
+        "of 365.2422 days); years likewise",
+    )
 
     @field_validator("files", mode="before")
     @classmethod
     def _one_or_many(cls, value: object) -> object:
         return (value,) if isinstance(value, str) else value
 
-    @field_validator(*ROLES, mode="before")
+    @field_validator(*ROLES, *MEASURES, mode="before")
     @classmethod
     def _bare_name(cls, value: object) -> object:
         return {"variable": value} if isinstance(value, str) else value
 
     def role(self, key: str) -> RoleInput:
-        """The settings of one role, empty if the recipe says nothing of it."""
+        """The settings of one role or measure, empty if the recipe says nothing of it."""
         return getattr(self, key) or RoleInput()

@@ -5,14 +5,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Container, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, Literal
 
-from gridcarb.errors import GridcarbError
+from gridcarb.errors import Faults, GridcarbError
 from gridcarb.sources.collection import Collection, FileRecord
+from gridcarb.sources.conventions import MEASURES
+from gridcarb.sources.gather import Explored, explore
+from gridcarb.sources.headers import Header
+from gridcarb.sources.roles import roles_of
 from gridcarb.sources.settings import InputsSettings
+from gridcarb.sources.stored import Head
 
 Part = Literal["field", "coordinate", "bounds", "measure", "other"]
 
@@ -100,9 +105,81 @@ def survey(settings: InputsSettings, base: Path) -> Survey:
     settings : the `inputs` section of a recipe.
     base : the folder its relative paths start from.
     """
-    from gridcarb.sources.gather import gather
+    faults = Faults()
+    found = explore(settings, base, faults)
+    taken: dict[str, str] = {role: one.variable for role, one in found.chosen.items()}
+    taken |= {kind: part.variable for kind, part in found.measures.parts.items()}
+    how = {role: one.how for role, one in found.chosen.items()} | {
+        kind: part.how for kind, part in found.measures.parts.items()
+    }
+    open_to = {key: {header.path for header in headers} for key, headers in found.looked.groups.items()}
+    files = tuple(
+        _file(path, header, found, {key for key, paths in open_to.items() if _path(header) in paths}, taken, how)
+        for path, header in found.looked.files.items()
+    )
+    return Survey(files, tuple(faults.found), found.collection)
 
-    try:
-        return Survey((), (), gather(settings, base))
-    except GridcarbError as error:
-        return Survey((), (error,), None)
+
+def _path(header: Header | GridcarbError) -> str:
+    return header.path if isinstance(header, Header) else ""
+
+
+def _file(
+    path: str, header: Header | GridcarbError, found: Explored, open_to: Container[str], taken: Mapping[str, str],
+    how: Mapping[str, str],
+) -> FileSurvey:
+    if isinstance(header, GridcarbError):
+        return FileSurvey(path, "", None, {}, (), header)
+    coordinates = set(found.collection.coordinates if found.collection else ())
+    variables = tuple(
+        _variable(head, _part(head, header, coordinates), open_to, taken, how) for head in header.heads.values()
+    )
+    return FileSurvey(header.path, header.kind, header.record, header.attrs, variables)
+
+
+def _variable(
+    head: Head, part: Part, open_to: Container[str], taken: Mapping[str, str], how: Mapping[str, str]
+) -> VariableSurvey:
+    known = {role: match[1] for role, match in roles_of(head).items() if part in ("field", "measure")}
+    known |= {role: how[role] for role, name in taken.items() if name == head.name}
+    chances = tuple(_chance(role, said, head.name, taken.get(role), role in open_to) for role, said in known.items())
+    standard_name = str(head.attrs.get("standard_name", "")).strip()
+    return VariableSurvey(
+        head.name, dict(zip(head.dims, head.shape, strict=True)), str(head.dtype), str(head.attrs.get("units", "")),
+        standard_name, str(head.attrs.get("long_name", "")), head.attrs, head.chunks, head.compression,
+        "measure" if any(chance.role in MEASURES for chance in chances) else part, chances,
+        "" if chances else _why_none(head, part, standard_name),
+    )
+
+
+def _chance(role: str, how: str, name: str, taken: str | None, searched: bool) -> Chance:
+    if not searched:
+        return Chance(role, how, False, f"the recipe names other files for the {role}")
+    if taken == name:
+        return Chance(role, how, True, "taken")
+    if taken is not None:
+        return Chance(role, how, False, f"'{taken}' is taken: told, known better, or with the levels of the other roles")
+    return Chance(role, how, False, f"not settled: several can be the {role}, or it does not fit")
+
+
+def _part(head: Head, header: Header, coordinates: Container[str]) -> Part:
+    """What a variable is in its file, whatever role it may play."""
+    if head.name in header.edges:
+        return "bounds"
+    placing = head.attrs.get("standard_name") in ("latitude", "longitude", "time")
+    if head.name in header.pointed or head.name in head.dims or placing:
+        return "coordinate"
+    if head.dtype.kind not in "iuf" or not head.dims:
+        return "other"
+    return "field" if head.name not in coordinates or roles_of(head) else "coordinate"
+
+
+def _why_none(head: Head, part: Part, standard_name: str) -> str:
+    """Why a variable plays no role."""
+    if part in ("coordinate", "bounds"):
+        return f"it is {'bounds' if part == 'bounds' else 'a coordinate'}"
+    if head.dtype.kind not in "iuf":
+        return "it holds no numbers"
+    if standard_name:
+        return f"its standard_name '{standard_name}' is none that gridcarb reads"
+    return "it has no standard_name, and no convention knows its name"

@@ -4,44 +4,18 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
-from typing import Any
 
 import cftime
 import numpy as np
-import numpy.typing as npt
 
 from gridcarb.errors import InputError, Notice
+from gridcarb.sources.dates import Numbers, Units
 
-Numbers = npt.NDArray[Any]
-
-_SAME_CALENDAR = {"gregorian": "standard", "noleap": "365_day", "all_leap": "366_day"}
 _LONG_STEP = 1.5
 """Times the median step: months of 28 to 31 days and leap years pass, a missing month or year does not."""
 _SHORT_STEP = 0.5
 _CLOSE = 1e-3
 """Share of a step by which times or bounds may differ and still be the same."""
-
-
-@dataclass(frozen=True)
-class Units:
-    """Units and calendar of a time axis; units may be empty (a bare counter)."""
-
-    units: str
-    calendar: str
-
-    @classmethod
-    def of(cls, attrs: Any) -> Units:
-        """As the attributes of a time coordinate say; the calendar of CF is the default."""
-        calendar = str(attrs.get("calendar", "standard")).strip().lower()
-        return cls(str(attrs.get("units", "")).strip(), _SAME_CALENDAR.get(calendar, calendar))
-
-    def date(self, value: float) -> str:
-        """A time for people: a date where the units allow one, else the number with its units."""
-        try:
-            date = cftime.num2date(float(value), self.units, self.calendar)
-        except (ValueError, TypeError, OverflowError):
-            return f"{value:g} {self.units}".strip()
-        return str(date.strftime("%Y-%m-%d" if (date.hour, date.minute) == (0, 0) else "%Y-%m-%d %H:%M")).strip()
 
 
 @dataclass(frozen=True)

@@ -12,6 +12,9 @@ from typing import Literal
 from gridcarb.fields import FIELDS
 from gridcarb.shelf import Shelf, load_folder
 
+MEASURES: tuple[str, ...] = ("area", "volume", "thickness", "sea_fraction", "basin", "sea_floor_depth")
+"""What a file may tell of the cells themselves, beside their place."""
+
 
 @dataclass(frozen=True)
 class Convention:
@@ -21,7 +24,7 @@ class Convention:
     title : how a person would say it, as in "by name (title)".
     order : rank among the conventions, smallest first.
     attribute : what the words are compared with: the attribute standard_name, or the variable's name (in lower case).
-    words : role -> words.
+    words : role, or kind of measure -> words.
     """
 
     key: str
@@ -32,7 +35,8 @@ class Convention:
 
     def __post_init__(self) -> None:
         for role in self.words:
-            FIELDS[role]
+            if role not in MEASURES:
+                FIELDS[role]
 
     def how(self) -> str:
         """The kind of match, in words."""

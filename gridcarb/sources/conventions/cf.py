@@ -33,5 +33,14 @@ declare(Convention(
             "mole_concentration_of_dissolved_inorganic_silicon_in_sea_water",
             "mass_concentration_of_silicate_in_sea_water",
         ),
+        "area": ("cell_area",),
+        "volume": ("ocean_volume",),
+        "thickness": ("cell_thickness",),
+        "sea_fraction": ("sea_area_fraction",),
+        "basin": ("region",),
+        "sea_floor_depth": (
+            "sea_floor_depth_below_geoid", "sea_floor_depth_below_mean_sea_level", "sea_floor_depth_below_sea_surface",
+            "sea_floor_depth_below_reference_ellipsoid",
+        ),
     },
 ))

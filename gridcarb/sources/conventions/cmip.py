@@ -13,5 +13,11 @@ declare(Convention(
         "alkalinity": ("talk", "talkos"),
         "phosphate": ("po4", "po4os"),
         "silicate": ("si", "sios"),
+        "area": ("areacello",),
+        "volume": ("volcello",),
+        "thickness": ("thkcello",),
+        "sea_fraction": ("sftof",),
+        "basin": ("basin",),
+        "sea_floor_depth": ("deptho",),
     },
 ))

@@ -9,12 +9,12 @@ declare(Convention(
     words={
         "temperature": (
             "temperature", "temp", "theta", "ptemp", "potential_temperature", "conservative_temperature",
-            "sea_water_temperature", "sst",
+            "sea_water_temperature", "sst", "t_an", "tpot", "ctd_temperature", "pt",
         ),
-        "salinity": ("salinity", "sal", "psal", "practical_salinity", "absolute_salinity", "sss"),
-        "dic": ("dic", "tco2", "ct", "dissolved_inorganic_carbon", "total_carbon"),
-        "alkalinity": ("alkalinity", "total_alkalinity", "alk", "ta", "tot_alk"),
-        "phosphate": ("phosphate", "phos", "dip"),
-        "silicate": ("silicate", "silicic_acid", "silica", "dsi", "sioh4", "si_oh_4"),
+        "salinity": ("salinity", "sal", "psal", "practical_salinity", "absolute_salinity", "sss", "s_an"),
+        "dic": ("dic", "tco2", "ct", "dissolved_inorganic_carbon", "total_carbon", "sumco2", "totco2", "tcarbn"),
+        "alkalinity": ("alkalinity", "total_alkalinity", "alk", "ta", "tot_alk", "at"),
+        "phosphate": ("phosphate", "phos", "dip", "p_an", "phspht"),
+        "silicate": ("silicate", "silicic_acid", "silica", "dsi", "sioh4", "si_oh_4", "i_an", "silcat"),
     },
 ))

@@ -8,13 +8,13 @@ from importlib.resources import files
 import pytest
 
 from gridcarb.fields import REQUIRED_ROLES, ROLES
-from gridcarb.sources.conventions import CONVENTIONS, Convention
+from gridcarb.sources.conventions import CONVENTIONS, MEASURES, Convention
 
 
 @pytest.mark.parametrize("key", list(CONVENTIONS))
 def test_a_convention_is_sound(key: str) -> None:
     convention = CONVENTIONS[key]
-    assert set(convention.words) <= set(ROLES)
+    assert set(convention.words) <= {*ROLES, *MEASURES}
     assert set(convention.words) >= set(REQUIRED_ROLES)
     words = [word for known in convention.words.values() for word in known]
     assert len(words) == len(set(words))

@@ -212,7 +212,8 @@ def test_the_real_global_state(gathered, name: str) -> None:
     assert dict(collection.sizes) == {"depth": 15, "lat": 64, "lon": 128}
     ds = open_collection(collection)
     assert "rhoConst=1035" in ds.attrs["source"]
-    assert set(ds.coords) == {"depth", "lat", "lon", "depth_bnds"}
+    assert set(ds.coords) == {"depth", "lat", "lon", "depth_bnds", "deptho"}
+    assert collection.measures == {"sea_floor_depth": "deptho"}
     with xr.open_dataset(folder / name, decode_cf=False) as raw:
         for role, source in collection.roles.items():
             np.testing.assert_array_equal(ds[role], raw[source.variable])

@@ -89,6 +89,8 @@ GRIDS: dict[str, Callable[[], Mesh]] = {
     "raster_without_bounds": partial(plain_meshes.raster, bounds=False),
     "tripolar_edge_fold": planes.tripolar,
     "tripolar_centre_fold": partial(planes.tripolar, fold="centre", west=72.5, dims=("y", "x"), names=("lat", "lon")),
+    "tripolar_edge_fold_at_sea": partial(planes.tripolar, south=True),
+    "tripolar_centre_fold_at_sea": partial(planes.tripolar, south=True, fold="centre", dims=("y", "x"), west=-180.0),
     "tripolar_without_halo": partial(planes.tripolar, halo=False, west=-180.0, dims=("nlat", "nlon")),
     "tripolar_land_masked": partial(_without_land, "masked"),
     "tripolar_land_zero": partial(_without_land, "zero"),

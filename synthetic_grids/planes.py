@@ -30,6 +30,9 @@ CAP_ROWS = 4
 FOLD_LONGITUDE = 352.5
 """Degrees east of the grid pole from which the columns of the tripolar mesh are counted; a cell edge of the raster."""
 
+SOUTHERN_FOLD_LONGITUDE = 262.5
+"""The same for a fold in the south: this pole lies on Yskerra, the other at sea, and so does most of the fold."""
+
 BIPOLE_LONGITUDE = 356.25
 """Degrees east of the first pole of the bipolar mesh: the meridians of the landmarks lie midway between its poles."""
 
@@ -55,7 +58,7 @@ def _corners(lon: Numbers, lat: Numbers) -> tuple[Numbers, Numbers]:
     return four(lon), four(lat)
 
 
-def _tripolar_at(columns: Numbers, rows: Numbers) -> tuple[Numbers, Numbers]:
+def _tripolar_at(columns: Numbers, rows: Numbers, origin: float) -> tuple[Numbers, Numbers]:
     """Degrees east and north at columns (degrees east of the fold's pole) and rows.
 
     Rows count cells: up to the edge of the cap a row is 7.5 degrees of latitude from the south pole on; above, it is
@@ -63,26 +66,28 @@ def _tripolar_at(columns: Numbers, rows: Numbers) -> tuple[Numbers, Numbers]:
     """
     plain = round((90.0 + CAP) / STEP)
     around = np.mod(columns, 360.0)
-    lon, lat = np.broadcast_arrays(around[None, :] + FOLD_LONGITUDE, (-90.0 + STEP * rows)[:, None])
+    lon, lat = np.broadcast_arrays(around[None, :] + origin, (-90.0 + STEP * rows)[:, None])
     # The far half of the circle is the near half seen in the mirror of the line between the poles.
     far = around > 180.0
     capped = 90.0 * (1.0 + (rows - plain) / CAP_ROWS)
     cap_lon, cap_lat = between_poles(np.where(far, 360.0 - around, around)[None, :], capped[:, None], 0.0)
-    cap_lon = np.where(far, -cap_lon, cap_lon) + FOLD_LONGITUDE
+    cap_lon = np.where(far, -cap_lon, cap_lon) + origin
     in_cap = rows[:, None] > plain
     return eastward(np.where(in_cap, cap_lon, lon)), settled(np.where(in_cap, cap_lat, lat))
 
 
 def tripolar(
-    *, fold: Literal["edge", "centre"] = "edge", halo: bool = True, west: float = -280.0,
+    *, fold: Literal["edge", "centre"] = "edge", halo: bool = True, west: float = -280.0, south: bool = False,
     dims: tuple[str, str] = ("j", "i"), names: tuple[str, str] = ("latitude", "longitude"),
 ) -> Mesh:
-    """A global tripolar mesh: the raster south of 60 degrees north, a cap with two poles on land above.
+    """A global tripolar mesh: the raster south of 60 degrees north, a cap with two poles above.
 
     fold : with "edge" the last row but one ends at the fold, and the last row is its mirror image; with "centre" a row
         lies on the fold, so that its right half repeats its left half, and the last row mirrors the row before it.
     halo : one more column on either side, copies of the column at the other end.
     west : longitudes in the file run from here over 360 degrees; -280 puts them on neither usual convention.
+    south : the whole mesh upside down, the fold at the south pole and in the first rows. The northern fold lies on land
+        from end to end, as the pole does; the southern one crosses water.
     """
     plain = round((90.0 + CAP) / STEP)
     count = LONGITUDES.size
@@ -91,8 +96,9 @@ def tripolar(
     edges = np.concatenate([np.arange(float(plain)), plain + tall * np.arange(CAP_ROWS + 1.0)])
     row_middles = (edges[1:] + edges[:-1]) / 2.0
     columns = STEP * np.arange(count + 1.0)
-    lon, lat = _tripolar_at(columns[:-1] + STEP / 2.0, row_middles)
-    corner_lon, corner_lat = _corners(*_tripolar_at(columns, edges))
+    origin = SOUTHERN_FOLD_LONGITUDE if south else FOLD_LONGITUDE
+    lon, lat = _tripolar_at(columns[:-1] + STEP / 2.0, row_middles, origin)
+    corner_lon, corner_lat = _corners(*_tripolar_at(columns, edges, origin))
     mirrored = slice(-1, None) if fold == "edge" else slice(-2, -1)
 
     def with_fold(values: Numbers) -> Numbers:
@@ -106,6 +112,11 @@ def tripolar(
     if halo:
         arrays = [np.concatenate([values[:, -1:], values, values[:, :1]], axis=1) for values in arrays]
         repeats = np.pad(repeats, ((0, 0), (1, 1)), constant_values=True)
+    if south:
+        # Upside down, corners would run clockwise: they are taken in the other order.
+        arrays = [turned if turned.ndim == 2 else turned[..., ::-1] for turned in (values[::-1] for values in arrays)]
+        arrays[1::2] = [-latitudes for latitudes in arrays[1::2]]
+        repeats = repeats[::-1]
     return plane(*arrays, dims=dims, names=names, west=west, repeats=repeats)
 
 

@@ -20,6 +20,8 @@ SPHERE = 4.0 * np.pi * (1e3 * RADIUS_KM) ** 2
 WHOLE = {
     "raster": plain_meshes.raster(), "westward": plain_meshes.raster(-180.0, southward=True, westward=True),
     "tripolar edge": planes.tripolar(), "tripolar centre": planes.tripolar(fold="centre", halo=False, west=72.5),
+    "tripolar edge at sea": planes.tripolar(south=True),
+    "tripolar centre at sea": planes.tripolar(south=True, fold="centre", halo=False),
     "bipolar": planes.bipolar(), "rotated": planes.rotated(),
 }
 PARTIAL = {
@@ -73,7 +75,7 @@ def test_cells_tile_the_sphere(name: str) -> None:
         assert wedge.min() >= -1e-3, corner
 
 
-@pytest.mark.parametrize("name", ["tripolar edge", "tripolar centre"])
+@pytest.mark.parametrize("name", [name for name in WHOLE if name.startswith("tripolar")])
 def test_copies_repeat_a_cell_that_counts(name: str) -> None:
     mesh = WHOLE[name]
     assert mesh.repeats is not None
@@ -82,7 +84,7 @@ def test_copies_repeat_a_cell_that_counts(name: str) -> None:
     once = Counter(place for place, copy in zip(near, repeats, strict=True) if not copy)
     assert set(once.values()) == {1}
     assert all(place in once for place, copy in zip(near, repeats, strict=True) if copy)
-    assert repeats.sum() == (50 + 2 * 24 if name == "tripolar edge" else 48 + 24)
+    assert repeats.sum() == (50 + 2 * 24 if "edge" in name else 48 + 24)
 
 
 def test_fold_joins_the_two_halves_of_the_top_row() -> None:
@@ -97,6 +99,18 @@ def test_fold_joins_the_two_halves_of_the_top_row() -> None:
     assert lon[0, 3] == pytest.approx(planes.FOLD_LONGITUDE)
     assert lat[23, 2] == pytest.approx(planes.CAP)
     assert lat[:24, 2].max() == pytest.approx(90.0)
+
+
+@pytest.mark.parametrize("name", ["tripolar edge at sea", "tripolar centre at sea"])
+def test_southern_fold_crosses_water(name: str) -> None:
+    """Copies of cells with water, so that a sum that counts them twice is wrong; the first row is the fold's."""
+    mesh = WHOLE[name]
+    assert mesh.repeats is not None
+    assert mesh.repeats[0].all()
+    wet = sea_floor_depth(mesh.longitude, mesh.latitude) > 0.0
+    assert (wet & mesh.repeats)[:2].sum() > 30
+    assert mesh.latitude[0].max() < -60.0
+    assert np.all(np.diff(mesh.latitude[6:, 1]) == 7.5)
 
 
 def test_map_between_poles_by_hand() -> None:

@@ -66,7 +66,8 @@ def read_thickness(raw: xr.Dataset, axes: Axes, vertical: VerticalReading) -> De
     name = _find(raw, axes, frozenset({"cell_thickness"}), _THICKNESSES, {axes.vertical} - {None})
     if name is not None:
         reading = ThicknessReading("given", levels, name, _metres(raw, name), masks=_masks(raw, (name,)))
-        return Decided(reading, (Decision("cell thickness", "as the files give it", f"'{name}'"),))
+        nominal = ", the pressure of a cut cell that of its level" if {*raw[name].dims} & {*axes.horizontal} else ""
+        return Decided(reading, (Decision("cell thickness", f"as the files give it{nominal}", f"'{name}'"),))
     coordinate = axes.vertical_coordinate
     if vertical.kind == "surface" or coordinate is None:
         return Decided(None)

@@ -155,3 +155,81 @@ def test_radians_become_degrees(ocean: Ocean) -> None:
     raw = ocean()
     turned = raw.assign_coords(lat=("lat", np.radians(raw.lat.values), {"units": "radian", "standard_name": "latitude"}))
     np.testing.assert_allclose(place(turned).pressure, place(raw).pressure, rtol=1e-12)
+
+
+def with_field(raw: xr.Dataset, dims: tuple[str, ...], factor: float = 1.0, **attrs: Any) -> xr.Dataset:
+    """The levels as depths of every cell, deeper by a hundredth from column to column, in place of the coordinate."""
+    deeper = 1.0 + 0.01 * xr.DataArray(np.arange(raw.sizes["lon"]), dims="lon")
+    template = raw.dic.reset_coords(drop=True)
+    field = (raw.depth.drop_vars("depth") * deeper * factor).broadcast_like(template).transpose(*template.dims)
+    field = field.isel({dim: 0 for dim in field.dims if dim not in dims})
+    said = {"units": "m", "standard_name": "depth", "positive": "down", "_FillValue": 1e20, **attrs}
+    return raw.drop_vars("depth").assign_coords(deep=(dims, field.values.copy(), said))
+
+
+@pytest.mark.parametrize("dims", [("depth", "lon"), ("depth", "lat", "lon"), ("time", "depth", "lat", "lon")])
+def test_a_depth_of_every_cell(ocean: Ocean, dims: tuple[str, ...]) -> None:
+    raw = with_field(ocean(), dims)
+    if "lat" in dims:
+        raw.deep.values[..., 0, 0] = 1e20
+    found = place(raw).pressure
+    assert set(found.dims) == {*dims, "lat"}
+    cell = found.isel(depth=2, lat=3, lon=4)
+    np.testing.assert_array_equal(cell, gsw.p_from_z(-1000.0 * (1.0 + 0.01 * 4.0), float(raw.lat[3])))
+    assert bool(found.isel(lat=0, lon=0).isnull().all()) == ("lat" in dims)
+    reading = read(raw).reading.vertical
+    assert reading.deepest == pytest.approx(4200.0)
+    assert (reading.shallowest, reading.top) == (5.0, 0)
+
+
+def test_a_depth_of_every_cell_goes_before_numbers_of_levels(ocean: Ocean) -> None:
+    raw = with_field(ocean(), ("depth", "lat", "lon"))
+    raw = raw.assign_coords(depth=("depth", np.arange(1.0, 5.0), {"axis": "Z", "long_name": "number of the level"}))
+    assert read(raw).reading.vertical.deepest == pytest.approx(4200.0)
+
+
+def test_heights_in_centimetres_from_the_deep_up(ocean: Ocean) -> None:
+    raw = with_field(ocean().isel(depth=slice(None, None, -1)), ("depth", "lat", "lon"), -100.0, units="cm", positive="up",
+                     standard_name="height")
+    reading = read(raw).reading.vertical
+    assert reading.deepest == pytest.approx(4200.0)
+    assert (reading.top, reading.downward) == (3, False)
+
+
+def test_a_pressure_of_every_cell(ocean: Ocean) -> None:
+    raw = with_field(ocean(), ("depth", "lat", "lon"), units="dbar", standard_name="sea_water_pressure_due_to_sea_water")
+    assert float(place(raw).pressure[2, 3, 4]) == 1000.0 * (1.0 + 0.01 * 4.0)
+
+
+def test_water_in_a_corner_of_a_large_map_is_found(ocean: Ocean) -> None:
+    raw = with_field(ocean(rows=300, columns=200), ("depth", "lat", "lon"))
+    raw.deep.values[:, :, 15:] = 1e20
+    raw.deep.values[:, :170, :] = 1e20
+    raw.deep.values[:, 190:, :] = 1e20
+    assert read(raw).reading.vertical.deepest == pytest.approx(4000.0 * 1.14)
+    raw.deep.values[...] = 1e20
+    with pytest.raises(InputError, match="all its values are missing"):
+        read(raw)
+
+
+@pytest.mark.parametrize(("attrs", "values"), [({"units": "km"}, 1.0), ({"units": "cm", "positive": "down"}, 1e5)])
+def test_scalar_depth_in_other_units(ocean: Ocean, attrs: dict[str, Any], values: float) -> None:
+    raw = ocean().isel(depth=2).assign_coords(depth=((), values, {"standard_name": "depth", **attrs}))
+    np.testing.assert_array_equal(place(raw).pressure, gsw.p_from_z(-1000.0, raw.lat.values))
+
+
+def test_one_depth_gives_the_same_bits_in_every_clothing(ocean: Ocean) -> None:
+    raw = ocean(depths=(5.0, 128.0, 1024.0, 4096.0))
+    wanted = place(raw).pressure.values.tobytes()
+    depths = raw.depth.values
+    for values, attrs in (
+        (-depths, {"units": "m", "positive": "up"}), (depths * 100.0, {"units": "cm", "positive": "down"}),
+        (-depths, {"units": "m", "standard_name": "height_above_mean_sea_level"}),
+    ):
+        turned = raw.assign_coords(depth=("depth", values, {"axis": "Z", **attrs}))
+        assert place(turned).pressure.values.tobytes() == wanted
+        upside = place(turned.isel(depth=slice(None, None, -1))).pressure.values[::-1]
+        assert np.ascontiguousarray(upside).tobytes() == wanted
+    field = raw.drop_vars("depth").assign_coords(deep=(("depth", "lat"), np.repeat(depths[:, None], 5, axis=1),
+                                                       {"units": "m", "standard_name": "depth"}))
+    assert place(field).pressure.values.tobytes() == wanted

@@ -4,11 +4,13 @@ from __future__ import annotations
 
 import importlib
 from collections.abc import Sequence
-from typing import TYPE_CHECKING, Protocol
+from typing import TYPE_CHECKING, Literal, Protocol
 
 from gridcarb.errors import Notice
 
 if TYPE_CHECKING:
+    from pathlib import Path
+
     from gridcarb.recipe import Recipe
 
 
@@ -53,6 +55,20 @@ class Outcome(Protocol):
         """What was read, computed and written, and what to look at first."""
 
 
+class Audit(Protocol):
+    """Inputs that have been looked at."""
+
+    @property
+    def worst(self) -> str:
+        """The worst level of its findings: fine, assumed or stop."""
+
+    def report(self) -> Report:
+        """What was found."""
+
+    def starter(self, path: Path) -> str:
+        """A recipe for it, to be kept at `path`."""
+
+
 class Watcher(Protocol):
     """One who looks on while a run works; called from one thread."""
 
@@ -62,11 +78,29 @@ class Watcher(Protocol):
     def block_done(self, cells: int, note: str = "") -> None:
         """A block is finished; a note, if any, is worth a line."""
 
+    def block_failed(self, note: str) -> None:
+        """A block failed for good."""
+
+    def strength(self, workers: int, resident: int) -> None:
+        """Every few seconds: how many blocks are done at a time, and the bytes all processes have resident."""
+
     def message(self, text: str) -> None:
         """Something worth telling at once."""
 
     def stop(self) -> None:
         """The run is over, well or not; may be called twice."""
+
+
+def audit_files(files: Sequence[str]) -> Audit:
+    """The audit of files, globs or stores."""
+    audit: Audit = importlib.import_module("gridcarb.run").audit_files(files)
+    return audit
+
+
+def audit_recipe(recipe: Recipe) -> Audit:
+    """The audit of a recipe with its inputs."""
+    audit: Audit = importlib.import_module("gridcarb.run").audit_recipe(recipe)
+    return audit
 
 
 def prepare(recipe: Recipe) -> Plan:
@@ -75,7 +109,7 @@ def prepare(recipe: Recipe) -> Plan:
     return plan
 
 
-def conduct(plan: Plan, watcher: Watcher) -> Outcome:
-    """Carry a plan out."""
-    outcome: Outcome = importlib.import_module("gridcarb.run").conduct(plan, watcher)
+def conduct(plan: Plan, watcher: Watcher, manner: Literal["new", "resume", "anew"]) -> Outcome:
+    """Carry a plan out, from the start or from where an interrupted run ended."""
+    outcome: Outcome = importlib.import_module("gridcarb.run").conduct(plan, watcher, manner)
     return outcome

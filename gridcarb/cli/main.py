@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import click
 
+from gridcarb.cli.audit import audit
 from gridcarb.cli.listings import fields, keys
 from gridcarb.cli.terminal import Door, debug_option, exit_codes
 from gridcarb.cli.work import plan, run
@@ -20,6 +21,7 @@ def main() -> None:
     A recipe names the files and the fields wanted; gridcarb computes them cell by cell and writes Zarr, NetCDF and maps.
 
     \b
+    gridcarb audit 'model/*.nc'               what lies in files, and how it would be read
     gridcarb plan recipes/first_look.yaml     what would be done, from headers only
     gridcarb run recipes/first_look.yaml      do it
     gridcarb fields                           what can be computed
@@ -27,5 +29,5 @@ def main() -> None:
     """
 
 
-for command in (run, plan, fields, keys):
+for command in (run, plan, audit, fields, keys):
     main.add_command(command)

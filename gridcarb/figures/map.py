@@ -108,16 +108,18 @@ def draw(result: xr.Dataset, settings: MapSettings, folder: Path) -> Path:
         )
     check(result, settings)
     choice = _chosen(result, settings)
-    return publish(plate_of(result, choice, settings), folder / (settings.file or _file_name(settings, choice)))
+    return publish(plate_of(result, choice, settings), folder / file_name(result, settings))
 
 
 def _chosen(ds: xr.Dataset, settings: MapSettings) -> Choice:
     return choose(ds, settings.field, settings.depth, settings.time)
 
 
-def _file_name(settings: MapSettings, choice: Choice) -> str:
-    """Field, depth, time, and how it is looked at when that was said."""
-    place = ""
+def file_name(header: xr.Dataset, settings: MapSettings) -> str:
+    """As the recipe says, else field, depth, time, and how it is looked at when that was said."""
+    if settings.file:
+        return settings.file
+    choice, place = _chosen(header, settings), ""
     if settings.region:
         place = "_".join(f"{edge:g}" for edge in settings.region)
     elif settings.projection != "automatic":
@@ -125,4 +127,4 @@ def _file_name(settings: MapSettings, choice: Choice) -> str:
     return "_".join(part for part in (settings.field, choice.level.slug, choice.moment.slug, place) if part) + ".png"
 
 
-FIGURES.put("map", FigureKind(MapSettings, check, draw))
+FIGURES.put("map", FigureKind(MapSettings, check, draw, file_name))

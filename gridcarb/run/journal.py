@@ -37,7 +37,7 @@ def journal_head(plan: Plan, begun: datetime, notices: Sequence[Notice], resumed
         ],
         "versions": {"python": platform.python_version(), **{name: version(name) for name in _LIBRARIES}},
         "constants": _constants(recipe.chemistry.constants),
-        "engine": recipe.engine.model_dump(),
+        "engine": {"kind": recipe.engine.chosen, **recipe.engine.model_dump(exclude_none=True)},
         "plan": plan_data(plan, notices),
         "audit": audit_data(plan.survey, plan.findings),
     }

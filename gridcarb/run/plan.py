@@ -3,23 +3,27 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import numpy as np
 import xarray as xr
 
-from gridcarb.errors import Notice
+from gridcarb.errors import Fault, Faults, GridcarbError, Notice, RecipeError
 from gridcarb.fields import FIELDS, Field
 from gridcarb.figures import FIGURES
-from gridcarb.harmonise import Understanding, understand, weigh
+from gridcarb.harmonise import Understanding
 from gridcarb.recipe import Recipe
+from gridcarb.recipe.text import parse
 from gridcarb.run.blocks import Layout, lay_out, reads_of_a_chunk
 from gridcarb.run.budget import Footprint, allowed_per_task, refuse_over_budget
 from gridcarb.run.engine import cores
+from gridcarb.run.findings import Finding, assumptions, stops
+from gridcarb.run.inspection import Inspection, inspect
 from gridcarb.run.task import Job
-from gridcarb.sources import Collection, gather, open_collection
+from gridcarb.sources import Collection
+from gridcarb.sources.survey import Survey
 from gridcarb.write.amounts import per_volume, per_volume_field
 from gridcarb.write.folder import ResultFolder
 from gridcarb.write.validate import check_grid
@@ -39,6 +43,7 @@ class Plan:
 
     fields : what will be written, the status last, as it will be written (per mass or per volume).
     footprint, allowed : memory of a cell, and of a task, in bytes.
+    survey, findings : the whole report of the audit.
     """
 
     recipe: Recipe
@@ -50,13 +55,9 @@ class Plan:
     footprint: Footprint
     allowed: int
     folder: ResultFolder
-    grid_notices: tuple[Notice, ...] = ()
-
-    @property
-    def notices(self) -> tuple[Notice, ...]:
-        """What was decided for the user, each once."""
-        found = (*self.collection.notices, *self.understanding.notices, *self.grid_notices)
-        return tuple({(notice.code, notice.text): notice for notice in found}.values())
+    survey: Survey
+    notices: tuple[Notice, ...] = ()
+    findings: tuple[Finding, ...] = ()
 
     @property
     def bytes_in(self) -> int:
@@ -88,22 +89,61 @@ class Plan:
         return plan_report(self)
 
 
+@dataclass(frozen=True)
+class Draft:
+    """A recipe held against its inputs as far as it goes; the plan is None where anything is wrong."""
+
+    inspection: Inspection
+    plan: Plan | None
+    findings: tuple[Finding, ...]
+    faults: tuple[GridcarbError, ...]
+
+
 def prepare(recipe: Recipe) -> Plan:
     """Hold a recipe against its inputs: headers, coordinates and small samples are read, nothing is written.
 
     Raises
     ------
-    GridcarbError : for whatever would keep the run from ending well, as far as it can be known now.
+    GridcarbError : for whatever would keep the run from ending well, as far as it can be known now; with all else that
+        would in its `others`.
     """
+    found = draft(recipe)
+    faults = Faults()
+    for fault in found.faults:
+        faults.put(fault)
+    faults.tell()
+    assert found.plan is not None  # or there would have been a fault
+    return found.plan
+
+
+def draft(recipe: Recipe) -> Draft:
+    """As `prepare`, with everything that was found instead of an error."""
+    result, figures, engine = Faults(), Faults(), Faults()
     folder = ResultFolder(recipe.output_folder(), replace=recipe.output.replace)
-    folder.check()
-    collection = gather(recipe.inputs, recipe.base)
-    raw = open_collection(collection)
-    understanding = weigh(raw, understand(raw, recipe.reading), recipe.reading)
-    grid_notices = check_grid(raw, collection.axes)
-    header = raw.coords.to_dataset().assign_attrs(raw.attrs)
-    for settings in recipe.figures:
-        FIGURES[settings.kind].check(header, settings, recipe.chemistry.fields)
+    result.attempt(folder.check)
+    seen = inspect(recipe.inputs, recipe.base, recipe.reading)
+    notices = seen.notices
+    if seen.raw is not None and seen.collection is not None:
+        notices += result.attempt(check_grid, seen.raw, seen.collection.axes) or ()
+        _check_figures(recipe, seen.raw, figures)
+    plan = None
+    if seen.collection and seen.understanding:
+        plan = engine.attempt(_plan, recipe, seen, seen.collection, seen.understanding, folder)
+    found = (
+        *(finding for finding in seen.findings if finding.level == "fine"), *assumptions(notices),
+        *(finding for finding in seen.findings if finding.level == "stop"),
+        *stops("figures", figures.found), *stops("engine", engine.found), *stops("result", result.found),
+    )
+    faults = (*result.found, *seen.faults, *figures.found, *engine.found)
+    if plan is None or faults:
+        return Draft(seen, None, found, faults)
+    told = tuple({(notice.code, notice.text): notice for notice in notices}.values())
+    return Draft(seen, replace(plan, notices=told, findings=found), found, ())
+
+
+def _plan(
+    recipe: Recipe, seen: Inspection, collection: Collection, understanding: Understanding, folder: ResultFolder
+) -> Plan:
     fields = _fields(recipe, understanding)
     workers = recipe.engine.workers or cores()
     footprint = _footprint(recipe, collection, fields)
@@ -111,7 +151,29 @@ def prepare(recipe: Recipe) -> Plan:
     layout = _layout(recipe, collection, footprint, allowed, workers)
     column = layout.sizes[collection.axes.vertical] if collection.axes.vertical else 1
     refuse_over_budget(footprint, layout.cells_per_block, column=column, memory=recipe.engine.memory_bytes, workers=workers)
-    return Plan(recipe, collection, understanding, layout, fields, workers, footprint, allowed, folder, grid_notices)
+    return Plan(recipe, collection, understanding, layout, fields, workers, footprint, allowed, folder, seen.survey)
+
+
+def _check_figures(recipe: Recipe, raw: xr.Dataset, faults: Faults) -> None:
+    """Every figure can be drawn, and none would overwrite another."""
+    header = raw.coords.to_dataset().assign_attrs(raw.attrs)
+    taken: dict[str, int] = {}
+    for number, settings in enumerate(recipe.figures):
+        kind = FIGURES[settings.kind]
+        faults.attempt(kind.check, header, settings, recipe.chemistry.fields)
+        name = Faults().attempt(kind.file_name, header, settings)
+        if name in taken:
+            faults.put(_same_file(recipe, name, taken[name], number))
+        elif name:
+            taken[name] = number
+
+
+def _same_file(recipe: Recipe, name: str, first: int, second: int) -> RecipeError:
+    lines = parse(recipe.text)
+    what = f"the figure would be written to {name}, as the one on line {lines.line(('figures', first))}"
+    mend = "give one of the two a name of its own: `file: another_name.png`"
+    fault = Fault(lines.line(("figures", second)), f"figures[{second}]", what, mend)
+    return RecipeError("the recipe has one fault", where=str(recipe.path or "recipe"), faults=(fault,))
 
 
 def source_chunks(collection: Collection) -> dict[str, int]:

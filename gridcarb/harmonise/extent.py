@@ -77,7 +77,9 @@ def read_measures(
         reading, notices = whole.without_repeated()
         whole.reading = reading
     checked = _check_total(whole, settings)
-    how = {"given": "as the files give it", "boxes": "between parallels and meridians", "polygons": "of spherical polygons"}
+    ball = f"on a sphere of radius {reading.radius / 1e3:.3f} km"
+    how = {"given": "as the files give it", "boxes": f"between parallels and meridians {ball}",
+           "polygons": f"of spherical polygons {ball}"}  # fmt: skip
     decision = Decision("cell area", how[reading.kind], because)
     return Decided(reading, (decision, *checked.decisions), (*notices, *checked.notices))
 
@@ -178,9 +180,9 @@ def _check_total(whole: _Whole, settings: ReadingSettings) -> Decided[None]:
     off = found / OCEAN_AREA - 1.0
     if abs(off) <= _TOLERANCE:
         because = "within 2 % of the ocean's 3.6e14 m2"
-        return Decided(None, (Decision("sea area", f"{found:.3g} m2 at the top level", because),))
+        return Decided(None, (Decision("sea area", f"{found / 1e14:.2f}e14 m2 at the top level", because),))
     more = "more" if off > 0 else "less"
-    what = f"the sea area of the top level is {found:.3g} m2, {abs(off):.1%} {more} than the ocean's 3.6e14 m2"
+    what = f"the sea area of the top level is {found / 1e14:.2f}e14 m2, {abs(off):.1%} {more} than the ocean's 3.6e14 m2"
     if settings.coverage == "global":
         raise InputError(f"{what}, so that global sums and means would be wrong", where="reading.coverage",
                          mend="check land mask, areas and bounds, or write `reading: {coverage: part}` in the recipe")

@@ -174,7 +174,7 @@ def _mean_words(outcome: Outcome, entry: Field) -> str:
     """The mean by area at the top of the sea, where areas are known."""
     surface = outcome.products["means"]["surface"]
     mean = surface and surface["fields"][entry.key]["mean"]
-    return "" if mean is None else f"; mean of the surface by area {_number(mean, entry.digits)}"
+    return "" if mean is None else f"; surface mean {_number(mean, entry.digits)}"
 
 
 def _number(value: float, digits: int) -> str:

@@ -55,20 +55,25 @@ def plan(**words: Any) -> None:
 
 @click.command()
 @_spoken
-def run(**words: Any) -> None:
+@click.option("--resume", is_flag=True, help="Go on where an interrupted run of this recipe ended.")
+@click.option("--anew", is_flag=True, help="Begin again, even if an interrupted run has left finished blocks.")
+def run(*, resume: bool, anew: bool, **words: Any) -> None:
     """Do what RECIPE says.
 
     \b
     gridcarb run recipes/first_look.yaml
     gridcarb run global_state.yaml --input 'model/*.nc' --result results/model
 
-    The result folder appears when the run is complete, never before.
+    The result folder appears when the run is complete, never before. What an interrupted run has finished is kept beside
+    it, and --resume does only the rest.
     """
+    if resume and anew:
+        raise click.UsageError("--resume and --anew exclude each other")
     prepared = faces.prepare(_recipe(**words))
     wishes = terminal()
     watcher = progress.watcher(quiet=wishes.quiet or wishes.as_json)  # a machine reads standard error too
     try:
-        outcome = faces.conduct(prepared, watcher)
+        outcome = faces.conduct(prepared, watcher, "resume" if resume else "anew" if anew else "new")
     finally:
         watcher.stop()
     _tell(outcome.summary())

@@ -61,7 +61,7 @@ class Stage:
         rows = (("temperature", "thetao in a.nc"), ("dic", "dissic in a.nc"))
         return Report((Section("What will be read", rows),), (notice,))
 
-    def conduct(self, plan, watcher):
+    def conduct(self, plan, watcher, manner):
         assert plan is self
         watcher.start(4, 400)
         for _ in range(4):

@@ -160,6 +160,7 @@ class _Survey:
         self.pointed = set(_referred(ds, ("coordinates",)))
         aside = self.bounds | self.pointed | {str(name) for name in ds.coords}
         aside |= set(_referred(ds, ("cell_measures", "grid_mapping", "formula_terms", "ancillary_variables")))
+        aside |= _parts_of_meshes(ds)
         aside |= {name for name in self.names if self._is_coordinate(name)}
         self.data = [name for name in self.names if name not in aside and ds.variables[name].ndim]
         basis = self.data or [name for name in self.names if name not in self.bounds]
@@ -230,6 +231,17 @@ class _Survey:
             if pointed and fits and self.rank(name, marks):
                 return name
         return None
+
+
+def _parts_of_meshes(ds: xr.Dataset) -> set[str]:
+    """Nodes and connectivities of UGRID meshes, which lie on places of their own."""
+    found: set[str] = set()
+    for name, variable in ds.variables.items():
+        if variable.attrs.get("cf_role") == "mesh_topology":
+            told = [str(text) for key, text in variable.attrs.items() if str(key).endswith(("_coordinates", "_connectivity"))]
+            words = " ".join(told).split()
+            found |= {str(name), *(word for word in words if word in ds.variables)}
+    return found
 
 
 def _referred(ds: xr.Dataset, keys: Iterable[str]) -> list[str]:

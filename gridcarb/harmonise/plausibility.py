@@ -89,6 +89,21 @@ def check_masks(missing: Mapping[str, Flags], settings: ReadingSettings) -> tupl
     return tuple(notices)
 
 
+def check_depths(lost: int, wet: int, settings: ReadingSettings) -> tuple[Notice, ...]:
+    """Compare how many cells of a sample have salinity and no depth, with all that have salinity; as `check_masks`."""
+    share = lost / max(wet, 1)
+    if share > settings.mask_difference:
+        raise InputError(
+            f"the depth is missing in {share:.1%} of the wet cells of a sample", where="depth",
+            mend="check the masks of the vertical coordinate and its formula terms; to accept it write "
+            f"`reading: {{mask_difference: {np.ceil(share * 100) / 100:g}}}` in the recipe",
+        )
+    if not lost:
+        return ()
+    return (Notice("depths_missing", f"the depth is missing in {share:.2%} of the wet cells of a sample; such cells get no "
+                   "result"),)
+
+
 def check_values(
     medians: Mapping[str, float], shallowest: float, amounts: Mapping[str, AmountReading], settings: ReadingSettings
 ) -> None:

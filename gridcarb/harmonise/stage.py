@@ -100,7 +100,7 @@ def _with_file(where: str, raw: xr.Dataset) -> str:
 def clothe(raw: xr.Dataset, understanding: Understanding) -> xr.Dataset:
     """A loaded block, or any slice of the grid, as float64 numbers in canonical units.
 
-    Gives the keys temperature (degC, in situ), salinity (practical), pressure (dbar), dic, alkalinity, phosphate, silicate
+    Gives the keys temperature (degC, in situ), salinity (practical), sea_pressure (dbar), dic, alkalinity, phosphate, silicate
     (umol/kg) and, where amounts per volume were met or a density was stated, density (kg m-3), and where the understanding
     knows it, cell_thickness (m); NaN where masked; dims in the order time, vertical, horizontal. Pressure, a constant
     density and an assumed nutrient have no more dims than they vary over, down to none.
@@ -132,7 +132,7 @@ def _fields(clean: Mapping[str, xr.DataArray], place: depth.Place, understanding
     fields = {
         "temperature": warm,
         "salinity": salinity.practical_salinity(salt, kind_s, place),
-        "pressure": place.pressure,
+        "sea_pressure": place.pressure,
     }
     for role, reading in understanding.amounts.items():
         fields[role] = amounts.per_kilogram(clean[role], reading, of_water)
@@ -214,12 +214,15 @@ def _check_sample(
     flat = {role: np.concatenate([part[n].values.ravel() for part in missing]) for n, role in enumerate(roles)}
     notices = faults.attempt(plausibility.check_masks, flat, settings) or ()
     clothed = [clothe(sample, draft) for sample in samples]
+    wet = [part["salinity"].notnull() for part in clothed]
+    lost = sum(int((water & part["pressure"].isnull()).sum()) for water, part in zip(wet, clothed, strict=True))
+    notices += faults.attempt(plausibility.check_depths, lost, sum(int(water.sum()) for water in wet), settings) or ()
     medians: dict[str, float] = {}
     for role in roles:
         values = np.concatenate([part[role].values.ravel() for part in clothed])
         if not np.isnan(values).all():
             medians[role] = float(np.nanmedian(values))
-    shallowest = min(float(part["pressure"].min()) for part in clothed)
+    shallowest = min(float(part["sea_pressure"].min()) for part in clothed)
     faults.attempt(plausibility.check_values, medians, shallowest, draft.amounts, settings)
     return (*notices, *_mask_notices([counts for _, counts in pieces]))
 

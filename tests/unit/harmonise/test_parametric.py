@@ -311,3 +311,15 @@ def test_water_that_has_fallen_dry_is_at_the_surface(ocean: Ocean) -> None:
         parametric(ocean(), "ocean_sigma_z_coordinate", eta=-1.0))
     found = clothe(raw, understand(raw, READING)).pressure.isel(layer=2, lat=2, lon=2)
     assert (found == 0.0).all()
+
+
+@pytest.mark.parametrize("cells", [1, 10])
+def test_wet_cells_without_a_depth_are_told_and_many_refused(ocean: Ocean, cells: int) -> None:
+    raw = parametric(ocean(rows=10, columns=20), "ocean_sigma_coordinate")
+    raw.floor.values[5, :cells] = 1e20
+    if cells == 1:
+        assert "depths_missing" in {notice.code for notice in understand(raw, READING).notices}
+        return
+    with pytest.raises(InputError, match=r"the depth is missing in 5\.0% of the wet cells") as caught:
+        understand(raw, READING)
+    assert "mask_difference: 0.06" in caught.value.mend

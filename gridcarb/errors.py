@@ -33,6 +33,7 @@ class GridcarbError(Exception):
 
     exit_code = 1
     others: tuple[GridcarbError, ...] = ()
+    words_for_others = "and {} more:"
 
     def __init__(self, what: str = "", *, where: str = "", mend: str = "") -> None:
         super().__init__(what)
@@ -45,7 +46,7 @@ class GridcarbError(Exception):
         if self.mend:
             lines.append(f"to mend it: {self.mend}")
         if self.others:
-            lines.append(f"and {len(self.others)} more:")
+            lines.append(self.words_for_others.format(len(self.others)))
         return "\n".join([*lines, *(str(other) for other in self.others)])
 
 
@@ -86,6 +87,7 @@ class BlockError(GridcarbError):
     """A block of a run that failed."""
 
     exit_code = 6
+    words_for_others = "the first {} of them:"
 
 
 class EngineError(GridcarbError):

@@ -5,6 +5,7 @@ from __future__ import annotations
 import sys
 import time
 from collections.abc import Callable
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, TextIO
 
 from gridcarb.cli.faces import Watcher
@@ -13,6 +14,7 @@ if TYPE_CHECKING:
     from rich.progress import Progress, TaskID
 
 STEP = 5  # per cent between two lines of a log
+TOLD = 20  # failed blocks told one by one
 
 
 def watcher(*, quiet: bool, stream: TextIO | None = None) -> Watcher:
@@ -44,6 +46,26 @@ def duration_words(seconds: float) -> str:
     return f"{whole // 3600} h {whole % 3600 // 60} min"
 
 
+@dataclass
+class Health:
+    """How a run fares besides its pace: bytes resident, and blocks that failed."""
+
+    resident: int = 0
+    failures: int = 0
+
+    def failed(self, note: str) -> str:
+        """Count a failure; what to say of it, if anything: a hundred lines of one kind would hide all others."""
+        self.failures += 1
+        if self.failures < TOLD:
+            return note
+        return f"{note}; what fails from here on is only counted here, and told in events.jsonl" * (self.failures == TOLD)
+
+    def words(self) -> str:
+        """Such as ``1.25 GB  3 failed``; what is not known or does not exist is left out."""
+        memory = f"{self.resident / 1e9:.2f} GB" if self.resident else ""
+        return "  ".join(part for part in (memory, f"{self.failures} failed" if self.failures else "") if part)
+
+
 class Silence:
     """A watcher that says nothing."""
 
@@ -51,6 +73,12 @@ class Silence:
         """Nothing is said."""
 
     def block_done(self, cells: int, note: str = "") -> None:
+        """Nothing is said."""
+
+    def block_failed(self, note: str) -> None:
+        """Nothing is said; the error at the end names the block."""
+
+    def strength(self, workers: int, resident: int) -> None:
         """Nothing is said."""
 
     def message(self, text: str) -> None:
@@ -67,6 +95,7 @@ class Lines:
         self._stream, self._clock = stream, clock
         self._begun = 0.0
         self._total = self._blocks = self._cells = self._told = 0
+        self._health = Health()
 
     def start(self, total_blocks: int, cells: int) -> None:
         """Say how much there is to do."""
@@ -84,6 +113,15 @@ class Lines:
             self._told = percent
             self.message(self._line(percent))
 
+    def block_failed(self, note: str) -> None:
+        """Say so, until there have been many."""
+        if told := self._health.failed(note):
+            self.message(told)
+
+    def strength(self, workers: int, resident: int) -> None:
+        """Remember it for the next line."""
+        self._health.resident = resident
+
     def message(self, text: str) -> None:
         """Write a line."""
         self._stream.write(f"{text}\n")
@@ -96,7 +134,8 @@ class Lines:
         passed = self._clock() - self._begun
         left = passed * (self._total - self._blocks) / self._blocks
         ending = f"about {duration_words(left)} left" if percent < 100 else f"in {duration_words(passed)}"
-        parts = [f"{percent:3d} %", f"{self._blocks} of {self._total} blocks", rate_words(self._cells, passed), ending]
+        parts = [f"{percent:3d} %", f"{self._blocks} of {self._total} blocks", rate_words(self._cells, passed), ending,
+                 self._health.words()]  # fmt: skip
         return "  ".join(part for part in parts if part)
 
 
@@ -110,15 +149,17 @@ class Bar:
         self._clock = clock
         self._progress: Progress = Progress(
             BarColumn(bar_width=40), MofNCompleteColumn(), TextColumn("blocks  {task.fields[rate]}"),
-            TimeRemainingColumn(elapsed_when_finished=True), console=Console(file=stream, markup=False, highlight=False),
+            TimeRemainingColumn(elapsed_when_finished=True), TextColumn("{task.fields[health]}"),
+            console=Console(file=stream, markup=False, highlight=False),
         )
         self._task: TaskID | None = None
         self._begun, self._cells = 0.0, 0
+        self._health = Health()
 
     def start(self, total_blocks: int, cells: int) -> None:
         """Show the bar."""
         self._begun = self._clock()
-        self._task = self._progress.add_task("", total=total_blocks, rate=f"{cells:,} cells")
+        self._task = self._progress.add_task("", total=total_blocks, rate=f"{cells:,} cells", health="")
         self._progress.start()
 
     def block_done(self, cells: int, note: str = "") -> None:
@@ -128,6 +169,21 @@ class Bar:
         if self._task is not None:
             self._cells += cells
             self._progress.update(self._task, advance=1, rate=rate_words(self._cells, self._clock() - self._begun))
+
+    def block_failed(self, note: str) -> None:
+        """Say so above the bar, until there have been many, and count it beside."""
+        if told := self._health.failed(note):
+            self.message(told)
+        self._show_health()
+
+    def strength(self, workers: int, resident: int) -> None:
+        """Show it beside the bar."""
+        self._health.resident = resident
+        self._show_health()
+
+    def _show_health(self) -> None:
+        if self._task is not None:
+            self._progress.update(self._task, health=self._health.words())
 
     def message(self, text: str) -> None:
         """Write a line above the bar."""

@@ -68,7 +68,8 @@ class EngineSettings(Settings):
     @property
     def chosen(self) -> Kind:
         """The kind stated, or the one whose key is given."""
-        return self.kind or next((kind for kind, key in _NEEDED.items() if getattr(self, key) is not None), "threads")
+        given: Kind = next((kind for kind, key in _NEEDED.items() if getattr(self, key) is not None), "threads")
+        return self.kind or given
 
     @property
     def memory_bytes(self) -> int | None:

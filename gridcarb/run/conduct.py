@@ -9,35 +9,25 @@ from contextlib import contextmanager, suppress
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from pathlib import Path
-from typing import Any, Protocol
+from typing import Any
 
 import xarray as xr
 
-from gridcarb.chemistry.program import program
 from gridcarb.errors import GridcarbError, InputError, Notice
 from gridcarb.figures import FIGURES
 from gridcarb.products import PRODUCTS
-from gridcarb.run.engine import run_tasks
+from gridcarb.run.doing import do_blocks
 from gridcarb.run.frame import date_of_writing
 from gridcarb.run.journal import journal_head, journal_tail
-from gridcarb.run.marking import do_block
 from gridcarb.run.plan import FIGURE_FOLDER, FILE, STATUS, STORE, Plan
 from gridcarb.run.report import Report, outcome_report
 from gridcarb.run.resume import Manner, Start, begin, what_next
 from gridcarb.run.stopping import Terminated, ends_tidily, why_it_ended
 from gridcarb.run.task import Record, changed_inputs
+from gridcarb.run.watching import Watcher
 from gridcarb.write.journal import JOURNAL, write_journal
 from gridcarb.write.ledger import Marker
 from gridcarb.write.netcdf import export
-
-
-class Watcher(Protocol):
-    """One who looks on; called from one thread."""
-
-    def start(self, total_blocks: int, cells: int) -> None: ...
-    def block_done(self, cells: int, note: str = "") -> None: ...
-    def message(self, text: str) -> None: ...
-    def stop(self) -> None: ...
 
 
 @dataclass(frozen=True)
@@ -140,20 +130,10 @@ def _fill_store(start: Start, watcher: Watcher, sums: _Sums) -> None:
     if not start.resumed:
         with sums.timed("store"):
             start.lay_foundation()
-    watcher.message("preparing the chemistry (a few seconds the first time on this machine)")
-    with sums.timed("compile"):
-        program(plan.recipe.chemistry.constants, tuple(entry.key for entry in plan.fields if entry.part == "derived"))
     if start.resumed:
         watcher.message(f"going on with an interrupted run: {len(start.done):,} of {len(plan.layout):,} blocks are done")
-    watcher.start(start.blocks_left, start.cells_left)
-
-    def done(record: Record) -> None:
-        sums.add(record)
-        watcher.block_done(record.cells)
-
     with sums.timed("blocks"):
-        run_tasks(do_block, start.job(), start.to_do(), workers=plan.workers, done=done)
-    watcher.stop()
+        sums.seconds["getting ready"] = do_blocks(start, watcher, sums.add)
     _refuse_changed(plan)
     _refuse_nothing(sums)
 

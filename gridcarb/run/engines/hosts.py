@@ -19,9 +19,8 @@ def crew(settings: EngineSettings, workers: int, order: Order, say: Callable[[st
     """A crew of `workers` processes on each host."""
     hosts = settings.hosts or ()
     say(f"starting {workers} processes on each of {len(hosts)} hosts")
-    with own_scheduler(), _started(settings, workers) as cluster:
-        with connected(cluster, order, say) as found:
-            yield found
+    with own_scheduler(), _started(settings, workers) as cluster, connected(cluster, order, say) as found:
+        yield found
 
 
 def words(settings: EngineSettings, workers: int) -> dict[str, Any]:

@@ -26,12 +26,20 @@ class Memory:
         self.total: tuple[int, int] | None = None
         self.done: list[int] = []
         self.messages: list[str] = []
+        self.failed: list[str] = []
 
     def start(self, total_blocks: int, cells: int) -> None:
         self.total = (total_blocks, cells)
 
     def block_done(self, cells: int, note: str = "") -> None:
         self.done.append(cells)
+
+    def block_failed(self, note: str) -> None:
+        self.failed.append(note)
+
+    def strength(self, workers: int, resident: int) -> None:
+        assert workers > 0
+        assert resident > 1_000_000
 
     def message(self, text: str) -> None:
         self.messages.append(text)

@@ -76,11 +76,12 @@ def test_the_journal_tells_how_to_make_it_again(recipe, watcher, ocean_file, tmp
     assert told["versions"]["python"] == platform.python_version()
     assert told["versions"]["zarr"] == version("zarr")
     assert told["versions"]["gridcarb"] == version("gridcarb")
-    assert told["engine"] == {"workers": 2, "memory": "1 GB", "block": {"time": 1, "cells": 24}}
+    block = {"time": 1, "cells": 24}
+    assert told["engine"] == {"kind": "threads", "workers": 2, "memory": "1 GB", "block": block, "retries": 1}
     assert told["plan"]["blocks"]["count"] == 9
     assert told["plan"]["notices"] == [notice.as_dict() for notice in outcome.notices]
     assert told["written"] == ["fields.zarr"]
-    assert {"store", "compile", "blocks", "blocks: read", "blocks: solve", "blocks: write"} <= set(told["seconds"])
+    assert {"store", "getting ready", "blocks", "blocks: read", "blocks: solve", "blocks: write"} <= set(told["seconds"])
     assert all(spent >= 0 for spent in told["seconds"].values())
 
 
@@ -134,7 +135,8 @@ def test_precision_and_format_of_the_store(recipe, watcher, precision, zarr_form
 
 def test_only_what_is_asked_for_is_kept(recipe, watcher, tmp_path) -> None:
     outcome = conduct(prepare(recipe(output={"zarr": False, "netcdf": True})), watcher)
-    assert sorted(path.name for path in (tmp_path / "result").iterdir()) == ["fields.nc", "journal.json"]
+    assert sorted(path.name for path in (tmp_path / "result").iterdir()) == [
+        "events.jsonl", "fields.nc", "journal.json", "ledger"]
     assert set(outcome.written) == {"NetCDF file", "journal"}
     with xr.open_dataset(outcome.written["NetCDF file"]) as found:
         assert np.isfinite(found["aragonite_saturation"]).any()
@@ -235,7 +237,8 @@ def test_a_failing_block_is_named_and_the_journal_says_why(recipe, watcher, monk
     plan = prepare(recipe(engine={"workers": 1, "block": {"time": 1, "cells": 24}}))
     with pytest.raises(BlockError, match="ZeroDivisionError: by hand") as caught:
         conduct(plan, watcher)
-    assert " of 9: {'time': slice(" in caught.value.where
+    assert caught.value.what == "9 of 9 blocks could not be done"
+    assert all(" of 9: {'time': slice(" in other.where for other in caught.value.others)
     told = journal(tmp_path / "result.partial")
     assert told["state"] == "failed"
     assert told["error"]["kind"] == "BlockError"
@@ -252,7 +255,7 @@ def test_too_little_memory_is_told_with_what_helps(recipe, watcher, monkeypatch)
     monkeypatch.setattr(tasks, "clothe", fail)
     with pytest.raises(BlockError, match="no room") as caught:
         conduct(prepare(recipe()), watcher)
-    assert "fewer `workers`" in caught.value.mend
+    assert "fewer `workers`" in caught.value.others[0].mend
 
 
 def test_the_next_run_says_what_it_removed(recipe, watcher, tmp_path) -> None:

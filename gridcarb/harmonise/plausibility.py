@@ -49,10 +49,14 @@ def patches(axes: Axes, sizes: Mapping[Any, int], top: int) -> list[dict[str, sl
     ]
 
 
-def slabs(axes: Axes, sizes: Mapping[Any, int]) -> Iterator[dict[str, slice]]:
-    """The whole first time step, level by level, in contiguous slices of about a million values of one role."""
+def slabs(axes: Axes, sizes: Mapping[Any, int], top: int) -> Iterator[dict[str, slice]]:
+    """The whole first time step, level by level, in contiguous slices of about a million values of one role.
+
+    The level `top` comes first: where it is dry, all below is.
+    """
     first = _at(axes.time, 0)
-    levels = [_at(axes.vertical, index) for index in range(sizes[axes.vertical])] if axes.vertical else [{}]
+    order = sorted(range(sizes[axes.vertical]), key=lambda index: index != top) if axes.vertical else []
+    levels = [_at(axes.vertical, index) for index in order] or [{}]
     for level in levels:
         if not axes.horizontal:
             yield first | level

@@ -7,6 +7,7 @@ per kilogram of sea water.
 from __future__ import annotations
 
 import dataclasses
+import itertools
 from collections.abc import Collection, Mapping
 from typing import Any
 
@@ -19,6 +20,9 @@ from gridcarb.fields import FIELDS, REQUIRED_ROLES, ROLES
 from gridcarb.harmonise import amounts, depth, masks, nutrients, plausibility, salinity, temperature, thickness
 from gridcarb.harmonise.decisions import Decided, Decision, Understanding
 from gridcarb.harmonise.settings import ReadingSettings
+
+_MOST_SLABS = 12
+"""Slabs of the first time step that are searched for water, a million cells each: some seconds, whatever the size."""
 
 
 def understand(
@@ -46,10 +50,14 @@ def understand(
 
 @dataclasses.dataclass(frozen=True)
 class Examination:
-    """How far the input is understood; `understanding` is None where a fault was in the way."""
+    """How far the input is understood; `understanding` is None where a fault was in the way.
+
+    medians : key -> median of a small sample of the first time step in the catalogue's units, of what has values.
+    """
 
     decisions: tuple[Decision, ...] = ()
     notices: tuple[Notice, ...] = ()
+    medians: Mapping[str, float] = dataclasses.field(default_factory=dict)
     understanding: Understanding | None = None
 
 
@@ -83,8 +91,10 @@ def _examine(
     notices = tuple(notice for part in decided for notice in part.notices)
     if draft is None or faults.found:
         return Examination(decisions, notices)
-    notices += _check_sample(raw, draft, settings, faults)
-    return Examination(decisions, notices, dataclasses.replace(draft, decisions=decisions, notices=notices))
+    told, medians = faults.attempt(_check_sample, raw, draft, settings, faults) or ((), {})
+    notices += told
+    whole = None if faults.found else dataclasses.replace(draft, decisions=decisions, notices=notices)
+    return Examination(decisions, notices, medians, whole)
 
 
 def _with_file(where: str, raw: xr.Dataset) -> str:
@@ -100,7 +110,7 @@ def _with_file(where: str, raw: xr.Dataset) -> str:
 def clothe(raw: xr.Dataset, understanding: Understanding) -> xr.Dataset:
     """A loaded block, or any slice of the grid, as float64 numbers in canonical units.
 
-    Gives the keys temperature (degC, in situ), salinity (practical), sea_pressure (dbar), dic, alkalinity, phosphate, silicate
+    Gives the keys temperature (degC, in situ), salinity (practical), sea_pressure (dbar), dic, alkalinity, phosphate and silicate
     (umol/kg) and, where amounts per volume were met or a density was stated, density (kg m-3), and where the understanding
     knows it, cell_thickness (m); NaN where masked; dims in the order time, vertical, horizontal. Pressure, a constant
     density and an assumed nutrient have no more dims than they vary over, down to none.
@@ -117,7 +127,8 @@ def clothe(raw: xr.Dataset, understanding: Understanding) -> xr.Dataset:
     thick = thickness.thickness(raw, understanding, place)
     if thick is not None:
         variables["cell_thickness"] = thick
-    return xr.Dataset(variables, coords=raw.coords, attrs={"masked_cells": counts})
+    coords = raw.coords.to_dataset().drop_vars([name for name in variables if name in raw.coords]).coords
+    return xr.Dataset(variables, coords=coords, attrs={"masked_cells": counts})
 
 
 def _fields(clean: Mapping[str, xr.DataArray], place: depth.Place, understanding: Understanding) -> dict[str, xr.DataArray]:
@@ -205,8 +216,8 @@ def _read_place(
 
 def _check_sample(
     raw: xr.Dataset, draft: Understanding, settings: ReadingSettings, faults: Faults
-) -> tuple[Notice, ...]:
-    """Look at small samples of the first time step, and refuse what is not plausible."""
+) -> tuple[tuple[Notice, ...], dict[str, float]]:
+    """Look at small samples of the first time step, and refuse what is not plausible; notices, and median of every role."""
     roles = _roles_read(draft)
     samples = _wet_samples(raw[list(roles)], draft)
     pieces = [masks.unmask_roles(sample, draft.masks, roles) for sample in samples]
@@ -215,7 +226,7 @@ def _check_sample(
     notices = faults.attempt(plausibility.check_masks, flat, settings) or ()
     clothed = [clothe(sample, draft) for sample in samples]
     wet = [part["salinity"].notnull() for part in clothed]
-    lost = sum(int((water & part["pressure"].isnull()).sum()) for water, part in zip(wet, clothed, strict=True))
+    lost = sum(int((water & part["sea_pressure"].isnull()).sum()) for water, part in zip(wet, clothed, strict=True))
     notices += faults.attempt(plausibility.check_depths, lost, sum(int(water.sum()) for water in wet), settings) or ()
     medians: dict[str, float] = {}
     for role in roles:
@@ -224,7 +235,7 @@ def _check_sample(
             medians[role] = float(np.nanmedian(values))
     shallowest = min(float(part["sea_pressure"].min()) for part in clothed)
     faults.attempt(plausibility.check_values, medians, shallowest, draft.amounts, settings)
-    return (*notices, *_mask_notices([counts for _, counts in pieces]))
+    return (*notices, *_mask_notices([counts for _, counts in pieces])), medians
 
 
 def _mask_notices(counts: list[dict[str, int]]) -> tuple[Notice, ...]:
@@ -239,16 +250,18 @@ def _mask_notices(counts: list[dict[str, int]]) -> tuple[Notice, ...]:
 
 
 def _wet_samples(raw: xr.Dataset, draft: Understanding) -> list[xr.Dataset]:
-    """Loaded patches if any has water in it, else the first slab that has; InputError if the whole first step has none."""
-    axes = draft.axes
-    spread = [_load(raw, window) for window in plausibility.patches(axes, raw.sizes, draft.place.vertical.top)]
+    """Loaded patches if any has water in it, else the first slab that has; InputError if none is found."""
+    axes, top = draft.axes, draft.place.vertical.top
+    spread = [_load(raw, window) for window in plausibility.patches(axes, raw.sizes, top)]
     if any(_wet(piece, draft) for piece in spread):
         return spread
-    for window in plausibility.slabs(axes, raw.sizes):
+    slabs = plausibility.slabs(axes, raw.sizes, top)
+    for window in itertools.islice(slabs, _MOST_SLABS):
         piece = _load(raw, window)
         if _wet(piece, draft):
             return [piece]
-    raise InputError("no cell of the first time step has temperature, salinity, DIC and alkalinity: all is missing",
+    part = f"no cell in the first {_MOST_SLABS} million of" if any(slabs) else "no cell of"
+    raise InputError(f"{part} the first time step has temperature, salinity, DIC and alkalinity: all is missing",
                      where=", ".join(REQUIRED_ROLES), mend="check the variables, their fill values and their land masks")
 
 

@@ -5,15 +5,15 @@ The one door of `gridcarb audit`, `plan` and `run`.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
 import xarray as xr
 
 from gridcarb.errors import Faults, GridcarbError, Notice
-from gridcarb.fields import REQUIRED_ROLES
+from gridcarb.fields import FIELDS, REQUIRED_ROLES
 from gridcarb.harmonise import Understanding, weigh
 from gridcarb.harmonise.settings import ReadingSettings
 from gridcarb.harmonise.stage import Examination, examine
@@ -61,6 +61,7 @@ def inspect(inputs: InputsSettings, base: Path, reading: ReadingSettings) -> Ins
     told = (*(collection.notices if collection else ()), *examined.notices)
     found = [
         *(_described(collection) if collection else []), *findings.readings(examined.decisions),
+        *_sampled(examined.medians),
         *(chunk_findings(collection) if collection else []), *findings.assumptions(told),
         *findings.stops("files", files.found), *findings.stops("meaning", meaning.found),
     ]
@@ -78,7 +79,13 @@ def _examine(raw: xr.Dataset, reading: ReadingSettings, faults: Faults) -> Exami
     if found.understanding is None:
         return found
     weighed = faults.attempt(weigh, raw, found.understanding, reading)
-    return Examination(weighed.decisions, weighed.notices, weighed) if weighed else found
+    return replace(found, decisions=weighed.decisions, notices=weighed.notices, understanding=weighed) if weighed else found
+
+
+def _sampled(medians: Mapping[str, float]) -> Iterator[Finding]:
+    if medians:
+        told = ", ".join(f"{key} {value:.4g} {FIELDS[key].units}".removesuffix(" 1") for key, value in medians.items())
+        yield Finding("fine", "sample", f"medians near the top at the first time: {told}")
 
 
 def _described(collection: Collection) -> Iterator[Finding]:

@@ -122,13 +122,12 @@ def draft(recipe: Recipe) -> Draft:
     folder = ResultFolder(recipe.output_folder(), replace=recipe.output.replace)
     result.attempt(folder.check)
     seen = inspect(recipe.inputs, recipe.base, recipe.reading)
-    notices = seen.notices
+    notices, plan = seen.notices, None
     if seen.raw is not None and seen.collection is not None:
-        notices += result.attempt(check_grid, seen.raw, seen.collection.axes) or ()
         _check_figures(recipe, seen.raw, figures)
-    plan = None
-    if seen.collection and seen.understanding:
-        plan = engine.attempt(_plan, recipe, seen, seen.collection, seen.understanding, folder)
+        if seen.understanding:
+            notices += result.attempt(check_grid, seen.raw, seen.collection.axes) or ()
+            plan = engine.attempt(_plan, recipe, seen, seen.collection, seen.understanding, folder)
     found = (
         *(finding for finding in seen.findings if finding.level == "fine"), *assumptions(notices),
         *(finding for finding in seen.findings if finding.level == "stop"),

@@ -127,7 +127,7 @@ def test_patches_and_slabs_are_small_and_slabs_cover_the_first_step() -> None:
     cells = [np.prod([len(range(*patch[dim].indices(sizes[dim]))) for dim in ("y", "x")]) for patch in patches]
     assert 10_000 < sum(cells) <= 20_000
     seen = np.zeros((3, 2000, 1500), dtype=int)
-    for slab in plausibility.slabs(axes, sizes):
+    for slab in plausibility.slabs(axes, sizes, 0):
         part = seen[slab["lev"], slab["y"]]
         assert part.size <= 1_000_000
         part += 1
@@ -139,4 +139,10 @@ def test_patches_of_columns_and_meshes(horizontal: tuple[str, ...], count: int) 
     axes = Axes(None, "lev", horizontal, None, "lev", None, None)
     sizes = {"lev": 3, "cell": 1_000_000}
     assert len(plausibility.patches(axes, sizes, 0)) == count
-    assert len(list(plausibility.slabs(axes, sizes))) == 3
+    assert len(list(plausibility.slabs(axes, sizes, 0))) == 3
+
+
+def test_slabs_begin_at_the_top() -> None:
+    axes = Axes(None, "z", ("y", "x"), None, "z", "y", "x")
+    sizes = {"z": 3, "y": 2, "x": 2}
+    assert [slab["z"].start for slab in plausibility.slabs(axes, sizes, 2)] == [2, 0, 1]

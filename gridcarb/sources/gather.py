@@ -11,11 +11,12 @@ from gridcarb.errors import Faults, GridcarbError, InputError, Notice
 from gridcarb.fields import ROLES
 from gridcarb.sources import grid as grids
 from gridcarb.sources import timeline
-from gridcarb.sources.collection import Collection, RoleSource, TimeReading
+from gridcarb.sources.collection import Collection, FileRecord, RoleSource, TimeReading
 from gridcarb.sources.conventions import MEASURES
 from gridcarb.sources.dates import Units, stamps
 from gridcarb.sources.describing import coordinates_of, names_kept
 from gridcarb.sources.headers import Header, read_header
+from gridcarb.sources.lending import Lender, borrowed
 from gridcarb.sources.locate import locate
 from gridcarb.sources.measures import Measures, find_measures
 from gridcarb.sources.parts import Part, TimeRules, field_of, whole_part
@@ -34,9 +35,9 @@ class Looked:
     groups: Mapping[str, Sequence[Header]]
 
     @property
-    def headers(self) -> list[Header]:
-        """Those that could be read."""
-        return [found for found in self.files.values() if isinstance(found, Header)]
+    def records(self) -> dict[str, FileRecord]:
+        """Path (with its group) -> record of those that could be read."""
+        return {found.path: found.record for found in self.files.values() if isinstance(found, Header)}
 
 
 @dataclass(frozen=True, eq=False)
@@ -94,7 +95,8 @@ def explore(settings: InputsSettings, base: Path, faults: Faults) -> Explored:
             fitting[role] = part
     measures = find_measures(looked.groups, settings, reference, rules, faults)
     notices += [*measures.notices, *_group_notices(looked), *_month_notices(reference)]
-    collection = faults.attempt(_collection, fitting, reference, measures, notices)
+    notices += borrowed(reference.headers)
+    collection = faults.attempt(_collection, fitting, reference, measures, looked.records, notices)
     return Explored(looked, chosen, measures, collection)
 
 
@@ -113,15 +115,18 @@ def _look(settings: InputsSettings, base: Path, faults: Faults) -> Looked:
         except GridcarbError as error:
             files[path] = error
             faults.put(error)
+    whole = {path: header for path, header in files.items() if isinstance(header, Header)}
+    lender = Lender(list(whole.values()))
+    whole = {path: lender.completed(header) for path, header in whole.items()}
     groups = {
-        key: [header for path in paths.get(key, paths[""]) or () if isinstance(header := files[path], Header)]
-        for key in (*ROLES, *MEASURES)
+        key: [whole[path] for path in paths.get(key, paths[""]) or () if path in whole] for key in (*ROLES, *MEASURES)
     }
-    return Looked(files, groups)
+    return Looked({**files, **whole}, groups)
 
 
 def _collection(
-    parts: Mapping[str, Part], reference: Part, measures: Measures, notices: Sequence[Notice]
+    parts: Mapping[str, Part], reference: Part, measures: Measures, records: Mapping[str, FileRecord],
+    notices: Sequence[Notice],
 ) -> Collection:
     names = [*names_kept(reference), *measures.names()]
     coordinates = coordinates_of(reference, names_kept(reference))
@@ -129,14 +134,14 @@ def _collection(
     roles = {
         role: RoleSource(role, part.variable, part.how, field_of(part, reference, names)) for role, part in parts.items()
     }
-    described = (*parts.values(), *measures.parts.values())
-    headers = {header.path: header.record for part in described for header in part.headers}
+    arrays = [source.array for source in roles.values()] + list(coordinates.values())
+    paths = dict.fromkeys(segment.path for array in arrays for segment in array.segments)
     field = next(roles[role].array for role, part in parts.items() if part is reference)
     sizes = dict(zip(field.dims, field.shape, strict=True))
     return Collection(
         roles=roles, coordinates=coordinates, axes=reference.axes,
         kind=grid_kind(reference.headers[0].skeleton(reference.variable), reference.axes), sizes=sizes,
-        files=tuple(headers.values()), attributes=dict(reference.headers[0].attrs), notices=tuple(notices),
+        files=tuple(records[path] for path in paths), attributes=dict(reference.headers[0].attrs), notices=tuple(notices),
         measures=measures.by_kind(), time=_time_reading(reference),
     )
 

@@ -44,7 +44,8 @@ class Header:
     @functools.cached_property
     def edges(self) -> frozenset[str]:
         """Variables that others name as their bounds."""
-        return frozenset(word for head in self.heads.values() for key in POINTERS[1:] for word in words(head.attrs.get(key)))
+        heads = self.heads.values()
+        return frozenset(word for head in heads for key in POINTERS[1:] for word in words(head.attrs.get(key)))
 
     def place(self, variable: str) -> str:
         """File and variable, for errors; a dataset in memory has no path."""

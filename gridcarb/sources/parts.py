@@ -200,7 +200,7 @@ def array_of(part: Part, name: str, dims: tuple[str, ...], kept: Sequence[str]) 
     return ArraySource(
         dims=dims, shape=shape, dtype=str(_dtype(name, files)), attrs=pruned(head.attrs, kept),
         file_axes=axes, file_rank=len(head.dims), chunks=_chunks(head, axes),
-        segments=tuple(Segment(header.path, name, start, stop)
+        segments=tuple(Segment(header.heads[name].origin or header.path, name, start, stop)
                        for header, start, stop in zip(files, starts, starts[1:], strict=False)),
         time_axis=dims.index(time) if time in dims else None,
     )

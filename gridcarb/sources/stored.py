@@ -20,7 +20,7 @@ POINTERS = ("coordinates", "bounds", "climatology")
 
 @dataclass(frozen=True)
 class Head:
-    """One variable without its values."""
+    """One variable without its values; `origin` is the file it lies in, where that is another than the header's."""
 
     name: str
     dims: tuple[str, ...]
@@ -29,6 +29,7 @@ class Head:
     attrs: Mapping[str, Any]
     chunks: tuple[int, ...] | None = None
     compression: str = ""
+    origin: str = ""
 
 
 class Stored(Protocol):

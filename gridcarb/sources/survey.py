@@ -133,6 +133,7 @@ def _file(
     coordinates = set(found.collection.coordinates if found.collection else ())
     variables = tuple(
         _variable(head, _part(head, header, coordinates), open_to, taken, how) for head in header.heads.values()
+        if not head.origin
     )
     return FileSurvey(header.path, header.kind, header.record, header.attrs, variables)
 

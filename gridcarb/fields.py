@@ -10,6 +10,8 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import Literal
 
+import numpy as np
+
 from gridcarb.citations import CITATIONS
 from gridcarb.shelf import Shelf
 
@@ -75,6 +77,9 @@ class Field:
             found["comment"] = comment
         if self.citations:
             found["references"] = "; ".join(CITATIONS[key].text for key in self.citations)
+        if self.flags:
+            found["flag_values"] = np.array([value for value, _ in self.flags], dtype="int8")
+            found["flag_meanings"] = " ".join(word for _, word in self.flags)
         return found
 
 
@@ -96,7 +101,7 @@ declare(Field(
     part="input", sane_range=(0.0, 50.0), digits=3, ink=Ink("cividis"), comment="PSS-78.", citations=("teos10",),
 ))
 declare(Field(
-    key="pressure", long_name="sea pressure (absolute pressure minus one standard atmosphere)", units="dbar",
+    key="sea_pressure", long_name="sea pressure (absolute pressure minus one standard atmosphere)", units="dbar",
     standard_name="sea_water_pressure_due_to_sea_water", part="input", sane_range=(0.0, 12000.0), digits=1,
     ink=Ink("cividis"), citations=("teos10",),
 ))

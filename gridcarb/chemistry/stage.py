@@ -12,7 +12,8 @@ from gridcarb.chemistry.constants_set import CONSTANTS
 from gridcarb.chemistry.tile import speciate
 from gridcarb.fields import FIELDS, ROLES
 
-_ARGUMENTS = (*ROLES, "pressure")
+_ARGUMENTS = {**{role: role for role in ROLES}, "sea_pressure": "pressure"}
+"""What a clothed block calls it -> what `speciate` calls it: blocks may have an axis named pressure."""
 
 
 def solve(clothed: xr.Dataset, fields: Sequence[str], constants: str) -> xr.Dataset:
@@ -20,7 +21,7 @@ def solve(clothed: xr.Dataset, fields: Sequence[str], constants: str) -> xr.Data
 
     Parameters
     ----------
-    clothed : temperature (in situ, degC), salinity (practical), pressure (dbar), dic, alkalinity, phosphate, silicate
+    clothed : temperature (in situ, degC), salinity (practical), sea_pressure (dbar), dic, alkalinity, phosphate, silicate
         (umol/kg), broadcasting by dimension name; in memory. Dimensions come out in the order of the alkalinity.
     fields : catalogue keys: derived fields, "solution_status", or inputs (passed through as they were understood).
     constants : key of a set of constants.
@@ -37,8 +38,9 @@ def solve(clothed: xr.Dataset, fields: Sequence[str], constants: str) -> xr.Data
     wanted = [FIELDS[key] for key in fields]
     order = _dimension_order(clothed)
     arrays = {name: _aligned(clothed[name].variable, order) for name in _ARGUMENTS}
+    state = {argument: arrays[name] for name, argument in _ARGUMENTS.items()}
     computed = [field.key for field in wanted if field.part != "input"]
-    results = speciate(**arrays, fields=computed, constants=constants) if computed else {}
+    results = speciate(**state, fields=computed, constants=constants) if computed else {}
     shape = np.broadcast_shapes(*(array.shape for array in arrays.values()))
     solved = xr.Dataset(coords=clothed.coords)
     for field in wanted:

@@ -127,7 +127,7 @@ def weights(
     sea = (sea & whole).transpose(*dims)
     found = {
         "cell_area": cell_areas(raw, axes, reading, region), "sea": sea,
-        "top_level": _top_level(sea, clothed["pressure"], axes.vertical),
+        "top_level": _top_level(sea, clothed["sea_pressure"], axes.vertical),
     }
     if reading.time is not None:
         shares = reading.time_shares[region.get(reading.time, slice(None))]

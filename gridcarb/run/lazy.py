@@ -35,8 +35,8 @@ def derive(
     ----------
     dataset : variables found by standard_name, then by the names usual in the trade, or told by `names`; any units and
         kinds of temperature and salinity that gridcarb reads; coordinates with CF attributes. Not modified.
-    fields : catalogue keys, or one of them; None for every derived field. Inputs ("temperature", "pressure", ...) may be
-        asked for and come as they were understood; "solution_status" tells what became of each cell.
+    fields : catalogue keys, or one of them; None for every derived field. Inputs ("temperature", "sea_pressure", ...) may
+        be asked for and come as they were understood; "solution_status" tells what became of each cell.
     constants : key of a set of constants.
     names : role -> variable name, for roles that cannot be found (temperature, salinity, dic, alkalinity, phosphate,
         silicate).

@@ -8,7 +8,6 @@ from datetime import UTC, datetime
 from importlib.metadata import version
 from typing import Any
 
-import numpy as np
 import xarray as xr
 
 from gridcarb.axes import Axes
@@ -102,9 +101,6 @@ def field_attributes(
     status : the key of the status field beside it, if there is one.
     """
     found = field.attributes()
-    if field.flags:
-        found["flag_values"] = np.array([value for value, _ in field.flags], dtype="int8")
-        found["flag_meanings"] = " ".join(word for _, word in field.flags)
     if status not in (None, field.key):
         found["ancillary_variables"] = status
     measured = names_in("cell_measures", inherited.get("cell_measures", ""))

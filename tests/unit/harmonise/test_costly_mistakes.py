@@ -43,7 +43,8 @@ def cell(water: dict[str, float], level: dict[str, Any] | None = None, **attribu
 def answer(raw: xr.Dataset, **settings: Any) -> dict[str, float]:
     """Aragonite saturation, pH and fCO2 of the cell as it is read."""
     clothed = clothe(raw, understand(raw, ReadingSettings(**settings))).drop_vars("density", errors="ignore")
-    return chemistry(**{str(key): float(values) for key, values in clothed.items()})
+    state = {str(key): float(values) for key, values in clothed.items()}
+    return chemistry(pressure=state.pop("sea_pressure"), **state)
 
 
 def chemistry(**state: float) -> dict[str, float]:

@@ -92,7 +92,7 @@ def vertical(raw: xr.Dataset, **stated: Any) -> VerticalReading:
 @pytest.mark.parametrize("kind", list(TERMS))
 def test_pressure_is_that_of_the_depth_below_the_sea_surface(ocean: Ocean, kind: str) -> None:
     raw = parametric(ocean(), kind)
-    found = clothe(raw, understand(raw, READING)).pressure
+    found = clothe(raw, understand(raw, READING)).sea_pressure
     moving = kind != "ocean_double_sigma_coordinate"
     assert found.dims == (("time", "layer", "lat", "lon") if moving else ("layer", "lat", "lon"))
     for time, k, row, column in ((0, 0, 1, 1), (1, 1, 1, 5), (1, 2, 4, 5), (0, 3, 3, 2), (1, 3, 0, 4)):
@@ -117,7 +117,7 @@ def test_another_decoder_finds_the_same_heights(ocean: Ocean, kind: str, decoder
              for term, name in named.items()}
     below = raw.eta - decoder.from_terms(terms).decode()
     wanted = xr.apply_ufunc(gsw.p_from_z, -below.clip(min=0.0).where(raw.floor < 1e19), raw.lat)
-    found = clothe(raw, understand(raw, READING)).pressure
+    found = clothe(raw, understand(raw, READING)).sea_pressure
     np.testing.assert_allclose(found, wanted.transpose(*found.dims), rtol=1e-12, atol=1e-9)
 
 
@@ -126,7 +126,7 @@ def test_layers_reach_from_the_surface_to_the_floor(ocean: Ocean, kind: str) -> 
     raw = parametric(ocean(), kind)
     ends = [0.0, -0.5, -0.75, -1.0]
     raw = raw.assign_coords(layer=("layer", ends, raw.layer.attrs), curve=("layer", ends, raw.curve.attrs))
-    found = clothe(raw, understand(raw, READING)).pressure.isel(lat=slice(1, None))
+    found = clothe(raw, understand(raw, READING)).sea_pressure.isel(lat=slice(1, None))
     assert (found.isel(layer=0) < 1e-9).all()
     water = (raw.floor + raw.eta).isel(lat=slice(1, None))
     wanted = xr.apply_ufunc(gsw.p_from_z, -water, raw.lat.isel(lat=slice(1, None)))
@@ -141,7 +141,7 @@ def test_the_same_depth_gives_the_same_bits_in_every_clothing(ocean: Ocean, kind
     raw = raw.assign_coords(curve=("layer", np.array(SHARES), raw.curve.attrs)).isel(lat=slice(1, None))
     reading = ReadingSettings(density="in situ", temperature="potential", salinity="absolute")
     one, other = clothe(plain, understand(plain, reading)), clothe(raw, understand(raw, reading))
-    for key in ("pressure", "temperature", "salinity", "dic", "alkalinity", "density"):
+    for key in ("sea_pressure", "temperature", "salinity", "dic", "alkalinity", "density"):
         wanted = one[key].rename(depth="layer").broadcast_like(other[key].drop_vars("layer")).transpose(*other[key].dims)
         assert np.ascontiguousarray(wanted.values).tobytes() == np.ascontiguousarray(other[key].values).tobytes(), key
 
@@ -159,7 +159,7 @@ def test_a_cell_does_not_depend_on_its_slice(
     part = {dim: slice(start % raw.sizes[dim], start % raw.sizes[dim] + size)
             for dim, (start, size) in (("time", time), ("lat", rows), ("lon", columns))}
     whole, piece = clothe(raw, understanding), clothe(raw.isel(part), understanding)
-    for key in ("pressure", "temperature", "dic"):
+    for key in ("sea_pressure", "temperature", "dic"):
         wanted = whole[key].isel({dim: span for dim, span in part.items() if dim in whole[key].dims})
         assert np.ascontiguousarray(piece[key].values).tobytes() == np.ascontiguousarray(wanted.values).tobytes(), key
 
@@ -168,9 +168,9 @@ def test_a_cell_does_not_depend_on_its_slice(
 def test_a_part_of_the_levels_is_read_alike(ocean: Ocean, kind: str) -> None:
     raw = parametric(ocean(), kind)
     understanding = understand(raw, READING)
-    whole = clothe(raw, understanding).pressure
+    whole = clothe(raw, understanding).sea_pressure
     for k in range(4):
-        np.testing.assert_array_equal(clothe(raw.isel(layer=[k]), understanding).pressure, whole.isel(layer=[k]))
+        np.testing.assert_array_equal(clothe(raw.isel(layer=[k]), understanding).sea_pressure, whole.isel(layer=[k]))
 
 
 def test_the_understanding_is_small_and_says_what_it_took(ocean: Ocean) -> None:
@@ -242,7 +242,7 @@ def test_a_surface_not_named_is_still_with_a_notice(ocean: Ocean, kind: str) -> 
     raw.layer.attrs["formula_terms"] = TERMS[kind].replace("eta: eta ", "")
     understanding = understand(raw, READING)
     assert "formula_term_zero" in {notice.code for notice in understanding.notices}
-    found, wanted = clothe(raw, understanding).pressure, clothe(still, understand(still, READING)).pressure
+    found, wanted = clothe(raw, understanding).sea_pressure, clothe(still, understand(still, READING)).sea_pressure
     np.testing.assert_array_equal(found.isel(lat=slice(1, None)), wanted.isel(time=0, lat=slice(1, None)))
 
 
@@ -288,14 +288,14 @@ def test_terms_need_units_which_can_be_stated(ocean: Ocean) -> None:
 def test_heights_that_count_down_are_turned(ocean: Ocean) -> None:
     raw = parametric(ocean(), "ocean_sigma_z_coordinate")
     turned = change("zlev", np.negative, positive="down")(raw)
-    one, other = (clothe(each, understand(each, READING)).pressure for each in (raw, turned))
+    one, other = (clothe(each, understand(each, READING)).sea_pressure for each in (raw, turned))
     np.testing.assert_array_equal(one, other)
 
 
 def test_complete_terms_of_both_kinds_are_told_apart_by_their_count(ocean: Ocean) -> None:
     raw = parametric(ocean(), "ocean_sigma_z_coordinate")
     full = change("zlev", lambda z: np.array([-5.0, -50.0, *z[2:]]))(change("sigma", np.nan_to_num)(raw))
-    one, other = (clothe(each, understand(each, READING)).pressure for each in (raw, full))
+    one, other = (clothe(each, understand(each, READING)).sea_pressure for each in (raw, full))
     np.testing.assert_array_equal(one, other)
 
 
@@ -309,7 +309,7 @@ def test_water_that_has_fallen_dry_is_at_the_surface(ocean: Ocean) -> None:
     """A fixed level above a low sea surface."""
     raw = change("zlev", lambda z: np.array([np.nan, np.nan, -0.5, -900.0]))(
         parametric(ocean(), "ocean_sigma_z_coordinate", eta=-1.0))
-    found = clothe(raw, understand(raw, READING)).pressure.isel(layer=2, lat=2, lon=2)
+    found = clothe(raw, understand(raw, READING)).sea_pressure.isel(layer=2, lat=2, lon=2)
     assert (found == 0.0).all()
 
 

@@ -27,12 +27,12 @@ HERE = settings(deadline=None, suppress_health_check=[HealthCheck.function_scope
 def test_canonical_numbers(ocean: Ocean) -> None:
     raw = ocean()
     clothed = clothe(raw, understand(raw, ReadingSettings(density="1026 kg m-3")))
-    assert set(clothed.data_vars) == {*ROLES, "pressure", "density"}
+    assert set(clothed.data_vars) == {*ROLES, "sea_pressure", "density"}
     wet = raw.isel(time=1, depth=3, lat=2, lon=4)
     cell = clothed.isel(time=1, depth=3, lat=2, lon=4)
     pressure = gsw.p_from_z(-4000.0, float(raw.lat[2]))
     absolute = gsw.SA_from_SP(float(wet.salinity), pressure, float(raw.lon[4]) % 360, float(raw.lat[2]))
-    assert cell.pressure.item() == pressure
+    assert cell.sea_pressure.item() == pressure
     assert cell.salinity.item() == wet.salinity.item()
     assert cell.temperature.item() == pytest.approx(
         gsw.t_from_CT(absolute, gsw.CT_from_pt(absolute, float(wet.temperature)), pressure), abs=1e-10
@@ -191,7 +191,7 @@ def test_surface_maps_need_no_level(ocean: Ocean) -> None:
     raw = ocean(attributes={"phosphate": None, "silicate": None}).isel(depth=0, drop=True)
     understanding = understand(raw, ReadingSettings(depth="surface"))
     clothed = clothe(raw, understanding)
-    assert clothed["pressure"].item() == 0.0
+    assert clothed["sea_pressure"].item() == 0.0
     np.testing.assert_allclose(
         clothed["temperature"].values[:, 1:], raw["temperature"].values[:, 1:], atol=1e-12, rtol=0
     )

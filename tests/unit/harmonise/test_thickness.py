@@ -92,8 +92,8 @@ def test_between_the_edges_of_the_levels(ocean: Ocean, factor: float, attrs: dic
 def test_the_sea_floor_cuts_the_cell_it_lies_in(ocean: Ocean) -> None:
     raw = floor(bounded(ocean()), 1500.0)
     np.testing.assert_array_equal(thick(raw)[:, 1, 1], [10.0, 190.0, 1300.0, 0.0])
-    pressure = clothe(raw, known(raw)).pressure
-    np.testing.assert_array_equal(pressure, clothe(bounded(ocean()), known(bounded(ocean()))).pressure)
+    pressure = clothe(raw, known(raw)).sea_pressure
+    np.testing.assert_array_equal(pressure, clothe(bounded(ocean()), known(bounded(ocean()))).sea_pressure)
     notice = known(raw).notices[0]
     assert (notice.code, "'bottom'" in notice.text) == ("thickness_from_edges", True)
     unknown = floor(bounded(ocean()), np.nan)
@@ -192,3 +192,8 @@ def test_clothing_carries_it(ocean: Ocean) -> None:
     found = clothe(raw, known(raw)).cell_thickness
     assert found.attrs["units"] == "m"
     np.testing.assert_array_equal(found, thick(raw))
+
+
+def test_the_file_may_use_the_name_of_the_result(ocean: Ocean) -> None:
+    raw = ocean().assign_coords(cell_thickness=("depth", FULL * 100, {"units": "cm", "standard_name": "cell_thickness"}))
+    np.testing.assert_allclose(clothe(raw, known(raw)).cell_thickness, FULL, rtol=1e-12)

@@ -132,8 +132,8 @@ def test_a_byte_order_mark_is_no_fault(path):
 
 
 def test_inputs_may_be_asked_for_as_they_were_understood():
-    recipe = check(TEXT.replace("[ph_total_scale]", "[pressure, ph_total_scale]"))
-    assert recipe.chemistry.fields == ("pressure", "ph_total_scale")
+    recipe = check(TEXT.replace("[ph_total_scale]", "[sea_pressure, ph_total_scale]"))
+    assert recipe.chemistry.fields == ("sea_pressure", "ph_total_scale")
 
 
 def test_all_means_every_derived_field():

@@ -57,15 +57,16 @@ def by_hand(ds: xr.Dataset) -> dict[str, np.ndarray]:
     absolute = gsw.SA_from_SP(practical, pressure, ds["lon"].values, ds["lat"].values[:, None])
     conservative = gsw.CT_from_pt(absolute, ds["thetao"].values.astype("f8"))
     warm = gsw.t_from_CT(absolute, conservative, pressure)
-    return {"temperature": warm, "salinity": practical, "pressure": pressure, **amounts}
+    return {"temperature": warm, "salinity": practical, "sea_pressure": pressure, **amounts}
 
 
 def test_the_result_is_that_of_the_array_face_on_the_inputs_as_understood(ds) -> None:
     """To the last bit: the same chemistry, whichever door."""
-    inputs = ["temperature", "salinity", "pressure", "dic", "alkalinity", "phosphate", "silicate"]
+    inputs = ["temperature", "salinity", "sea_pressure", "dic", "alkalinity", "phosphate", "silicate"]
     derived = [key for key, field in FIELDS.items() if field.part == "derived"]
     found = gridcarb.derive(ds, [*inputs, *derived, "solution_status"], reading=DENSITY)
-    expected = gridcarb.speciate(**{key: found[key].values for key in inputs}, fields=[*derived, "solution_status"])
+    state = {key.removeprefix("sea_"): found[key].values for key in inputs}
+    expected = gridcarb.speciate(**state, fields=[*derived, "solution_status"])
     assert np.isfinite(found["ph_total_scale"]).sum() > 100
     for key, values in expected.items():
         np.testing.assert_array_equal(found[key].values, values, err_msg=key)
@@ -84,7 +85,7 @@ def test_the_inputs_are_understood_as_a_hand_would_convert_them(ds) -> None:
 @pytest.mark.parametrize("words", [{}, {"decode_cf": False}, {"mask_and_scale": False}, {"decode_times": False}], ids=str)
 @pytest.mark.parametrize("chunks", [None, {"time": 2, "lev": 3, "lat": 4, "lon": 7}], ids=str)
 def test_however_it_is_opened_the_numbers_are_the_same(ds, ocean_file, words, chunks) -> None:
-    fields = [*FIELD_NAMES, "pressure", "solution_status"]
+    fields = [*FIELD_NAMES, "sea_pressure", "solution_status"]
     expected = gridcarb.derive(ds, fields, reading=DENSITY)
     with xr.open_dataset(ocean_file, **words) as opened:
         given = opened if chunks is None else opened.chunk(chunks)
@@ -183,10 +184,11 @@ def test_depths_that_differ_by_column_are_found_in_undecoded_data(ds, ocean_file
         raw["depth"] = (stretched.dims, stretched.values, {"standard_name": "depth", "units": "m", "positive": "down"})
         for name in ("thetao", "so", "dissic", "talk", "po4", "si"):
             raw[name].attrs["coordinates"] = "depth"
-        whole = gridcarb.derive(raw, ["pressure"], reading=DENSITY)
+        whole = gridcarb.derive(raw, ["sea_pressure"], reading=DENSITY)
         expected = gsw.p_from_z(-stretched.values, ds["lat"].values)[None, :, :, None]
-        np.testing.assert_allclose(whole["pressure"].values, np.broadcast_to(expected, whole["pressure"].shape), rtol=1e-12)
-        pieces = gridcarb.derive(raw.chunk(time=1, lev=2, lat=4), ["pressure"], reading=DENSITY)
+        expected = np.broadcast_to(expected, whole["sea_pressure"].shape)
+        np.testing.assert_allclose(whole["sea_pressure"].values, expected, rtol=1e-12)
+        pieces = gridcarb.derive(raw.chunk(time=1, lev=2, lat=4), ["sea_pressure"], reading=DENSITY)
         assert_same_numbers(pieces.load(), whole)
 
 

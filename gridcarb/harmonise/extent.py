@@ -36,11 +36,25 @@ _PIECE = 1_000_000
 _STATIONS = frozenset({"timeseries", "profile", "timeseriesprofile", "point", "trajectory", "trajectoryprofile"})
 
 
-def weigh(raw: xr.Dataset, understanding: Understanding, settings: ReadingSettings) -> Understanding:
+_MEASURES = {
+    "area": "cell_area", "thickness": "cell_thickness", "sea_fraction": "sea_area_fraction",
+    "sea_floor_depth": "sea_floor_depth_below_geoid",
+}
+"""Kind of measure -> standard name of the variable that tells it."""
+
+
+def weigh(
+    raw: xr.Dataset, understanding: Understanding, settings: ReadingSettings, measures: Mapping[str, str] | None = None
+) -> Understanding:
     """An understanding that knows also how cells are weighed in means over space, and says so.
 
-    raw : the whole collection, lazy. Raises InputError as `read_measures` does. Thickness is of use only with an area.
+    raw : the whole collection, lazy.
+    measures : kind of measure -> coordinate, where that is known; the others are found by their attributes.
+
+    Raises InputError as `read_measures` does. Thickness is of use only with an area.
     """
+    known = {name: _MEASURES[kind] for kind, name in (measures or {}).items() if kind in _MEASURES and name in raw.coords}
+    raw = raw.assign_coords({name: raw[name].assign_attrs(standard_name=said) for name, said in known.items()})
     vertical = understanding.place.vertical
     found = read_measures(raw, understanding.axes, understanding.masks, vertical.top, settings)
     flat = found.reading.kind == "unknown"

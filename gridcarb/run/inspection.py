@@ -57,7 +57,7 @@ def inspect(inputs: InputsSettings, base: Path, reading: ReadingSettings) -> Ins
         files.put(fault)
     collection = looked.collection
     raw = meaning.attempt(open_collection, collection) if collection else None
-    examined = Examination() if raw is None else _examine(raw, reading, meaning)
+    examined = Examination() if raw is None else _examine(raw, reading, meaning, collection)
     told = (*(collection.notices if collection else ()), *examined.notices)
     found = [
         *(_described(collection) if collection else []), *findings.readings(examined.decisions),
@@ -72,13 +72,13 @@ def inspect(inputs: InputsSettings, base: Path, reading: ReadingSettings) -> Ins
     )
 
 
-def _examine(raw: xr.Dataset, reading: ReadingSettings, faults: Faults) -> Examination:
+def _examine(raw: xr.Dataset, reading: ReadingSettings, faults: Faults, collection: Collection | None) -> Examination:
     """The examination of all roles there are, with the weights of cells where it came to an understanding."""
     absent = [role for role in REQUIRED_ROLES if role not in raw.data_vars]
     found = examine(raw, reading, faults, absent=absent)
     if found.understanding is None:
         return found
-    weighed = faults.attempt(weigh, raw, found.understanding, reading)
+    weighed = faults.attempt(weigh, raw, found.understanding, reading, collection.measures if collection else None)
     return replace(found, decisions=weighed.decisions, notices=weighed.notices, understanding=weighed) if weighed else found
 
 

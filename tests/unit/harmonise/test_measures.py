@@ -123,6 +123,16 @@ def test_areas_of_the_files_come_first_in_their_units(units, size):
     assert int((found > 0).sum()) == int((~repeats).sum())
 
 
+def test_measures_may_be_told_by_name():
+    raw = raw_of("grid_raster")
+    raw = raw.assign_coords(mine=(("lat", "lon"), np.full((raw.sizes["lat"], raw.sizes["lon"]), 3e10), {"units": "m2"}))
+    understanding = understand(raw, PLAIN)
+    assert weigh(raw, understanding, PLAIN).measures.kind == "boxes"
+    told = weigh(raw, understanding, PLAIN, {"area": "mine", "basin": "nowhere"})
+    assert float(weights(raw, clothe(raw, told), told, {})["cell_area"].max()) == 3e10
+    assert "standard_name" not in raw["mine"].attrs
+
+
 def test_areas_that_are_missing_zero_or_negative_do_not_count():
     raw = raw_of("grid_raster")
     lat, lon = raw.sizes["lat"], raw.sizes["lon"]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import signal
 import traceback
 from collections.abc import Callable
 from dataclasses import dataclass
@@ -12,7 +13,8 @@ import click
 from gridcarb.cli import show
 from gridcarb.errors import GridcarbError
 
-INTERRUPTED = 130
+INTERRUPTED = 128 + signal.SIGINT
+TERMINATED = 128 + signal.SIGTERM
 Command = TypeVar("Command", bound=Callable[..., Any])
 
 
@@ -89,5 +91,5 @@ def exit_codes() -> str:
     lines = ["0    all is well", f"{GridcarbError.exit_code}    anything not listed here"]
     for code, words in sorted(meanings.items()):
         lines += [f"{code}    {words[0]}", *(f"     or {word}" for word in words[1:])]
-    lines.append(f"{INTERRUPTED}  stopped by Ctrl-C")
+    lines += [f"{INTERRUPTED}  stopped by Ctrl-C", f"{TERMINATED}  stopped by SIGTERM"]
     return "\b\nExit codes:\n" + "\n".join(f"  {line}" for line in lines)

@@ -1,13 +1,11 @@
 """The true outlines of the cells of a grid, ready to be drawn about any central meridian.
 
-Corners come from the bounds where the dataset has them and are derived from the centres otherwise. Nothing here knows
-a projection: longitudes are degrees east of the central meridian, cut at -180 and 180.
+Nothing here knows a projection: longitudes are degrees east of the central meridian, cut at -180 and 180.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import Any
+from dataclasses import dataclass, field
 
 import numpy as np
 import numpy.typing as npt
@@ -16,61 +14,58 @@ import xarray as xr
 
 from gridcarb.axes import Axes, grid_kind
 from gridcarb.errors import InputError
+from gridcarb.figures.corners import bounds_of, degrees, patches_of, places
 
 Floats = npt.NDArray[np.float64]
 Indices = npt.NDArray[np.intp]
+Mask = npt.NDArray[np.bool_]
 
 _FINEST = 1.0
-"""No side of a drawn piece is longer (degrees), so that it bends as parallels and meridians do."""
+"""No side of a piece cut at the outer meridian is longer (degrees), so that it bends as parallels and meridians do."""
 
-_TOUCHING = 1e-3
-"""Edges this close (degrees) are one edge: coordinates are often kept as float32."""
+_FLAT = 1e-10
+"""Pieces of less (square degrees) have collapsed and are not drawn."""
 
-
-@dataclass(frozen=True)
-class Mesh:
-    """Pieces of the cells of a 1-D latitude/longitude grid.
-
-    x_edges, y_edges : degrees, ascending, (nx + 1,) and (ny + 1,).
-    x_cells, y_cells : the column and row each piece belongs to, -1 in a gap between cells.
-    """
-
-    x_edges: Floats
-    y_edges: Floats
-    x_cells: Indices
-    y_cells: Indices
-
-    def spread(self, cells: npt.NDArray[Any], fill: float | bool) -> npt.NDArray[Any]:
-        """(y, x, ...) values of cells laid out on the pieces, `fill` in gaps."""
-        pieces = cells[np.ix_(self.y_cells, self.x_cells)]
-        pieces[self.y_cells < 0] = fill
-        pieces[:, self.x_cells < 0] = fill
-        return pieces
+_MARGIN = 2.5
+"""Degrees kept free around points, which have no outline of their own."""
 
 
 @dataclass(frozen=True)
 class Outlines:
-    """Polygons of the cells of any other grid.
+    """Pieces of cells.
 
-    rings : one (corners, 2) array of degrees a piece; a cell cut by the outer meridian has several.
-    cells : the cell (flat index) each ring belongs to.
+    quads : (pieces, 4, 2) degrees; owners : the cell (flat index) each belongs to.
+    rings : one (corners, 2) array a piece of a cell that was cut; ring_owners : their cells.
     """
 
-    rings: tuple[Floats, ...]
-    cells: Indices
+    quads: Floats
+    owners: Indices
+    rings: tuple[Floats, ...] = ()
+    ring_owners: Indices = field(default_factory=lambda: np.empty(0, dtype=np.intp))
 
 
 @dataclass(frozen=True)
 class Grid:
-    """Corners in degrees, any turn of longitude: rectilinear (n, 2) of rows and columns, else (cells, corners)."""
+    """Corners in degrees, any turn of longitude: rectilinear (n, 2) of columns and rows, else (pieces, corners).
+
+    cells : the cell (flat index) each piece belongs to; a piece with a single corner is a point.
+    centres : longitude and latitude (cells,) where the grid is not rectilinear.
+    """
 
     longitudes: Floats
     latitudes: Floats
     rectilinear: bool
+    cells: Indices = field(default_factory=lambda: np.empty(0, dtype=np.intp))
+    centres: tuple[Floats, Floats] = field(default_factory=lambda: (np.empty(0), np.empty(0)))
+
+    @property
+    def of_points(self) -> bool:
+        """Whether nothing is known of the cells but their centres."""
+        return bool(self.longitudes.shape[-1] == 1)
 
     def extent(self) -> tuple[float, float, float, float]:
         """West, east, south, north; the whole turn is -180..180, a region is west < east <= west + 360."""
-        turns = np.sort(np.unique(np.round(self.longitudes[np.isfinite(self.longitudes)] % 360, 6)))
+        turns = np.unique(np.round(self.longitudes[np.isfinite(self.longitudes)] % 360, 6))
         south, north = float(np.nanmin(self.latitudes)), float(np.nanmax(self.latitudes))
         gaps = np.diff(np.append(turns, turns[0] + 360))
         widest = int(np.argmax(gaps))
@@ -78,21 +73,37 @@ class Grid:
             return -180.0, 180.0, south, north
         west = float(turns[(widest + 1) % turns.size])
         west -= 360.0 * (west >= 180)
-        return west, west + 360.0 - float(gaps[widest]), south, north
-
+        east = west + 360.0 - float(gaps[widest])
+        if self.of_points:
+            side = max(_MARGIN, 0.05 * max(east - west, north - south))
+            return west - side, east + side, max(south - side, -90.0), min(north + side, 90.0)
+        return west, east, south, north
 
     def middles(self, shape: tuple[int, ...]) -> tuple[Floats, Floats]:
-        """Longitude and latitude of the middle of each cell, (y, x) or (cell,) as `shape` says."""
-        lon, lat = self._unwrapped().mean(axis=1), self.latitudes.mean(axis=1)
+        """Longitude and latitude of the middle of each cell, (y, x) or (cell,) as `shape` says; NaN where unknown."""
+        lon, lat = self.centres
         if self.rectilinear:
-            lon, lat = np.meshgrid(lon, lat)
+            lon, lat = np.meshgrid(self._unwrapped().mean(axis=1), self.latitudes.mean(axis=1))
         return lon.reshape(shape), lat.reshape(shape)
+
+    def covered(self, empty: Mask) -> Mask:
+        """The cells that another one lies upon (fold, halo), one that is not `empty` if there is any; also those nowhere.
+
+        empty : cells without a value, any shape of as many cells.
+        """
+        hidden = np.zeros(empty.size, dtype=bool)
+        if not self.rectilinear and not self.of_points:
+            numbers = places(*self.centres)
+            order = np.lexsort((empty.ravel(), numbers))
+            hidden[order[1:]] = numbers[order[1:]] == numbers[order[:-1]]
+            hidden[numbers < 0] = True
+        return hidden.reshape(empty.shape)
 
     def holds(self, west: float, east: float, south: float, north: float) -> bool:
         """Whether a cell lies, in part, within the window."""
         lon, turn = self._unwrapped(), (east - west) % 360.0 or 360.0
         apart = np.abs((lon.mean(axis=1) - west - turn / 2 + 180) % 360 - 180)
-        columns = apart < (np.ptp(lon, axis=1) + turn) / 2
+        columns = apart <= (np.ptp(lon, axis=1) + turn) / 2
         rows = (self.latitudes.max(axis=1) > south) & (self.latitudes.min(axis=1) < north)
         return bool(rows.any() and columns.any()) if self.rectilinear else bool((rows & columns).any())
 
@@ -103,53 +114,37 @@ class Grid:
 
 
 def grid_of(ds: xr.Dataset, axes: Axes) -> Grid:
-    """The corners of every cell.
+    """The corners of every cell; its centre, where nothing tells its outline.
 
     Raises
     ------
     InputError : there is no latitude or longitude, or no cells beside each other to make a map of.
     """
     if not axes.horizontal or axes.latitude is None or axes.longitude is None:
-        raise InputError(
-            "there is no map of a single column or of data without latitude and longitude", where="figures: map",
-            mend="leave the maps out of `figures` in the recipe",
-        )
-    kind = grid_kind(ds, axes)
+        raise _no_map("there is no map of a single column or of data without latitude and longitude")
     longitude, latitude = ds[axes.longitude], ds[axes.latitude]
-    if kind == "rectilinear":
-        columns = _pairs(longitude, _bounds(ds, longitude), whole_turn=True)
-        rows = np.clip(_pairs(latitude, _bounds(ds, latitude), whole_turn=False), -90, 90)
+    if grid_kind(ds, axes) == "rectilinear":
+        columns = _pairs(longitude, bounds_of(ds, longitude), whole_turn=True)
+        rows = np.clip(_pairs(latitude, bounds_of(ds, latitude), whole_turn=False), -90, 90)
         return Grid(columns, rows, rectilinear=True)
-    corners = _bounds(ds, longitude), _bounds(ds, latitude)
-    if corners[0] is not None and corners[1] is not None:
-        lon, lat = (np.reshape(side, (-1, side.shape[-1])) for side in corners if side is not None)
-    elif kind == "curvilinear":
-        lon, lat = _corners_between(_degrees(longitude), _degrees(latitude))
-    else:
-        raise InputError(
-            "cells of an unstructured grid can only be drawn from their corners", where=f"coordinate '{longitude.name}'",
-            mend="give the coordinates a `bounds` variable with the corners of every cell, or leave the map out",
-        )
-    return Grid(lon, lat, rectilinear=False)
+    longitude, latitude = xr.broadcast(longitude.reset_coords(drop=True), latitude.reset_coords(drop=True))
+    lon, lat = (degrees(part.transpose(*axes.horizontal)).ravel() for part in (longitude, latitude))
+    known = places(lon, lat) >= 0
+    found = patches_of(ds, axes, ds[axes.longitude], ds[axes.latitude], known)
+    if not (np.isfinite(lon) & np.isfinite(lat)).any():
+        raise _no_map("no cell of the grid has a position")
+    if found is None:
+        return Grid(lon[:, None], lat[:, None], False, np.arange(lon.size), (lon, lat))
+    lon, lat = np.where(known, lon, np.nan), np.where(known, lat, np.nan)
+    return Grid(found.longitudes, found.latitudes, False, found.cells, (lon, lat))
 
 
-def mesh(grid: Grid, centre: float) -> Mesh:
-    """A rectilinear grid cut at the meridian opposite to `centre` (degrees east), in pieces of at most one degree."""
-    west, east = np.sort(grid.longitudes, axis=1).T
-    west = (west - centre + 180) % 360 - 180
-    east = west + np.ptp(grid.longitudes, axis=1)
-    columns = np.arange(west.size)
-    beyond = east > 180 + _TOUCHING
-    lows = np.concatenate([west, np.full(beyond.sum(), -180.0)])
-    highs = np.concatenate([np.minimum(east, 180.0), east[beyond] - 360])
-    x_edges, x_cells = _pieces(lows, highs, np.concatenate([columns, columns[beyond]]))
-    south, north = np.sort(grid.latitudes, axis=1).T
-    y_edges, y_cells = _pieces(south, north, np.arange(south.size))
-    return Mesh(x_edges, y_edges, x_cells, y_cells)
+def _no_map(why: str) -> InputError:
+    return InputError(why, where="figures: map", mend="leave the maps out of `figures` in the recipe")
 
 
-def outlines(grid: Grid, centre: float, uncut: bool) -> Outlines:
-    """The cells of any grid as rings, (corners, 2) degrees.
+def outlines(grid: Grid, centre: float, *, uncut: bool, reach: tuple[float, float] = (-90.0, 90.0)) -> Outlines:
+    """The cells of a grid that is not rectilinear, as far as they meet the latitudes of `reach`.
 
     Those that meet the outer meridian or hold a pole are cut there, unless `uncut` (a view of a pole has no such meridian).
     """
@@ -157,24 +152,46 @@ def outlines(grid: Grid, centre: float, uncut: bool) -> Outlines:
     steps = (np.diff(grid.longitudes, axis=1, append=grid.longitudes[:, :1]) + 180) % 360 - 180
     lon = np.concatenate([start, start + np.cumsum(steps, axis=1)], axis=1)
     lat = np.concatenate([grid.latitudes, grid.latitudes[:, :1]], axis=1)
-    valid = np.isfinite(lon).all(axis=1) & np.isfinite(lat).all(axis=1)
-    rings = np.stack([lon, lat], axis=-1)
+    around = np.abs(lon[:, -1] - lon[:, 0]) > 180
+    area = np.abs((lon[:, :-1] * lat[:, 1:] - lon[:, 1:] * lat[:, :-1]).sum(axis=1)) / 2
+    valid = np.isfinite(area) & (around | (area > _FLAT))
+    valid &= (lat.max(axis=1) >= reach[0]) & (lat.min(axis=1) <= reach[1])
+    split = valid & (around | (lon.min(axis=1) < -180) | (lon.max(axis=1) > 180)) & (not uncut)
+    whole = np.flatnonzero(valid & ~split)
+    rings = np.stack([lon[whole, :-1], lat[whole, :-1]], axis=-1)
     if uncut:
         rings[..., 0] = (rings[..., 0] + 180) % 360 - 180
-        return Outlines(tuple(rings[valid]), np.flatnonzero(valid))
-    around = valid & (np.abs(lon[:, -1] - lon[:, 0]) > 180)
-    split = around | (valid & ((lon.min(axis=1) < -180) | (lon.max(axis=1) > 180)))
-    whole = np.flatnonzero(valid & ~split)
-    pieces, cells = list(rings[whole]), [int(cell) for cell in whole]
+    quads, places_of = _four_sided(rings)
+    pieces: list[Floats] = []
+    owners: list[int] = []
     for cell in np.flatnonzero(split):
-        ring = rings[cell]
-        if around[cell]:
-            pole = float(np.copysign(90.0, ring[:, 1].mean()))
-            ring = np.concatenate([ring, [[ring[-1, 0], pole], [ring[0, 0], pole]]])
-        parts = _cut(ring)
+        ring = np.stack([lon[cell], lat[cell]], axis=-1)
+        parts = _cut(_over_the_pole(ring) if around[cell] else ring)
         pieces += parts
-        cells += [int(cell)] * len(parts)
-    return Outlines(tuple(pieces), np.asarray(cells, dtype=np.intp))
+        owners += [int(grid.cells[cell])] * len(parts)
+    return Outlines(quads, grid.cells[whole[places_of]], tuple(pieces), np.asarray(owners, dtype=np.intp))
+
+
+def _four_sided(rings: Floats) -> tuple[Floats, Indices]:
+    """Convex rings (pieces, corners, 2) as a fan of pieces with four corners, and the ring of each."""
+    count, corners, _ = rings.shape
+    if corners == 4:
+        return rings, np.arange(count)
+    found, owners = [], []
+    for first in range(1, max(corners - 1, 2), 2):
+        chosen = [0, first, min(first + 1, corners - 1), min(first + 2, corners - 1)]
+        found.append(rings[:, chosen])
+        owners.append(np.arange(count))
+    quads = np.concatenate(found)
+    x, y = quads[..., 0], quads[..., 1]
+    drawn = np.abs((x * np.roll(y, -1, axis=1) - np.roll(x, -1, axis=1) * y).sum(axis=1)) / 2 > _FLAT
+    return quads[drawn], np.concatenate(owners)[drawn]
+
+
+def _over_the_pole(ring: Floats) -> Floats:
+    """A ring that goes once around a pole, with the pole as its other side."""
+    pole = float(np.copysign(90.0, ring[:, 1].mean()))
+    return np.concatenate([ring, [[ring[-1, 0], pole], [ring[0, 0], pole]]])
 
 
 def _cut(ring: Floats) -> list[Floats]:
@@ -189,29 +206,9 @@ def _cut(ring: Floats) -> list[Floats]:
     return parts
 
 
-def _pieces(lows: Floats, highs: Floats, cells: Indices) -> tuple[Floats, Indices]:
-    """Ascending edges and the cell between each two; overlaps go to the first cell, gaps get -1."""
-    edges: list[float] = []
-    owners: list[int] = []
-    for place in np.lexsort((cells, lows)):
-        low, high = float(lows[place]), float(highs[place])
-        if edges:
-            if low - edges[-1] > _TOUCHING:
-                edges.append(low)
-                owners.append(-1)
-            low = edges[-1]
-        if high - low <= _TOUCHING:
-            continue
-        edges = edges or [low]
-        parts = int(np.ceil((high - low) / _FINEST - _TOUCHING))
-        edges += [float(edge) for edge in np.linspace(low, high, parts + 1)[1:]]
-        owners += [int(cells[place])] * parts
-    return np.asarray(edges), np.asarray(owners, dtype=np.intp)
-
-
 def _pairs(coordinate: xr.DataArray, bounds: Floats | None, whole_turn: bool) -> Floats:
     """(n, 2) edges of the cells along one axis, degrees."""
-    centres = np.atleast_1d(_degrees(coordinate))
+    centres = np.atleast_1d(degrees(coordinate))
     if whole_turn:
         centres = np.unwrap(centres, period=360)
     if bounds is not None and bounds.shape == (centres.size, 2):
@@ -223,36 +220,3 @@ def _pairs(coordinate: xr.DataArray, bounds: Floats | None, whole_turn: bool) ->
     middles = (centres[:-1] + centres[1:]) / 2
     edges = np.concatenate([[2 * centres[0] - middles[0]], middles, [2 * centres[-1] - middles[-1]]])
     return np.stack([edges[:-1], edges[1:]], axis=1)
-
-
-def _bounds(ds: xr.Dataset, coordinate: xr.DataArray) -> Floats | None:
-    name = {**coordinate.encoding, **coordinate.attrs}.get("bounds")
-    if name is None or name not in ds.variables:
-        return None
-    bounds = ds[name].transpose(*coordinate.dims, ...)
-    return _degrees(bounds.assign_attrs({"units": coordinate.attrs.get("units", ""), **bounds.attrs}))
-
-
-def _degrees(coordinate: xr.DataArray) -> Floats:
-    values: Floats = np.asarray(coordinate.values, dtype=np.float64)
-    turns: Floats = np.degrees(values) if str(coordinate.attrs.get("units", "")).startswith("rad") else values
-    return turns
-
-
-def _corners_between(longitude: Floats, latitude: Floats) -> tuple[Floats, Floats]:
-    """Corners halfway between the centres of a 2-D grid, averaged as points on the sphere; rims are extrapolated."""
-    lon, lat = np.radians(longitude), np.radians(latitude)
-    points = np.stack([np.cos(lat) * np.cos(lon), np.cos(lat) * np.sin(lon), np.sin(lat)], axis=-1)
-    for axis in (0, 1):
-        first, last = np.take(points, [0], axis), np.take(points, [-1], axis)
-        inner = (1, -2) if points.shape[axis] > 1 else (0, 0)
-        second, before = (np.take(points, [place], axis) for place in inner)
-        wide = np.concatenate([2 * first - second, points, 2 * last - before], axis)
-        points = (np.take(wide, range(wide.shape[axis] - 1), axis) + np.take(wide, range(1, wide.shape[axis]), axis)) / 2
-    node_lon = np.degrees(np.arctan2(points[..., 1], points[..., 0]))
-    node_lat = np.degrees(np.arctan2(points[..., 2], np.hypot(points[..., 0], points[..., 1])))
-    lon_out, lat_out = (
-        np.stack([node[:-1, :-1], node[:-1, 1:], node[1:, 1:], node[1:, :-1]], axis=-1).reshape(-1, 4)
-        for node in (node_lon, node_lat)
-    )
-    return lon_out, lat_out

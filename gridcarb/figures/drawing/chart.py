@@ -16,13 +16,17 @@ from matplotlib.figure import Figure
 from matplotlib.patches import Patch, PathPatch
 from matplotlib.path import Path as Outline
 
-from gridcarb.figures.cells import Grid, mesh, outlines
+from gridcarb.figures.cells import Grid, outlines
 from gridcarb.figures.drawing import coastline, theme
 from gridcarb.figures.drawing.scales import Scale
 from gridcarb.figures.drawing.views import View
+from gridcarb.figures.mesh import mesh
 
 Floats = npt.NDArray[np.float64]
 Mask = npt.NDArray[np.bool_]
+
+_DOTS = (1.5, 40.0)
+"""Least and greatest size of a dot, in square points."""
 
 _SIDE = 0.62
 """Margin left and right of the map, in inches."""
@@ -89,23 +93,73 @@ def _fill(ax: GeoAxes, plate: Plate) -> None:
 
 def _paint(ax: GeoAxes, plate: Plate, colours: Floats) -> None:
     """The cells in their colours, and the missing ones hatched."""
-    view = plate.view
     if plate.grid.rectilinear:
-        net = mesh(plate.grid, view.centre)
-        east, north = np.meshgrid(net.x_edges, np.clip(net.y_edges, *_reach(view)))
-        nodes = view.place(east, north)
-        ax.add_collection(QuadMesh(
-            nodes, facecolors=net.spread(colours, 0.0).reshape(-1, 4), antialiased=False, edgecolors="none", zorder=2,
-        ), autolim=False)
-        _hatch(ax, _strips(nodes, net.spread(plate.missing, False)))
-        return
-    pieces = outlines(plate.grid, view.centre, uncut=view.shape == "disc")
-    rings = [view.place(ring[:, 0], np.clip(ring[:, 1], *_reach(view))) for ring in pieces.rings]
+        _paint_net(ax, plate, colours)
+    elif plate.grid.of_points:
+        _paint_points(ax, plate, colours.reshape(-1, 4))
+    else:
+        _paint_cells(ax, plate, colours.reshape(-1, 4))
+
+
+def _paint_net(ax: GeoAxes, plate: Plate, colours: Floats) -> None:
+    net = mesh(plate.grid, plate.view.centre)
+    east, north = np.meshgrid(net.x_edges, np.clip(net.y_edges, *_reach(plate.view)))
+    nodes = plate.view.place(east, north)
+    _add_net(ax, nodes, net.spread(colours, 0.0).reshape(-1, 4))
+    _hatch(ax, _strips(nodes, net.spread(plate.missing, False)))
+
+
+def _paint_cells(ax: GeoAxes, plate: Plate, colours: Floats) -> None:
+    view = plate.view
+    pieces = outlines(plate.grid, view.centre, uncut=view.shape == "disc", reach=_reach(view))
+    quads = view.place(pieces.quads[..., 0], np.clip(pieces.quads[..., 1], *_reach(view)))
+    rings = [view.place(ring[:, 0], ring[:, 1]) for ring in pieces.rings]
+    shown = colours[pieces.owners][:, 3] > 0
+    _add_net(ax, _apart(quads[shown]), _with_gaps(colours[pieces.owners[shown]]))
     ax.add_collection(PolyCollection(
-        rings, facecolors=colours.reshape(-1, 4)[pieces.cells], antialiaseds=False, edgecolors="none", zorder=2
+        rings, facecolors=colours[pieces.ring_owners], antialiaseds=False, edgecolors="none", zorder=2
     ), autolim=False)
-    hidden = plate.missing.reshape(-1)[pieces.cells]
-    _hatch(ax, [ring for ring, missing in zip(rings, hidden, strict=True) if missing])
+    missing = plate.missing.reshape(-1)
+    lost = [ring for ring, hidden in zip(rings, missing[pieces.ring_owners], strict=True) if hidden]
+    _hatch(ax, [*quads[missing[pieces.owners]], *lost])
+
+
+def _paint_points(ax: GeoAxes, plate: Plate, colours: Floats) -> None:
+    """A dot a cell: large while there are few, never so large that they hide the map."""
+    view, missing = plate.view, plate.missing.reshape(-1)
+    lon, lat = (side[:, 0] for side in (plate.grid.longitudes, plate.grid.latitudes))
+    seen = np.isfinite(lon) & np.isfinite(lat) & (lat >= _reach(view)[0]) & (lat <= _reach(view)[1])
+    colours = colours.copy()
+    colours[missing] = to_rgba(theme.MISSING)
+    size = float(np.clip(2e4 / max(seen.sum(), 1), *_DOTS))
+    at = view.place((lon[seen] - view.centre + 180) % 360 - 180, lat[seen])
+    ax.scatter(at[:, 0], at[:, 1], s=size, c=colours[seen], linewidths=0.5 if size > 10 else 0.0, edgecolors=theme.FRAME,
+               zorder=4.5)
+
+
+def _add_net(ax: GeoAxes, nodes: Floats, colours: Floats) -> None:
+    """A net of (y + 1, x + 1, 2) nodes with a colour for each of its (y * x) pieces."""
+    net = QuadMesh(nodes, facecolors=colours, antialiased=False, edgecolors="none", zorder=2)
+    ax.add_collection(net, autolim=False)
+
+
+def _apart(quads: Floats) -> Floats:
+    """(pieces, 4, 2) corners as a net one piece high in which no piece touches the next.
+
+    A net is drawn many times faster than as many polygons, and in a tenth of the memory.
+    """
+    gap = np.full(2, np.nan)
+    nodes = np.empty((2, quads.shape[0], 3, 2))
+    nodes[0, :, 0], nodes[0, :, 1], nodes[:, :, 2] = quads[:, 0], quads[:, 1], gap
+    nodes[1, :, 0], nodes[1, :, 1] = quads[:, 3], quads[:, 2]
+    return nodes.reshape(2, -1, 2)
+
+
+def _with_gaps(colours: Floats) -> Floats:
+    """The colours of the pieces of `_apart`, and none for what lies between them."""
+    spread = np.zeros((colours.shape[0], 3, 4))
+    spread[:, 0] = colours
+    return spread.reshape(-1, 4)[:-1]
 
 
 def _reach(view: View) -> tuple[float, float]:

@@ -26,8 +26,11 @@ def plate_of(result: xr.Dataset, choice: Choice, settings: MapSettings) -> Plate
     variable = choice.slice_of(result)
     values = _values(variable, is_status=bool(field.flags))
     empty = np.isnan(values)
-    ground = solid_ground(result, choice, empty)
     grid = grid_of(result, choice.axes)
+    hidden = grid.covered(empty)
+    values[hidden] = np.nan
+    ground, missing = solid_ground(result, choice, empty) & ~hidden, empty & ~hidden
+    missing &= ~ground
     view = _view(grid, ~ground, settings)
     name = str(variable.attrs.get("long_name", field.long_name))
     label, entries = "", []
@@ -41,7 +44,7 @@ def plate_of(result: xr.Dataset, choice: Choice, settings: MapSettings) -> Plate
         seen = np.where(_seen(grid, view, values.shape), values, np.nan)
         scale, label = scale_of(seen, ink, settings.limits or ink.limits), with_units(name, units)
     return Plate(
-        grid=grid, values=values, ground=ground, missing=empty & ~ground, view=view, scale=scale,
+        grid=grid, values=values, ground=ground, missing=missing, view=view, scale=scale,
         title=settings.title or sentence(name), subtitle=choice.label, label=label, entries=entries,
         ground_word="land" if _on_top(result, choice) else "land or sea floor",
         coast=settings.coastline and result.attrs.get("geography") != "invented",
@@ -84,14 +87,18 @@ def _view(grid: Grid, wet: Mask, settings: MapSettings) -> views.View:
 
 
 def _least_land(grid: Grid, wet: Mask) -> float:
-    """The meridian, in steps of 10 degrees, opposite to the band of 20 degrees with the least water from 60 S to 60 N."""
-    centres = np.arange(-180.0, 180.0, 10.0)
-    lon, lat = grid.middles(wet.shape)
-    cuts = []
-    for centre in centres:
-        near = (np.abs((lon - centre) % 360 - 180) <= 10) & (np.abs(lat) <= 60)
-        cuts.append(round(float(wet[near].mean()), 6) if near.any() else 0.0)
-    return float(centres[int(np.argmin(cuts))])
+    """The meridian, in steps of 10 degrees, opposite to the band of 20 degrees with the least water from 60 S to 60 N.
+
+    Counted on squares of 10 degrees, so that places where a grid has no cells count as land.
+    """
+    lon, lat = (side.ravel() for side in grid.middles(wet.shape))
+    near = np.abs(lat) < 60
+    square = (np.floor(lat[near] / 10) + 6) * 36 + np.floor(lon[near] % 360 / 10) % 36
+    counts = [np.bincount(square[of].astype(np.intp), minlength=432) for of in (slice(None), wet.ravel()[near])]
+    shares = (counts[1] / np.maximum(counts[0], 1)).reshape(12, 36).mean(axis=0)
+    water = np.round(shares + np.roll(shares, 1), 6)  # of the band about the meridian at the western side of each square
+    opposite = np.roll(water, 18)[np.arange(-18, 18)]
+    return float(10 * np.argmin(opposite) - 180)
 
 
 def _seen(grid: Grid, view: views.View, shape: tuple[int, ...]) -> Mask:

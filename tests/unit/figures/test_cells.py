@@ -10,7 +10,8 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from gridcarb.axes import Axes
-from gridcarb.figures.cells import Grid, grid_of, mesh, outlines
+from gridcarb.figures.cells import Grid, grid_of, outlines
+from gridcarb.figures.mesh import mesh
 
 
 def rectilinear(lon: npt.NDArray[np.float64], lat: npt.NDArray[np.float64]) -> Grid:
@@ -87,11 +88,12 @@ def test_a_tilted_grid_covers_the_globe_once(centre: float, tilt: float) -> None
     x, z = x * np.cos(turn) + z * np.sin(turn), z * np.cos(turn) - x * np.sin(turn)
     nodes = np.degrees(np.arctan2(y, x)), np.degrees(np.arcsin(np.clip(z, -1, 1)))
     corners = [np.stack([n[:-1, :-1], n[:-1, 1:], n[1:, 1:], n[1:, :-1]], axis=-1).reshape(-1, 4) for n in nodes]
-    found = outlines(Grid(corners[0], corners[1], rectilinear=False), centre, uncut=False)
-    total = sum(shapely.Polygon(ring).area for ring in found.rings)
+    found = outlines(Grid(corners[0], corners[1], rectilinear=False, cells=np.arange(24 * 12)), centre, uncut=False)
+    total = shapely.polygons([*found.quads]).tolist() + [shapely.Polygon(ring) for ring in found.rings]
+    total = sum(piece.area for piece in total)
     assert np.isclose(total, 360 * 180, rtol=0.02)  # sides are straight in longitude and latitude here
-    assert max(np.abs(ring[:, 0]).max() for ring in found.rings) <= 180
-    assert set(found.cells) == set(range(24 * 12))
+    assert max(np.abs(ring[:, 0]).max() for ring in (*found.quads, *found.rings)) <= 180
+    assert {*found.owners, *found.ring_owners} == set(range(24 * 12))
 
 
 def test_corners_are_derived_for_curved_grids_across_the_date_line() -> None:

@@ -27,7 +27,7 @@ def solid_ground(result: xr.Dataset, choice: Choice, empty: Mask) -> Mask:
     axes = choice.axes
     told = STATUS in result
     field = result[STATUS] if told else result[choice.key]
-    if axes.vertical in field.dims and axes.vertical in result[choice.key].dims:
+    if axes.vertical in field.dims and axes.vertical in result[choice.key].dims and choice.level.within is None:
         levels = sorted((choice.level.index or 0, *(choice.level.below if told else ())))
         field = field.isel({axes.vertical: levels})
     wet = np.zeros(empty.shape, dtype=bool)

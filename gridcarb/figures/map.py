@@ -73,7 +73,7 @@ def check(header: xr.Dataset, settings: MapSettings, fields: Collection[str] = (
     ------
     UnknownWordError, InputError : no such field, depth, time or place.
     """
-    choice = _chosen(header, settings)
+    choice = _chosen(header, settings, fields)
     grid = grid_of(header, choice.axes)
     window = settings.window()
     if window and not grid.holds(*window):
@@ -111,8 +111,8 @@ def draw(result: xr.Dataset, settings: MapSettings, folder: Path) -> Path:
     return publish(plate_of(result, choice, settings), folder / file_name(result, settings))
 
 
-def _chosen(ds: xr.Dataset, settings: MapSettings) -> Choice:
-    return choose(ds, settings.field, settings.depth, settings.time)
+def _chosen(ds: xr.Dataset, settings: MapSettings, fields: Collection[str] = ()) -> Choice:
+    return choose(ds, settings.field, settings.depth, settings.time, fields)
 
 
 def file_name(header: xr.Dataset, settings: MapSettings) -> str:

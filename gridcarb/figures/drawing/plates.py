@@ -9,6 +9,7 @@ import xarray as xr
 from gridcarb.fields import FIELDS, Ink
 from gridcarb.figures.cells import Grid, grid_of
 from gridcarb.figures.choice import Choice
+from gridcarb.figures.columns import slice_at
 from gridcarb.figures.drawing import views
 from gridcarb.figures.drawing.chart import Plate
 from gridcarb.figures.drawing.scales import kinds, scale_of
@@ -23,14 +24,14 @@ Mask = npt.NDArray[np.bool_]
 def plate_of(result: xr.Dataset, choice: Choice, settings: MapSettings) -> Plate:
     """Read the slice and decide how it is drawn."""
     field = FIELDS[choice.key]
-    variable = choice.slice_of(result)
+    variable, below = slice_at(result, choice)
     values = _values(variable, is_status=bool(field.flags))
     empty = np.isnan(values)
     grid = grid_of(result, choice.axes)
     hidden = grid.covered(empty)
     values[hidden] = np.nan
-    ground, missing = solid_ground(result, choice, empty) & ~hidden, empty & ~hidden
-    missing &= ~ground
+    ground = (solid_ground(result, choice, empty) | below) & ~hidden
+    missing = empty & ~ground & ~hidden
     view = _view(grid, ~ground, settings)
     name = str(variable.attrs.get("long_name", field.long_name))
     label, entries = "", []

@@ -17,7 +17,7 @@ import numpy.typing as npt
 from gridcarb.errors import InputError
 from gridcarb.netcdf_lock import NETCDF_LOCK
 from gridcarb.sources.places import is_url, split
-from gridcarb.sources.storage import open_stored, stamp, storage_kind, unreadable
+from gridcarb.sources.storage import kind_behind_url, open_stored, stamp, storage_kind, unreadable
 from gridcarb.sources.stored import Key, Stored
 
 LIMIT = 32
@@ -93,6 +93,7 @@ def close_all() -> None:
     """Close every file this process still holds open for reading."""
     NETCDF_HANDLES.close()
     ZARR_HANDLES.close()
+    kind_behind_url.cache_clear()
 
 
 def _is_zarr(path: str) -> bool:

@@ -32,12 +32,12 @@ class Lender:
     def completed(self, header: Header) -> Header:
         """A header with what its variables point at and other files hold on the same dimensions, if there is any."""
         sizes = {dim: size for head in header.heads.values() for dim, size in zip(head.dims, head.shape, strict=True)}
-        asked = _pointed(header.heads.values()) - header.heads.keys()
+        asked = [name for name in _pointed(header.heads.values()) if name not in header.heads]
         lent: dict[str, tuple[Header, Head]] = {}
         for _ in range(3):  # a mesh points at coordinates, which point at bounds
-            found = {name: pair for name in asked - lent.keys() if (pair := self._find(name, header, sizes))}
+            found = {name: pair for name in asked if name not in lent and (pair := self._find(name, header, sizes))}
             lent |= found
-            asked = _pointed(head for _, head in found.values()) - header.heads.keys()
+            asked = [name for name in _pointed(head for _, head in found.values()) if name not in header.heads]
         lent |= self._places(header, sizes)
         if not lent:
             return header
@@ -90,14 +90,14 @@ def borrowed(headers: Iterable[Header]) -> list[Notice]:
     ]
 
 
-def _pointed(heads: Iterable[Head]) -> set[str]:
-    found: set[str] = set()
+def _pointed(heads: Iterable[Head]) -> list[str]:
+    """Names of the variables that describe others, each once."""
+    found: list[str] = []
     for head in heads:
         keys = [key for key in head.attrs if key in _POINTING or _of_mesh(head, key)]
-        found |= {word for key in keys for word in words(head.attrs[key]) if not word.endswith(":")}
-        if isinstance(mesh := head.attrs.get("mesh"), str):
-            found.add(mesh)
-    return found
+        found += [word for key in keys for word in words(head.attrs[key]) if not word.endswith(":")]
+        found += words(head.attrs.get("mesh"))
+    return list(dict.fromkeys(found))
 
 
 def _of_mesh(head: Head, key: str) -> bool:

@@ -34,7 +34,7 @@ def storage_kind(path: str) -> Kind:
     """
     store = split(path)[0]
     if is_url(store):
-        return _kind_behind_url(store)
+        return kind_behind_url(store)
     place = Path(store)
     if place.is_dir():
         if any((place / name).is_file() for name in _ZARR_METADATA):
@@ -55,13 +55,14 @@ def storage_kind(path: str) -> Kind:
 
 
 @functools.lru_cache(maxsize=10_000)
-def _kind_behind_url(store: str) -> Kind:
+def kind_behind_url(store: str) -> Kind:
+    """What lies behind a URL, asked once as long as files are kept open."""
     with reached(store) as (system, inner):
         if any(system.exists(f"{inner}/{name}") for name in _ZARR_METADATA[:2]):
             return "zarr"
         if not system.isfile(inner):
             raise InputError("there is no file and no Zarr store", where=store, mend="correct `inputs: files`")
-        head = system.cat_file(inner, 0, _HDF5_STARTS[-1] + len(_HDF5))
+        head = system.cat_file(inner, start=0, end=_HDF5_STARTS[-1] + len(_HDF5))
     if head[:4] in _CLASSIC or any(head[at:at + len(_HDF5)] == _HDF5 for at in _HDF5_STARTS):
         return "netcdf"
     raise _neither(store)
@@ -145,7 +146,7 @@ def fingerprint(path: str) -> str:
     if is_url(store):
         with reached(store) as (system, inner):
             for place in _heads_behind_url(store) or [inner]:
-                digest.update(system.cat_file(place, 0, _HEAD_BYTES))
+                digest.update(system.cat_file(place, start=0, end=_HEAD_BYTES))
         return digest.hexdigest()
     for head in _head_files(Path(store)):
         with head.open("rb") as file:

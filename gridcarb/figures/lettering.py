@@ -6,7 +6,10 @@ import re
 
 _POWERS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _WORD = re.compile(r"^([A-Za-zµ%]+)\^?(-?\d+)?$")
-_NAMES = {"umol": "µmol", "uatm": "µatm", "ueq": "µeq", "um": "µm", "degC": "°C", "degree_Celsius": "°C", "degrees": "°"}
+_NAMES = {
+    "umol": "µmol", "uatm": "µatm", "ueq": "µeq", "um": "µm", "degrees": "°", "degC": "°C", "degree_C": "°C",
+    "degree_Celsius": "°C",
+}
 
 
 def readable_units(units: str) -> str:

@@ -63,8 +63,10 @@ def _values(variable: xr.DataArray, is_status: bool) -> Floats:
 
 def _on_top(result: xr.Dataset, choice: Choice) -> bool:
     """Whether no level lies above this one, so that all solid ground in it is land."""
-    vertical = choice.axes.vertical
-    return vertical is None or choice.level.index is None or len(choice.level.below) == result.sizes[vertical] - 1
+    vertical, level = choice.axes.vertical, choice.level
+    if vertical is None or level.index is None:
+        return level.within is None
+    return len(level.below) == result.sizes[vertical] - 1
 
 
 def _view(grid: Grid, wet: Mask, settings: MapSettings) -> views.View:

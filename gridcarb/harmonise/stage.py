@@ -89,7 +89,7 @@ def _examine(
     draft, decided = _read_headers(raw, axes, present, settings, attributes, faults)
     decisions = tuple(decision for part in decided for decision in part.decisions)
     notices = tuple(notice for part in decided for notice in part.notices)
-    if draft is None or faults.found:
+    if draft is None or faults.found or absent:
         return Examination(decisions, notices)
     told, medians = faults.attempt(_check_sample, raw, draft, settings, faults) or ((), {})
     notices += told

@@ -132,7 +132,8 @@ def _solve(job: Job, region: Region, clock: _Clock) -> _Share:
     if job.volumes:
         solved = per_volume(solved, clothed.get("density"))
     clock.lap("solve")
-    tallies = _tallies(job.fields, solved.assign_coords(weights(raw, clothed, job.understanding, region)))
+    bare = solved.drop_vars(list(solved.coords))  # the coordinates of the grid may bear any name
+    tallies = _tallies(job.fields, bare.assign_coords(weights(raw, clothed, job.understanding, region)))
     clock.lap("summarise")
     return _Share(solved, tallies, clothed.attrs["masked_cells"])
 

@@ -218,6 +218,15 @@ def _lower_levels(
     return tuple(sorted(lower))
 
 
+def term_of(raw: xr.Dataset, masks: Mapping[str, MaskReading], reading: ParametricReading, name: str) -> Numbers:
+    """A term of a loaded block in m (or as a number); 0 if it was left out."""
+    for term in reading.terms:
+        if term.name == name:
+            found: Numbers = term.convert(decoded(raw, term.variable, masks))
+            return found
+    return xr.DataArray(0.0)
+
+
 def height(
     raw: xr.Dataset, masks: Mapping[str, MaskReading], reading: ParametricReading,
     instead: Mapping[str, Numbers] | None = None,
@@ -228,8 +237,8 @@ def height(
     missing or the formula has no value.
     """
     formula = FORMULAS[reading.kind]
-    terms = {term.name: term.convert(decoded(raw, term.variable, masks)) for term in reading.terms} | dict(instead or {})
-    values = {name: terms.get(name, xr.DataArray(0.0)) for name in (*formula.numbers, *formula.lengths)}
+    wanted = (*formula.numbers, *formula.lengths)
+    values = {name: term_of(raw, masks, reading, name) for name in wanted} | dict(instead or {})
     if formula.level:
         by_level = next(term for term in reading.terms if term.name == formula.level)
         values["lower"] = decoded(raw, by_level.variable, masks).isin(reading.lower)
@@ -287,8 +296,7 @@ def _misplaced(
     """
     z, eta = height(raw, masks, reading)
     z = -z if reading.downward else z
-    term = next(term for term in reading.terms if term.name == "depth")
-    floor = term.convert(decoded(raw, term.variable, masks))
+    floor = term_of(raw, masks, reading, "depth")
     wet = floor + eta > 0.0
     above = (z - eta.clip(min=0.0)).where(wet)
     below = (-z - floor).where(wet & (reading.kind != "ocean_sigma_z_coordinate"))

@@ -111,8 +111,8 @@ def clothe(raw: xr.Dataset, understanding: Understanding) -> xr.Dataset:
     """A loaded block, or any slice of the grid, as float64 numbers in canonical units.
 
     Gives the keys temperature (degC, in situ), salinity (practical), sea_pressure (dbar), dic, alkalinity, phosphate,
-    silicate (umol/kg) and, where amounts per volume were met or a density was stated, density (kg m-3), and where the understanding
-    knows it, cell_thickness (m); NaN where masked; dims in the order time, vertical, horizontal. Pressure, a constant
+    silicate (umol/kg), density (kg m-3) where amounts per volume were met or a density was stated, and cell_thickness (m)
+    where the understanding knows it; NaN where masked; dims in the order time, vertical, horizontal. Pressure, a constant
     density and an assumed nutrient have no more dims than they vary over, down to none.
     `attrs["masked_cells"]` counts the masked cells by rule. A cell's numbers do not depend on the slice it comes in.
     """

@@ -195,10 +195,7 @@ def _between(
 
 def _water_depth(raw: xr.Dataset, masks: Mapping[str, MaskReading], formula: ParametricReading) -> xr.DataArray:
     """From the sea surface of the moment to the floor (m)."""
-    terms = {term.name: term.convert(decoded(raw, term.variable, masks)) for term in formula.terms}
-    floor: xr.DataArray = abs(terms["depth"]) if formula.downward else terms["depth"]
-    eta: xr.DataArray = terms.get("eta", xr.DataArray(0.0))
-    return floor + eta
+    return parametric.term_of(raw, masks, formula, "depth") + parametric.term_of(raw, masks, formula, "eta")
 
 
 def _stated_edges(

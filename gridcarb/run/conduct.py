@@ -11,15 +11,13 @@ from datetime import UTC, datetime
 from pathlib import Path
 from typing import Any
 
-import xarray as xr
-
 from gridcarb.errors import GridcarbError, InputError, Notice
-from gridcarb.figures import FIGURES
 from gridcarb.products import PRODUCTS
+from gridcarb.run.derived import draw_figures, make_file
 from gridcarb.run.doing import do_blocks
 from gridcarb.run.frame import date_of_writing
 from gridcarb.run.journal import journal_head, journal_tail
-from gridcarb.run.plan import FIGURE_FOLDER, FILE, STATUS, STORE, Plan
+from gridcarb.run.plan import STATUS, STORE, Plan
 from gridcarb.run.report import Report, outcome_report
 from gridcarb.run.resume import Manner, Start, begin, what_next
 from gridcarb.run.stopping import Terminated, ends_tidily, why_it_ended
@@ -27,7 +25,6 @@ from gridcarb.run.task import Record, changed_inputs
 from gridcarb.run.watching import Watcher
 from gridcarb.write.journal import JOURNAL, write_journal
 from gridcarb.write.ledger import Marker
-from gridcarb.write.netcdf import export
 
 
 @dataclass(frozen=True)
@@ -111,7 +108,7 @@ def _conduct(start: Start, watcher: Watcher) -> Outcome:
         journal |= journal_head(plan, begun, notices, len(start.done) if start.resumed else None)
         write_journal(partial / JOURNAL, journal)
         _fill_store(start, watcher, sums)
-        written = _derive_files(plan, partial, watcher, sums)
+        written = _derive_files(plan, watcher, sums)
         start.note_derived(written.values())
         products = {key: tally.report() for key, tally in sums.tallies.items()}
         journal |= journal_tail("complete", products=products, masked_cells=sums.masked, seconds=sums.seconds,
@@ -157,33 +154,20 @@ def _refuse_nothing(sums: _Sums) -> None:
         )
 
 
-def _derive_files(plan: Plan, partial: Path, watcher: Watcher, sums: _Sums) -> dict[str, str]:
+def _derive_files(plan: Plan, watcher: Watcher, sums: _Sums) -> dict[str, str]:
     """The NetCDF file and the figures, from the finished store; what -> place inside the result folder."""
+    partial, output = plan.folder.partial, plan.recipe.output
     written: dict[str, str] = {}
-    if plan.recipe.output.zarr:
+    if output.zarr:
         written["Zarr store"] = STORE
-    if plan.recipe.output.netcdf:
-        watcher.message(f"exporting {FILE}")
+    if output.netcdf:
         with sums.timed("netcdf"):
-            export(partial / STORE, partial / FILE)
-        written["NetCDF file"] = FILE
+            written["NetCDF file"] = make_file(partial, watcher)
     if plan.recipe.figures:
         with sums.timed("figures"):
-            written |= _draw(plan, partial, watcher)
-    if not plan.recipe.output.zarr:
+            written |= draw_figures(plan.recipe, partial, watcher)
+    if not output.zarr:
         shutil.rmtree(partial / STORE)
-    return written
-
-
-def _draw(plan: Plan, partial: Path, watcher: Watcher) -> dict[str, str]:
-    folder = partial / FIGURE_FOLDER
-    folder.mkdir(exist_ok=True)
-    written = {}
-    with xr.open_zarr(partial / STORE, consolidated=False, chunks=None, decode_timedelta=False) as result:
-        for number, settings in enumerate(plan.recipe.figures, start=1):
-            watcher.message(f"drawing figure {number} of {len(plan.recipe.figures)}")
-            place = FIGURES[settings.kind].draw(result, settings, folder)
-            written[f"figure {number}"] = str(place.relative_to(partial))
     return written
 
 

@@ -35,6 +35,15 @@ def write_journal(path: Path, content: Mapping[str, object]) -> None:
         temporary.unlink(missing_ok=True)
 
 
+def read_journal(path: Path) -> dict[str, Any]:
+    """The journal at `path`; empty if there is none that can be read."""
+    try:
+        found = json.loads(path.read_text(encoding="utf-8"))
+    except (OSError, ValueError):
+        return {}
+    return found if isinstance(found, dict) else {}
+
+
 def _plain(value: object) -> Any:
     if isinstance(value, (np.generic, np.ndarray)):
         return value.tolist()

@@ -2,14 +2,20 @@
 
 from __future__ import annotations
 
+import os
+import shutil
 import zlib
 from collections.abc import Iterator, Mapping
 from pathlib import Path
 from typing import Any
 
+import netCDF4
+import numpy as np
 import zarr
 
-from gridcarb.write.encoding import file_checksum
+from gridcarb.netcdf_lock import NETCDF_LOCK
+from gridcarb.write.disk import room_for, settle
+from gridcarb.write.encoding import checksum, file_checksum
 from gridcarb.write.ledger import Marker
 from gridcarb.write.store import chunk_files, dims_of_array
 
@@ -32,7 +38,7 @@ class Proof:
 
     def damaged_frame(self, noted: Mapping[str, str]) -> list[str]:
         """The files of the frame that are not as noted, or gone."""
-        return [name for name, checksum in noted.items() if file_checksum(self.store / name) != checksum]
+        return [name for name, sum_then in noted.items() if file_checksum(self.store / name) != sum_then]
 
     def files(self, marker: Marker) -> Iterator[tuple[str, Path, str]]:
         """Field, chunk file and noted checksum of everything the block of `marker` has in the store.
@@ -44,12 +50,12 @@ class Proof:
             region = marker.slices()
             selection = [slice(*region.get(dim, slice(None)).indices(size)[:2])
                          for dim, size in zip(dims_of_array(array), array.shape, strict=True)]  # fmt: skip
-            for path, checksum in zip(chunk_files(self.store, array, selection), noted, strict=True):
-                yield field, path, checksum
+            for path, sum_then in zip(chunk_files(self.store, array, selection), noted, strict=True):
+                yield field, path, sum_then
 
     def damaged_chunks(self, marker: Marker) -> list[tuple[str, Path]]:
         """Field and file of each chunk of a block that is not as its marker says."""
-        return [(field, path) for field, path, checksum in self.files(marker) if file_checksum(path) != checksum]
+        return [(field, path) for field, path, sum_then in self.files(marker) if file_checksum(path) != sum_then]
 
     def _array(self, field: str) -> zarr.Array[Any]:
         if field not in self._arrays:
@@ -57,16 +63,67 @@ class Proof:
         return self._arrays[field]
 
 
+class FileProof:
+    """The NetCDF file of a result, to be held against the markers of its blocks; one that is not there is not damaged."""
+
+    def __init__(self, path: Path) -> None:
+        self._path = path
+        self._file: netCDF4.Dataset | None = None
+        self._opens = path.is_file()
+
+    def __enter__(self) -> FileProof:
+        if self._opens:
+            with NETCDF_LOCK:
+                try:
+                    self._file = netCDF4.Dataset(self._path)
+                    self._file.set_auto_maskandscale(False)
+                except (OSError, RuntimeError):  # which is told of the file as a whole
+                    self._opens = False
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        if self._file is not None:
+            with NETCDF_LOCK:
+                self._file.close()
+
+    def damaged_fields(self, marker: Marker) -> list[str]:
+        """The fields whose numbers in the file are not those the block of `marker` has written."""
+        return [field for field, noted in marker.values.items() if self._opens and self._checksum(field, marker) != noted]
+
+    def _checksum(self, field: str, marker: Marker) -> str:
+        assert self._file is not None
+        region = marker.slices()
+        with NETCDF_LOCK:
+            try:
+                variable = self._file.variables[field]
+                values = variable[tuple(region.get(dim, slice(None)) for dim in variable.dimensions)]
+            except (KeyError, OSError, RuntimeError):
+                return "unreadable"
+        return checksum(np.ascontiguousarray(values))
+
+
 def large_file_checksum(path: Path) -> str:
     """Checksum of a file of any size; "" if there is none."""
-    checksum = 0
+    so_far = 0
     try:
         with path.open("rb") as file:
             while piece := file.read(_PIECE):
-                checksum = zlib.crc32(piece, checksum)
+                so_far = zlib.crc32(piece, so_far)
     except FileNotFoundError:
         return ""
-    return f"crc32:{checksum:08x}"
+    return f"crc32:{so_far:08x}"
+
+
+def put_file(source: Path, target: Path) -> None:
+    """Give `target` the bytes of `source`, whole or not at all; if there is no source there is no target either."""
+    if not source.exists():
+        target.unlink(missing_ok=True)
+        return
+    target.parent.mkdir(parents=True, exist_ok=True)
+    temporary = target.with_name(f".{target.name}.{os.getpid()}")
+    with room_for(target, source.stat().st_size):
+        shutil.copyfile(source, temporary)
+        settle(temporary, target)
 
 
 def sweep_store(store: Path) -> None:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import hashlib
-import importlib
 import json
 import platform
 import signal
@@ -19,10 +18,8 @@ import gridcarb.run.task as tasks
 from gridcarb import speciate
 from gridcarb.citations import CITATIONS
 from gridcarb.errors import BlockError, InputError
-from gridcarb.run import conduct, prepare
+from gridcarb.run import conduct, derived, prepare
 from gridcarb.run.stopping import Terminated, ends_tidily
-
-conducting = importlib.import_module("gridcarb.run.conduct")  # the package offers a function of the same name
 
 
 def journal(folder: Path) -> dict:
@@ -302,7 +299,7 @@ def test_an_earlier_result_outlives_a_failure(recipe, watcher, monkeypatch, tmp_
     def fail(*_: object, **__: object) -> None:
         raise InputError("no export")
 
-    monkeypatch.setattr(conducting, "export", fail)
+    monkeypatch.setattr(derived, "export", fail)
     with pytest.raises(InputError, match="no export"):
         conduct(prepare(recipe(output={"replace": True, "netcdf": True})), watcher)
     assert {path: path.read_bytes() for path in (tmp_path / "result").rglob("*") if path.is_file()} == before
@@ -310,7 +307,7 @@ def test_an_earlier_result_outlives_a_failure(recipe, watcher, monkeypatch, tmp_
 
 def test_sigterm_ends_tidily_and_its_handler_is_put_back(recipe, watcher, monkeypatch, tmp_path) -> None:
     before = signal.getsignal(signal.SIGTERM)
-    monkeypatch.setattr(conducting, "export", lambda *_, **__: signal.raise_signal(signal.SIGTERM))
+    monkeypatch.setattr(derived, "export", lambda *_, **__: signal.raise_signal(signal.SIGTERM))
     with pytest.raises(Terminated) as caught:
         conduct(prepare(recipe(output={"netcdf": True})), watcher)
     assert caught.value.code == 143

@@ -15,7 +15,7 @@ from gridcarb.run.plan import draft
 from gridcarb.run.report import Report, Rows, Section
 from gridcarb.run.starter import starter_recipe
 from gridcarb.sources import InputsSettings
-from gridcarb.sources.survey import FileSurvey
+from gridcarb.sources.survey import FileSurvey, VariableSurvey
 from gridcarb.write.disk import sized
 
 _TITLES: Mapping[Level, str] = {
@@ -46,7 +46,8 @@ class Audit:
             rows = [row for finding in self.findings if finding.level == level for row in _rows(finding)]
             sections.append(Section(_TITLES[level], rows))
         sections.append(Section("In short", [(self.worst, _in_short(self.findings))]))
-        return Report([section for section in sections if section.rows], (), audit_data(self.inspection.survey, self.findings))
+        data = audit_data(self.inspection.survey, self.findings)
+        return Report([section for section in sections if section.rows], (), data)
 
     def starter(self, path: Path) -> str:
         """The text of a recipe for these inputs, to be kept at `path`."""
@@ -69,22 +70,32 @@ def audit_recipe(recipe: Recipe) -> Audit:
 
 
 def _content_rows(files: Sequence[FileSurvey]) -> Rows:
-    whole = [file for file in files if file.record]
+    """How many files, every field with the roles it can play, and what describes the grid."""
     rows: Rows = []
     if files:
-        size = sized(sum(file.record.size for file in whole if file.record))
-        broken = len(files) - len(whole)
-        rows.append(("files", f"{len(whole)}, {size}" + (f"; {broken} cannot be read" if broken else "")))
-    for holders, variable in alike(files):
-        size_words = " x ".join(f"{dim} {size}" for dim, size in variable.dims.items()) or "scalar"
-        place = f", in {len(holders)} files" if len(holders) > 1 else ""
-        chances = "; ".join(
-            f"{chance.role} ({chance.how})" if chance.taken else f"could be {chance.role}, not taken: {chance.why}"
-            for chance in variable.chances
-        )
-        said = chances or variable.why_none or variable.part
-        rows.append((variable.name, f"{size_words}, {variable.units or 'no units'}{place}: {said}"))
-    return rows
+        sizes = [file.record.size for file in files if file.record]
+        broken = len(files) - len(sizes)
+        rows.append(("files", f"{len(sizes)}, {sized(sum(sizes))}" + (f"; {broken} cannot be read" if broken else "")))
+    aside: dict[str, list[str]] = {"coordinate": [], "bounds": []}
+    variables = sorted(alike(files), key=lambda each: (not each[1].taken_as, each[1].part != "field"))
+    for holders, variable in variables:
+        if variable.part in aside and not variable.chances:
+            aside[variable.part].append(variable.name)
+        else:
+            rows.append((variable.name, _variable_words(variable, len(holders))))
+    titles = {"coordinate": "coordinates", "bounds": "bounds"}
+    return rows + [(titles[part], ", ".join(dict.fromkeys(names))) for part, names in aside.items() if names]
+
+
+def _variable_words(variable: VariableSurvey, files: int) -> str:
+    size = " x ".join(f"{dim} {size}" for dim, size in variable.dims.items()) or "scalar"
+    place = f", in {files} files" if files > 1 else ""
+    chances = "; ".join(
+        f"{chance.role} ({chance.how})" if chance.taken else f"could be {chance.role}, not taken: {chance.why}"
+        for chance in variable.chances
+    )
+    said = chances or f"no role: {variable.why_none}"
+    return f"{size}, {variable.units or 'no units'}{place}: {said}"
 
 
 def _rows(finding: Finding) -> Rows:

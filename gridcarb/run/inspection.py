@@ -13,7 +13,7 @@ from typing import Any
 import xarray as xr
 
 from gridcarb.errors import Faults, GridcarbError, Notice
-from gridcarb.fields import FIELDS, REQUIRED_ROLES
+from gridcarb.fields import FIELDS, REQUIRED_ROLES, ROLES
 from gridcarb.harmonise import Understanding, weigh
 from gridcarb.harmonise.settings import ReadingSettings
 from gridcarb.harmonise.stage import Examination, examine
@@ -21,8 +21,8 @@ from gridcarb.run import findings
 from gridcarb.run.findings import Finding
 from gridcarb.run.layout_in_files import chunk_findings
 from gridcarb.sources import Collection, InputsSettings, open_collection
+from gridcarb.sources.dates import Units
 from gridcarb.sources.survey import Survey, survey
-from gridcarb.sources.timeline import Units
 
 
 @dataclass(frozen=True, eq=False)
@@ -61,7 +61,7 @@ def inspect(inputs: InputsSettings, base: Path, reading: ReadingSettings) -> Ins
     told = (*(collection.notices if collection else ()), *examined.notices)
     found = [
         *(_described(collection) if collection else []), *findings.readings(examined.decisions),
-        *_sampled(examined.medians),
+        *(_masked(examined.understanding) if examined.understanding else []), *_sampled(examined.medians),
         *(chunk_findings(collection) if collection else []), *findings.assumptions(told),
         *findings.stops("files", files.found), *findings.stops("meaning", meaning.found),
     ]
@@ -80,6 +80,21 @@ def _examine(raw: xr.Dataset, reading: ReadingSettings, faults: Faults, collecti
         return found
     weighed = faults.attempt(weigh, raw, found.understanding, reading, collection.measures if collection else None)
     return replace(found, decisions=weighed.decisions, notices=weighed.notices, understanding=weighed) if weighed else found
+
+
+def _masked(understanding: Understanding) -> Iterator[Finding]:
+    """How missing values are marked, once for all roles that do it alike."""
+    groups: dict[str, list[str]] = {}
+    for role in ROLES:
+        if mask := understanding.masks.get(role):
+            marks = [f"{value:g} ({rule})" for rule, value in mask.fills] + ["NaN"]
+            ends = (("below", mask.low), ("above", mask.high))
+            edges = [f"{side} {end:g}" for side, end in ends if end is not None]
+            plain = (mask.scale, mask.offset) == (1.0, 0.0)
+            packing = "" if plain else f"; packed, scale {mask.scale:g} and offset {mask.offset:g}"
+            groups.setdefault(", ".join(marks + edges) + packing, []).append(role)
+    for told, roles in groups.items():
+        yield Finding("fine", "missing", f"{', '.join(roles)}: {told}")
 
 
 def _sampled(medians: Mapping[str, float]) -> Iterator[Finding]:

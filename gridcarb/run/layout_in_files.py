@@ -11,7 +11,7 @@ from gridcarb.run.findings import Finding
 from gridcarb.sources import ArraySource, Collection
 from gridcarb.write.disk import sized
 
-_LARGE = 64 * 2**20
+_LARGE = 32 * 2**20
 """A chunk of more bytes (uncompressed) makes small blocks dear: each decompresses the whole of every chunk it needs."""
 
 _SMALL = 16 * 2**10

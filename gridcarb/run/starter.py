@@ -63,7 +63,7 @@ class _Section:
             yield from _comment(self.comments.get(key, ()))
             yield f"  {key}: {_flow(value)}"
         for text, line in self.questions:
-            yield from _comment([f"QUESTION: {text}"])
+            yield from _comment([text if text == "or" else f"QUESTION: {text}"])
             yield f"  # {line}"
 
 
@@ -100,9 +100,10 @@ def _state(sections: Mapping[str, _Section], finding: Finding) -> None:
 def _ask(sections: Mapping[str, _Section], finding: Finding) -> None:
     entries = [entry for line in _LINE.findall(finding.cure) for entry in _entries(line)]
     text = f"{finding.text} ({finding.where})" if finding.where else finding.text
+    asked: set[str] = set()
     for name, key, value in entries:
-        sections[name].questions.append((text, f"{key}: {_flow(value)}"))
-        text = "or"
+        sections[name].questions.append(("or" if name in asked else text, f"{key}: {_flow(value)}"))
+        asked.add(name)
     if not entries:
         sections["inputs"].questions.append((text, finding.cure))
 
@@ -152,5 +153,5 @@ def _flow(value: object) -> str:
     """A value on one line of YAML."""
     yaml, stream = YAML(typ="safe", pure=True), io.StringIO()
     yaml.default_flow_style, yaml.width = True, 100_000
-    yaml.dump([value], stream)
-    return stream.getvalue().strip()[1:-1]
+    yaml.dump({"key": value}, stream)
+    return stream.getvalue().strip().removeprefix("{key: ").removesuffix("}")

@@ -5,6 +5,7 @@ Positions, areas, and the mask of the salinity of the top level at the first tim
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator, Mapping
 from dataclasses import replace
 from typing import Any
@@ -32,6 +33,9 @@ OCEAN_AREA = 3.6e14
 _TOLERANCE = 0.02
 _PIECE = 1_000_000
 """Cells looked at at once."""
+
+_MOST = 30_000_000
+"""Columns of a grid whose sea area is checked unasked, which reads the top level once."""
 
 _STATIONS = frozenset({"timeseries", "profile", "timeseriesprofile", "point", "trajectory", "trajectoryprofile"})
 
@@ -190,6 +194,9 @@ def _check_total(whole: _Whole, settings: ReadingSettings) -> Decided[None]:
     """The sea area of a grid that is, or seems, global against that of the ocean."""
     if settings.coverage == "part" or not (settings.coverage == "global" or whole.claims_the_globe()):
         return Decided(None)
+    if settings.coverage is None and math.prod(whole.shape) > _MOST:
+        because = "the grid is large; `reading: {coverage: global}` would have it checked"
+        return Decided(None, (Decision("sea area", "not checked against that of the ocean", because),))
     found = whole.sea_area()
     off = found / OCEAN_AREA - 1.0
     if abs(off) <= _TOLERANCE:

@@ -11,11 +11,12 @@ import numpy as np
 import numpy.typing as npt
 
 Numbers = npt.NDArray[np.float64]
+Vector = tuple[Numbers, Numbers, Numbers]
 
 RADIUS = 6371008.7714
 """Mean radius of the Earth, m: a third of twice the equatorial and once the polar radius of GRS80 (Moritz 2000)."""
 
-_PIECE = 65_536
+_PIECE = 16_384
 """Polygons worked on at a time, which bounds the memory of unit vectors."""
 
 
@@ -93,17 +94,26 @@ def _excess(lon: Numbers, lat: Numbers) -> Numbers:
     first, before = _vector(lon[:, 0], lat[:, 0]), _vector(lon[:, 1], lat[:, 1])
     for corner in range(2, lon.shape[-1]):
         after = _vector(lon[:, corner], lat[:, corner])
-        volume = _dot(first, np.cross(before - first, after - first))
+        volume = _dot(first, _cross(_minus(before, first), _minus(after, first)))
         cosines = 1.0 + _dot(first, before) + _dot(before, after) + _dot(after, first)
         total = total + 2.0 * np.arctan2(volume, cosines)
         before = after
     return np.asarray(np.abs(total))
 
 
-def _vector(lon: Numbers, lat: Numbers) -> Numbers:
+def _vector(lon: Numbers, lat: Numbers) -> Vector:
     lam, phi = np.radians(lon), np.radians(lat)
-    return np.stack([np.cos(phi) * np.cos(lam), np.cos(phi) * np.sin(lam), np.sin(phi)], axis=-1)
+    flat = np.cos(phi)
+    return flat * np.cos(lam), flat * np.sin(lam), np.sin(phi)
 
 
-def _dot(one: Numbers, two: Numbers) -> Numbers:
-    return np.asarray(one[:, 0] * two[:, 0] + one[:, 1] * two[:, 1] + one[:, 2] * two[:, 2])
+def _minus(one: Vector, two: Vector) -> Vector:
+    return one[0] - two[0], one[1] - two[1], one[2] - two[2]
+
+
+def _cross(one: Vector, two: Vector) -> Vector:
+    return one[1] * two[2] - one[2] * two[1], one[2] * two[0] - one[0] * two[2], one[0] * two[1] - one[1] * two[0]
+
+
+def _dot(one: Vector, two: Vector) -> Numbers:
+    return np.asarray(one[0] * two[0] + one[1] * two[1] + one[2] * two[2])

@@ -26,7 +26,7 @@ class BlockSettings(Settings):
 class QueueSettings(Settings):
     """Jobs of a batch queue, each holding `workers` that share `memory`."""
 
-    system: Literal["slurm", "pbs", "sge", "lsf", "oar", "moab", "htcondor"] = Field(description="kind of batch system")
+    system: Literal["slurm", "pbs", "sge", "lsf", "oar"] = Field(description="kind of batch system")
     jobs: Count = Field(1, description="jobs to ask for")
     name: Word | None = Field(None, description="queue or partition; default: that of the system")
     account: Word | None = Field(None, description="account or project the time is charged to")

@@ -18,7 +18,7 @@ from gridcarb.recipe import Recipe
 from gridcarb.recipe.text import parse
 from gridcarb.run.blocks import Layout, lay_out, reads_of_a_chunk
 from gridcarb.run.budget import Footprint, allowed_per_task, refuse_over_budget
-from gridcarb.run.engine import cores
+from gridcarb.run.engines import cores
 from gridcarb.run.findings import Finding, assumptions, stops
 from gridcarb.run.inspection import Inspection, inspect
 from gridcarb.run.task import Job
@@ -147,7 +147,7 @@ def _plan(
     workers = recipe.engine.workers or cores()
     footprint = _footprint(recipe, collection, fields)
     allowed = allowed_per_task(recipe.engine.memory_bytes, workers)
-    layout = _layout(recipe, collection, footprint, allowed, workers)
+    layout = _layout(recipe, collection, footprint, allowed, workers * recipe.engine.machines)
     column = layout.sizes[collection.axes.vertical] if collection.axes.vertical else 1
     refuse_over_budget(footprint, layout.cells_per_block, column=column, memory=recipe.engine.memory_bytes, workers=workers)
     return Plan(recipe, collection, understanding, layout, fields, workers, footprint, allowed, folder, seen.survey)

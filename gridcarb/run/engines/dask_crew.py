@@ -7,7 +7,7 @@ import itertools
 import logging
 import time
 import uuid
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import AbstractContextManager, contextmanager, suppress
 from typing import Any
 
@@ -63,7 +63,7 @@ def connected(target: Any, order: Order, say: Callable[[str], None]) -> Iterator
         ) from error
     with client:
         crew = DaskCrew(client)
-        if client.dashboard_link:
+        if "dashboard" in client.scheduler_info(n_workers=0)["services"]:
             say(f"dashboard: {client.dashboard_link}")
         crew.get_ready(order, say)
         yield crew
@@ -85,9 +85,14 @@ class DaskCrew:
         while not self._workers():
             time.sleep(0.2)
         say("preparing the chemistry on every worker (a few seconds the first time on a machine)")
+        first = {address.rpartition(":")[0]: address for address in self._workers()}
+        self._look_into(order, first.values())  # what one compiles, the others of its host find on its disk
+        self._look_into(order, self._workers().keys() - first.values())
+
+    def _look_into(self, order: Order, addresses: Iterable[str]) -> None:
         asked = {
             address: self._client.submit(_look_into, order, key=(f"{self._name}-ready", address), workers=[address])
-            for address in self._workers()
+            for address in addresses
         }
         # A worker that leaves meanwhile takes its answer along.
         while any(not future.done() for address, future in asked.items() if address in self._workers()):

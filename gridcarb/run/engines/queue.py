@@ -13,10 +13,11 @@ from gridcarb.run.budget import DEFAULT_TASK_BYTES, PROGRAM_BYTES
 from gridcarb.run.engines.crew import Crew, Order
 from gridcarb.run.engines.dask_crew import connected, dashboard, own_scheduler
 
-_CLASSES = {
-    "slurm": "SLURMCluster", "pbs": "PBSCluster", "sge": "SGECluster", "lsf": "LSFCluster", "oar": "OARCluster",
-    "moab": "MoabCluster", "htcondor": "HTCondorCluster",
+_SYSTEMS = {
+    "slurm": ("SLURMCluster", "account"), "pbs": ("PBSCluster", "account"), "sge": ("SGECluster", "project"),
+    "lsf": ("LSFCluster", "project"), "oar": ("OARCluster", "project"),
 }  # fmt: skip
+"""System -> class of dask-jobqueue, and its word for who is charged."""
 
 
 @contextmanager
@@ -43,20 +44,18 @@ def cluster(settings: EngineSettings, workers: int) -> Any:
     except ImportError as error:
         raise EngineError("a batch queue is reached with dask-jobqueue, which is not here", where="engine: queue",
                           mend="install it: pip install 'gridcarb[queue]'") from error
-    return getattr(jobqueue, _CLASSES[asked.system])(**words(settings, asked, workers))
+    return getattr(jobqueue, _SYSTEMS[asked.system][0])(**words(settings, asked, workers))
 
 
 def words(settings: EngineSettings, asked: QueueSettings, workers: int) -> dict[str, Any]:
     """What dask-jobqueue is told of one job; what the recipe leaves out is left to the user's own dask configuration."""
     said = {
         "cores": workers, "processes": workers, "python": settings.python,
-        "memory": f"{_job_bytes(settings, workers)} B",
-        "account": asked.account, "walltime": asked.walltime, "interface": asked.interface,
-        "job_extra_directives": list(asked.directives) or None, "job_script_prologue": list(asked.before) or None,
-        "scheduler_options": dashboard(""),
-        None if asked.system in ("moab", "htcondor") else "queue": asked.name,
+        "memory": f"{_job_bytes(settings, workers)} B", "queue": asked.name, _SYSTEMS[asked.system][1]: asked.account,
+        "walltime": asked.walltime, "interface": asked.interface, "job_extra_directives": list(asked.directives) or None,
+        "job_script_prologue": list(asked.before) or None, "scheduler_options": dashboard(""),
     }  # fmt: skip
-    return {str(key): value for key, value in said.items() if key and value is not None}
+    return {key: value for key, value in said.items() if value is not None}
 
 
 def _job_bytes(settings: EngineSettings, workers: int) -> int:

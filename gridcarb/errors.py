@@ -96,6 +96,12 @@ class EngineError(GridcarbError):
     exit_code = 7
 
 
+class DamageError(GridcarbError):
+    """A result that is not as it was written."""
+
+    exit_code = 8
+
+
 @dataclass(frozen=True)
 class Fault:
     """One fault of a recipe: its line (1-based, 0 if unknown), dotted key path, what is wrong, how to mend it."""

@@ -41,6 +41,40 @@ class Report(Protocol):
         """The same for machines: only what JSON knows, without NaN or infinities."""
 
 
+class Standing(Protocol):
+    """How a run stands."""
+
+    def report(self) -> Report:
+        """Its state, what is done and what is left."""
+
+
+class Damage(Protocol):
+    """One thing that is not as it was written; in words with `str`."""
+
+    @property
+    def place(self) -> str:
+        """File inside the result."""
+
+    @property
+    def block(self) -> int:
+        """Its block, 1-based; 0 if it concerns none."""
+
+
+class Verdict(Protocol):
+    """What a verification found."""
+
+    @property
+    def damages(self) -> Sequence[Damage]:
+        """What is damaged still."""
+
+    @property
+    def not_again(self) -> Sequence[str]:
+        """Why nothing could be made again; empty if it could."""
+
+    def report(self) -> Report:
+        """What was looked at, what is damaged, what was mended."""
+
+
 class Plan(Protocol):
     """A run that has been thought through and not begun."""
 
@@ -101,6 +135,19 @@ def audit_recipe(recipe: Recipe) -> Audit:
     """The audit of a recipe with its inputs."""
     audit: Audit = importlib.import_module("gridcarb.run").audit_recipe(recipe)
     return audit
+
+
+def status(result: Path) -> Standing:
+    """How the run of a result stands."""
+    standing: Standing = importlib.import_module("gridcarb.run.status").status(result)
+    return standing
+
+
+def verify(result: Path, watcher: Watcher, *, sample: int, repair: bool) -> Verdict:
+    """Whether a result is as it was written."""
+    run = importlib.import_module("gridcarb.run.mending")
+    verdict: Verdict = run.verify(result, watcher, sample=sample, repair=repair)
+    return verdict
 
 
 def prepare(recipe: Recipe) -> Plan:

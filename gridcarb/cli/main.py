@@ -6,6 +6,7 @@ import click
 
 from gridcarb.cli.audit import audit
 from gridcarb.cli.listings import fields, keys
+from gridcarb.cli.results import status, verify
 from gridcarb.cli.terminal import Door, debug_option, exit_codes
 from gridcarb.cli.work import plan, run
 
@@ -24,10 +25,12 @@ def main() -> None:
     gridcarb audit 'model/*.nc'               what lies in files, and how it would be read
     gridcarb plan recipes/first_look.yaml     what would be done, from headers only
     gridcarb run recipes/first_look.yaml      do it
+    gridcarb status results/first_look        how a run stands
+    gridcarb verify results/first_look        whether a result is as it was written
     gridcarb fields                           what can be computed
     gridcarb keys                             what a recipe may say
     """
 
 
-for command in (run, plan, audit, fields, keys):
+for command in (run, plan, audit, status, verify, fields, keys):
     main.add_command(command)

@@ -32,7 +32,7 @@ class Holder:
 
     def is_dead(self) -> bool:
         """Whether the process surely lives no more; that of another host cannot be known from here."""
-        if self.host != socket.gethostname():
+        if not self.is_of_this_host():
             return False
         try:
             born = float(psutil.Process(self.pid).create_time())
@@ -42,6 +42,10 @@ class Holder:
             return False
         # Births are reckoned from the boot time, which may shift by a fraction of a second.
         return abs(born - self.born) > 2
+
+    def is_of_this_host(self) -> bool:
+        """Whether the process can be looked at from here."""
+        return self.host == socket.gethostname()
 
     def __str__(self) -> str:
         return f"process {self.pid} on {self.host}, since {self.since}"
@@ -54,13 +58,13 @@ def take(lock: Path, target: Path) -> tuple[Notice, ...]:
     """
     notices: tuple[Notice, ...] = ()
     if not _create(lock):
-        holder = _read(lock)
+        holder = holder_of(lock)
         if holder is None or not holder.is_dead():
             raise _refusal(lock, target, holder)
         _clear(lock, target, holder)
         notices = (Notice("stale_lock", f"a run that no longer lives had left its lock ({holder}); it was removed"),)
         if not _create(lock):
-            raise _refusal(lock, target, _read(lock))
+            raise _refusal(lock, target, holder_of(lock))
     return notices
 
 
@@ -74,7 +78,8 @@ def _create(lock: Path) -> bool:
     return True
 
 
-def _read(lock: Path) -> Holder | None:
+def holder_of(lock: Path) -> Holder | None:
+    """Who holds a lock; None if there is none that can be read."""
     try:
         return Holder(**json.loads(lock.read_text(encoding="utf-8")))
     except (OSError, ValueError, TypeError):
@@ -88,7 +93,7 @@ def _clear(lock: Path, target: Path, dead: Holder) -> None:
         lock.rename(aside)
     except FileNotFoundError:
         return
-    taken = _read(aside)
+    taken = holder_of(aside)
     if taken != dead:
         # Between the look and the rename another run had cleaned up and taken the lock: give it back.
         aside.rename(lock)

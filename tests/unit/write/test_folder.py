@@ -191,9 +191,9 @@ def test_a_lock_of_another_host_or_a_torn_one_is_respected(tmp_path):
 def test_two_cleaners_of_one_stale_lock_do_not_both_win(tmp_path, monkeypatch):
     folder = ResultFolder(tmp_path / "r")
     write_lock(folder.lock, born=1.0)
-    stale = lock._read(folder.lock)
+    stale = lock.holder_of(folder.lock)
     write_lock(folder.lock, host="the-faster-one")  # it took the lock after the look, before the rename
-    monkeypatch.setattr(lock, "_read", lambda path, read=lock._read: stale if path == folder.lock else read(path))
+    monkeypatch.setattr(lock, "holder_of", lambda path, read=lock.holder_of: stale if path == folder.lock else read(path))
     with pytest.raises(OutputError, match="the-faster-one"):
         folder.begin()
     assert json.loads(folder.lock.read_text())["host"] == "the-faster-one"

@@ -37,7 +37,9 @@ def _matches(pattern: str, base: Path) -> list[tuple[str, str]]:
         store, group = split(pattern)
         matches = _behind_url(store)
         return [(join(match, group), join(match, group)) for match in matches]
-    full, group = split(str(base.absolute() / Path(pattern).expanduser()))
+    named = str(base.absolute() / Path(pattern).expanduser())
+    # A name may hold the sign of a group itself.
+    full, group = (named, "") if glob.has_magic(named) and glob.glob(named, recursive=True) else split(named)
     if Path(full).exists():
         matches = [full]
     elif glob.has_magic(full):

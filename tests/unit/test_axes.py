@@ -179,3 +179,43 @@ def test_a_reference_time_is_not_the_time() -> None:
     ds = ds.assign_coords(r=((), 0.0, {"standard_name": "forecast_reference_time", "units": "days since 1990-01-01"}))
     assert find_axes(ds).time_coordinate == "a"
     assert find_axes(ds.isel(a=0, drop=True)).time_coordinate is None
+
+
+def _places(dim: str, size: int) -> dict[str, tuple[str, np.ndarray, dict[str, str]]]:
+    return {
+        "lat": (dim, np.arange(float(size)), {"units": "degrees_north"}),
+        "lon": (dim, np.arange(float(size)), {"units": "degrees_east"}),
+        "time": (dim, np.arange(float(size)), {"units": "days since 2000-01-01"}),
+    }
+
+
+@pytest.mark.parametrize("dim", ["profile", "time", "anything"])
+def test_casts_and_tracks_are_places_and_not_a_time_axis(dim: str) -> None:
+    ds = xr.Dataset({"f": ((dim, "z"), np.zeros((4, 3)))}, coords=_places(dim, 4))
+    axes = find_axes(ds)
+    assert axes.order == ("z", dim)
+    assert (axes.time, axes.time_coordinate) == (None, "time")
+    assert grid_kind(ds, axes) == "unstructured"
+
+
+def test_one_place_at_many_times_keeps_its_time_axis() -> None:
+    places = {name: ((), 1.0, words) for name, (_, _, words) in _places("x", 1).items() if name != "time"}
+    ds = xr.Dataset({"f": (("time", "z"), np.zeros((4, 3)))}, coords={**places, "time": _places("time", 4)["time"]})
+    axes = find_axes(ds)
+    assert (axes.order, grid_kind(ds, axes)) == (("time", "z"), "column")
+
+
+@pytest.mark.parametrize("units", ["radian", "degrees_north"])
+def test_places_in_radians(units: str) -> None:
+    words = {"standard_name": "latitude", "units": units}
+    ds = xr.Dataset({"f": ("cell", np.zeros(4))}, coords={
+        "yy": ("cell", np.zeros(4), words), "xx": ("cell", np.zeros(4), {**words, "standard_name": "longitude"}),
+    })
+    assert find_axes(ds).horizontal == ("cell",)
+    assert find_axes(ds).latitude == "yy"
+
+
+def test_a_sea_floor_is_no_vertical_coordinate() -> None:
+    floor = {"standard_name": "sea_floor_depth_below_geoid", "units": "m", "positive": "down"}
+    ds = xr.Dataset({"f": ((), 1.0)}, coords={"deptho": ((), 100.0, floor)})
+    assert find_axes(ds).vertical_coordinate is None

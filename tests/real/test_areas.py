@@ -9,8 +9,10 @@ import pytest
 import xarray as xr
 
 from gridcarb.axes import find_axes
+from gridcarb.harmonise.extent import read_measures
 from gridcarb.harmonise.masks import read_mask
 from gridcarb.harmonise.measures import cell_areas, find_areas
+from gridcarb.harmonise.settings import ReadingSettings
 from gridcarb.harmonise.sphere import RADIUS
 
 OCEAN = 3.6e14
@@ -40,3 +42,20 @@ def test_sea_areas(data: Path, file: str, name: str, expected: float) -> None:
     found = float(area.where(sea).sum())
     print(f"{file}: {found:.4e} m2, {found / OCEAN - 1:+.1%}")
     assert found == pytest.approx(expected, rel=2e-3)
+
+
+def test_the_sea_of_a_real_tripolar_grid_counts_once() -> None:
+    """Two degrees, with the fold along its last row: 35 sea cells twice; 0.8 % less than 3.6e14 m2."""
+    sample = Path(pytest.importorskip("iris_sample_data").path) / "orca2_votemper.nc"
+    with xr.open_dataset(sample, decode_cf=False) as opened:
+        raw = opened.rename(votemper="temperature").load()
+    raw = raw.set_coords([name for name in raw.data_vars if name != "temperature"])
+    kelvin = raw["temperature"].copy(data=raw["temperature"].values + np.float32(273.15))
+    raw["salinity"] = kelvin.where(raw["temperature"] < 1e30, np.nan)  # what is sea is asked of the salinity
+    axes = find_axes(raw)
+    marks = {name: read_mask(raw[name], name) for name in ("salinity", str(axes.latitude), str(axes.longitude))}
+    decided = read_measures(raw, axes, marks, 0, ReadingSettings(coverage="global"))
+    assert decided.reading.kind == "polygons"
+    assert [notice.text.split(" (")[0] for notice in decided.notices] == ["35 sea cells repeat the place of others"]
+    assert "dim0 = 147" in decided.notices[0].text
+    assert any("3.57e14 m2" in str(decision) for decision in decided.decisions)

@@ -95,7 +95,7 @@ def changed_inputs(collection: Collection) -> list[str]:
 def _stamp(path: str) -> tuple[int, int] | None:
     try:
         return stamp(path)
-    except OSError:
+    except (OSError, InputError):
         return None
 
 

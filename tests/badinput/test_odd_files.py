@@ -43,11 +43,17 @@ def test_a_surface_file_beside_the_columns(bench, ocean) -> None:
     bench.success()
 
 
-def test_groups_hide_the_variables(bench, ocean) -> None:
+def test_fields_in_the_only_group(bench, ocean) -> None:
     ocean().to_netcdf(bench.folder / "ocean.nc", group="model")
+    bench.success()
+
+
+def test_fields_in_several_groups(bench, ocean) -> None:
+    for group in ("control", "warming"):
+        ocean().to_netcdf(bench.folder / "ocean.nc", mode="a", group=group)
     told = bench.refusal(3)
-    assert told.what == "all variables of the file lie in groups (model), which are not read"
-    assert "top level" in told.mend
+    assert told.what == "the fields of the file lie in several groups (control, warming)"
+    assert "ocean.nc#control" in told.mend
 
 
 def test_packed_as_integers(bench, ocean) -> None:

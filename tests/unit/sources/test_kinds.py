@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 import xarray as xr
 
+from gridcarb.axes import find_axes
 from gridcarb.sources import Collection, InputsSettings, close_all, open_collection, survey
 from synthetic_grids.kinds import KINDS, REGISTER, scene_of
 
@@ -50,6 +51,7 @@ def test_its_shape_is_understood(kind: tuple[str, Collection]) -> None:
     assert collection.axes.latitude is not None
     assert collection.axes.longitude is not None
     assert len(collection.roles) == 6
+    assert find_axes(open_collection(collection)) == collection.axes
 
 
 def test_its_numbers_are_those_of_the_files(kind: tuple[str, Collection]) -> None:

@@ -21,13 +21,13 @@ class FigureKind:
     check : `check(header, settings, fields)` raises InputError for what cannot be drawn of a result that will hold
         `fields`; reads no field.
     draw : `draw(result, settings, folder)` writes one PNG and gives its path.
-    file_name : `file_name(header, settings)` is the name `draw` will give it.
+    file_name : `file_name(header, settings, fields)` is the name `draw` will give it.
     """
 
     settings: type[FigureSettings]
     check: Callable[[xr.Dataset, Any, Collection[str]], None]
     draw: Callable[[xr.Dataset, Any, Path], Path]
-    file_name: Callable[[xr.Dataset, Any], str]
+    file_name: Callable[[xr.Dataset, Any, Collection[str]], str]
 
 
 FIGURES: Shelf[FigureKind] = Shelf("figure")

@@ -115,11 +115,11 @@ def _chosen(ds: xr.Dataset, settings: MapSettings, fields: Collection[str] = ())
     return choose(ds, settings.field, settings.depth, settings.time, fields)
 
 
-def file_name(header: xr.Dataset, settings: MapSettings) -> str:
+def file_name(header: xr.Dataset, settings: MapSettings, fields: Collection[str] = ()) -> str:
     """As the recipe says, else field, depth, time, and how it is looked at when that was said."""
     if settings.file:
         return settings.file
-    choice, place = _chosen(header, settings), ""
+    choice, place = _chosen(header, settings, fields), ""
     if settings.region:
         place = "_".join(f"{edge:g}" for edge in settings.region)
     elif settings.projection != "automatic":

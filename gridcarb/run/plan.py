@@ -155,12 +155,11 @@ def _plan(
 
 def _check_figures(recipe: Recipe, raw: xr.Dataset, faults: Faults) -> None:
     """Every figure can be drawn, and none would overwrite another."""
-    header = raw.coords.to_dataset().assign_attrs(raw.attrs)
     taken: dict[str, int] = {}
     for number, settings in enumerate(recipe.figures):
         kind = FIGURES[settings.kind]
-        faults.attempt(kind.check, header, settings, recipe.chemistry.fields)
-        name = Faults().attempt(kind.file_name, header, settings)
+        faults.attempt(kind.check, raw, settings, recipe.chemistry.fields)
+        name = Faults().attempt(kind.file_name, raw, settings, recipe.chemistry.fields)
         if name in taken:
             faults.put(_same_file(recipe, name, taken[name], number))
         elif name:

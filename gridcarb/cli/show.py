@@ -56,6 +56,13 @@ def error(fault: GridcarbError, *, as_json: bool) -> None:
     if not as_json:
         click.echo(str(fault), err=True)
         return
+    content = _fault(fault)
+    if fault.others:
+        content["others"] = [_fault(other) for other in fault.others]
+    click.echo(json.dumps({"error": content}, indent=2, ensure_ascii=False), err=True)
+
+
+def _fault(fault: GridcarbError) -> dict[str, object]:
     content: dict[str, object] = {
         "kind": type(fault).__name__, "where": fault.where, "what": fault.what, "mend": fault.mend,
         "exit_code": fault.exit_code,
@@ -64,7 +71,7 @@ def error(fault: GridcarbError, *, as_json: bool) -> None:
         content["faults"] = [
             {"line": each.line, "key": each.key, "what": each.what, "mend": each.mend} for each in fault.faults
         ]
-    click.echo(json.dumps({"error": content}, indent=2, ensure_ascii=False), err=True)
+    return content
 
 
 def _notice(notice: Notice) -> None:

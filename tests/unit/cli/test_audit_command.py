@@ -11,6 +11,7 @@ from click.testing import CliRunner, Result
 
 import gridcarb.run
 from gridcarb.cli.main import main
+from gridcarb.errors import InputError, UnitsError
 from gridcarb.run.findings import Finding
 from gridcarb.run.report import Report, Section
 
@@ -87,6 +88,19 @@ def test_the_recipe_is_written_once_and_never_over_another(audit, tmp_path) -> N
     nowhere = call("a.nc", "--recipe-out", "no/such/new.yaml")
     assert nowhere.exit_code == 4
     assert "cannot be written" in nowhere.stderr
+
+
+def test_what_else_is_wrong_is_in_the_json(audit, monkeypatch) -> None:
+    def fail(names):
+        error = InputError("one", where="a.nc", mend="m")
+        error.others = (UnitsError("two", where="b.nc"),)
+        raise error
+
+    monkeypatch.setattr(gridcarb.run, "audit_files", fail)
+    told = json.loads(call("a.nc", "--json").stderr)["error"]
+    assert [told["what"], *(other["what"] for other in told["others"])] == ["one", "two"]
+    assert told["others"][0]["kind"] == "UnitsError"
+    assert call("a.nc").stderr.splitlines() == ["a.nc", "one", "to mend it: m", "and 1 more:", "b.nc", "two"]
 
 
 def test_without_words() -> None:

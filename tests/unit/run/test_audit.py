@@ -3,18 +3,21 @@
 from __future__ import annotations
 
 import json
+import pickle
+from dataclasses import replace
 from pathlib import Path
+from types import SimpleNamespace
 
 import numpy as np
 import pytest
 import xarray as xr
 
-from gridcarb.errors import GridcarbError, InputError, RecipeError
+from gridcarb.errors import Faults, GridcarbError, InputError, RecipeError
 from gridcarb.recipe import check, load
 from gridcarb.run import audit_files, audit_recipe, conduct, prepare
 from gridcarb.run.findings import Finding, worst
 from gridcarb.run.layout_in_files import chunk_findings
-from gridcarb.sources import InputsSettings, gather
+from gridcarb.sources import ArraySource, InputsSettings, RoleSource, Segment, gather
 
 
 def stops(audit) -> list[Finding]:
@@ -205,30 +208,19 @@ def test_how_files_are_laid_out(ocean, save_ocean, tmp_path, chunks, words, cure
 
 
 def test_a_chunk_that_is_too_large_for_small_blocks(tmp_path) -> None:
-    from dataclasses import replace
-
-    from gridcarb.sources import ArraySource, RoleSource, Segment
     array = ArraySource(
         dims=("time", "lev", "lat", "lon"), shape=(120, 75, 1000, 1400), dtype="float32", attrs={}, file_axes=(0, 1, 2, 3),
         file_rank=4, chunks=(12, 75, 100, 140), segments=(Segment("a.nc", "t", 0, 120),), time_axis=0)
 
-    class Bare:
-        roles = {"temperature": RoleSource("temperature", "t", "as told", array),
-                 "salinity": RoleSource("salinity", "s", "as told", replace(array, chunks=(1, 1, 10, 10)))}
-
-        class axes:
-            time = "time"
-
-    large, small = chunk_findings(Bare)
+    small = RoleSource("salinity", "s", "as told", replace(array, chunks=(1, 1, 10, 10)))
+    roles = {"temperature": RoleSource("temperature", "t", "as told", array), "salinity": small}
+    large, small = chunk_findings(SimpleNamespace(roles=roles, axes=SimpleNamespace(time="time")))
     assert "decompresses the whole of it" in large.text
     assert "{time: 12}" in large.cure
     assert "longer to find" in small.text
 
 
 def test_errors_bring_their_fellows_across_workers() -> None:
-    import pickle
-
-    from gridcarb.errors import Faults
     faults = Faults()
     faults.put(InputError("one", where="a.nc: x", mend="m"))
     faults.put(InputError("one", where="a.nc: y"))

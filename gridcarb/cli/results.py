@@ -46,7 +46,7 @@ def verify(result: Path, sample: int, repair: bool) -> None:
     _tell(verdict.report())
     if verdict.damages:
         count, first = len(verdict.damages), verdict.damages[0]
-        told = f"{count:,} things are not as they were written, first" if count > 1 else "one thing is not as it was written"
+        told = f"{count:,} things are not as they were written, first" if count > 1 else "one thing is not as written"
         raise DamageError(f"{told}: {first.place}: {first}", where=str(result), mend=_mend(verdict, result, repair=repair))
 
 

@@ -36,16 +36,16 @@ def verify(result: Path, watcher: Watcher, *, sample: int = 3, repair: bool = Fa
     result = result.resolve()
     inspector = Inspector(result, watcher)
     if not repair:
-        return _verify(inspector, sample, repair=False)
+        return _verify(inspector, watcher, sample, repair=False)
     held = ResultFolder(result).lock
     lock.take(held, result)
     try:
-        return _verify(inspector, sample, repair=True)
+        return _verify(inspector, watcher, sample, repair=True)
     finally:
         held.unlink(missing_ok=True)
 
 
-def _verify(inspector: Inspector, sample: int, *, repair: bool) -> Verdict:
+def _verify(inspector: Inspector, watcher: Watcher, sample: int, *, repair: bool) -> Verdict:
     verdict = inspector.look()
     if not sample and not (repair and verdict.damages):
         return verdict
@@ -56,15 +56,15 @@ def _verify(inspector: Inspector, sample: int, *, repair: bool) -> Verdict:
         sound = [block for block in inspector.sample(sample) if block + 1 not in {each.block for each in verdict.damages}]
         verdict.damages += inspector.compare(shop, sound)
         if repair and verdict.damages:
-            _Mender(inspector, shop).mend()
+            _Mender(inspector, shop, watcher).mend()
     return verdict
 
 
 class _Mender:
     """Makes again what an inspector found damaged."""
 
-    def __init__(self, inspector: Inspector, shop: Workshop) -> None:
-        self._at, self._shop = inspector, shop
+    def __init__(self, inspector: Inspector, shop: Workshop, watcher: Watcher) -> None:
+        self._at, self._shop, self._watcher = inspector, shop, watcher
         self._result = inspector.result
 
     def mend(self) -> None:
@@ -73,10 +73,12 @@ class _Mender:
         if self._at.store is not None:
             self._mend_frame(each for each in before if each.kind == "frame")
         for block in sorted({each.block - 1 for each in before if each.kind in ("marker", "chunk", "numbers")}):
-            self._at.watcher.message(f"making block {block + 1} again")
+            self._watcher.message(f"making block {block + 1} again")
             self._mend_block(block)
         stale = {each.place for each in before if each.kind == "file"}
-        if self._at.store is not None:
+        if any(each.kind == "numbers" for each in before):
+            stale |= self._at.charter.derived.keys()
+        if self._at.store is not None and stale:
             self._mend_files(stale)
         self._look_again(before)
         self._note()
@@ -95,22 +97,19 @@ class _Mender:
         self._at.ledger.put(marker)
 
     def _mend_files(self, stale: set[str]) -> None:
-        charter, watcher = self._at.charter, self._at.watcher
+        charter, watcher = self._at.charter, self._watcher
         if FILE in stale:
             make_file(self._result, watcher)
         if stale - {FILE}:
             draw_figures(planned(charter, self._shop.store.parent / "result", figures=True).recipe, self._result, watcher)
-        derived = {name: large_file_checksum(self._result / name) if stale else noted
-                   for name, noted in charter.derived.items()}  # fmt: skip
+        derived = {name: large_file_checksum(self._result / name) for name in charter.derived}
         self._at.charter = replace(charter, derived=derived)
         self._at.ledger.open(self._at.charter.as_dict())
 
     def _look_again(self, before: list[Damage]) -> None:
         """What is still damaged is told by another look at all of it; the rest is mended."""
         verdict = self._at.verdict
-        known = Verdict(verdict.result, again=verdict.again)
-        self._at.verdict = known
-        found = self._at.look()
+        found = Inspector(self._result).look()
         verdict.damages = found.damages
         verdict.mended = [each for each in before if each not in found.damages]
 

@@ -105,8 +105,8 @@ class Inspector:
     OutputError : it is no finished result, or has no ledger that can be read.
     """
 
-    def __init__(self, result: Path, watcher: Watcher) -> None:
-        self.result, self.watcher = result, watcher
+    def __init__(self, result: Path, watcher: Watcher | None = None) -> None:
+        self.result, self._watcher = result, watcher
         self.ledger = Ledger(result / LEDGER)
         self.charter = read_charter(result)
         self.layout = self.charter.grid_layout()
@@ -115,9 +115,12 @@ class Inspector:
 
     def look(self) -> Verdict:
         """Frame, blocks and files; a sample is left to `compare`."""
-        self.watcher.start(len(self.layout), self.layout.cells)
-        self.verdict.damages = [*self.frame(), *self.all_blocks(), *self.files()]
-        self.watcher.stop()
+        if self._watcher:
+            self._watcher.start(len(self.layout), self.layout.cells)
+        self.verdict.damages = [*self.frame(), *self.all_blocks()]
+        if self._watcher:
+            self._watcher.stop()
+        self.verdict.damages += self.files()
         return self.verdict
 
     def frame(self) -> list[Damage]:
@@ -131,18 +134,21 @@ class Inspector:
         """Markers, chunk files, and the numbers in the NetCDF file."""
         with ThreadPoolExecutor(cores()) as pool, FileProof(self.result / FILE) as file:
             for slab in _slabs(range(len(self.layout)), _SLAB):
-                for found in pool.map(self._block, slab, itertools.repeat(file)):
+                for found, chunks in pool.map(self._block, slab, itertools.repeat(file)):
                     yield from found
                     self.verdict.blocks += 1
-                    self.watcher.block_done(self.layout.cells // len(self.layout))
+                    self.verdict.chunks += chunks
+                    if self._watcher:
+                        self._watcher.block_done(self.layout.cells // len(self.layout))
 
-    def _block(self, block: int, file: FileProof) -> list[Damage]:
+    def _block(self, block: int, file: FileProof) -> tuple[list[Damage], int]:
         try:
             marker = self.marker(block)
         except DamagedMarkerError as error:
             place = self.ledger.place(block).relative_to(self.result).as_posix()
-            return [Damage("marker", place, str(error), block + 1)]
-        return [*self.chunks(marker), *self._in_file(marker, file)]
+            return [Damage("marker", place, str(error), block + 1)], 0
+        looked = sum(map(len, marker.chunks.values())) if self.store else 0
+        return [*self.chunks(marker), *self._in_file(marker, file)], looked
 
     def marker(self, block: int) -> Marker:
         """The marker of a block, which must be there and of this run."""
@@ -157,7 +163,6 @@ class Inspector:
         """Chunk files of a block that are not as they were written."""
         if self.store is None:
             return []
-        self.verdict.chunks += sum(map(len, marker.chunks.values()))
         try:
             found = Proof(self.store).damaged_chunks(marker)
         except Exception as error:  # whatever Zarr says of metadata that are damaged
@@ -174,7 +179,7 @@ class Inspector:
         self.verdict.files = list(self.charter.derived)
         found = []
         for name, noted in self.charter.derived.items():
-            self.watcher.message(f"looking at {name}")
+            self._say(f"looking at {name}")
             if large_file_checksum(self.result / name) != noted:
                 found.append(_file_damage("file", self.result / name, name))
         return found
@@ -183,13 +188,17 @@ class Inspector:
         """Make these blocks again and hold what they give against what is there, to the last bit."""
         found = []
         for block in blocks:
-            self.watcher.message(f"making block {block + 1} of {len(self.layout)} again")
+            self._say(f"making block {block + 1} of {len(self.layout)} again")
             again, marker = shop.redo(block), self.marker(block)
             found += [Damage("numbers", STORE, "made again it gives other numbers", block + 1, field)
                       for field in again.values if again.values[field] != marker.values.get(field)
                       or again.chunks[field] != marker.chunks.get(field)]  # fmt: skip
             self.verdict.again.append(block + 1)
         return found
+
+    def _say(self, text: str) -> None:
+        if self._watcher:
+            self._watcher.message(text)
 
     def sample(self, wanted: int) -> list[int]:
         """Some of the blocks whose markers are sound, another choice each time."""

@@ -50,7 +50,7 @@ class Proof:
             region = marker.slices()
             selection = [slice(*region.get(dim, slice(None)).indices(size)[:2])
                          for dim, size in zip(dims_of_array(array), array.shape, strict=True)]  # fmt: skip
-            for path, sum_then in zip(chunk_files(self.store, array, selection), noted, strict=True):
+            for path, sum_then in zip(chunk_files(self.store / field, array, selection), noted, strict=True):
                 yield field, path, sum_then
 
     def damaged_chunks(self, marker: Marker) -> list[tuple[str, Path]]:

@@ -112,17 +112,18 @@ def write_block(path: Path, region: Mapping[str, slice], block: xr.Dataset) -> d
     with room_for(path, sum(values.nbytes for *_, values in work)):
         for array, selection, values in work:
             array[selection] = values
-    return {
-        array.basename: Written(checksum(values), tuple(map(file_checksum, chunk_files(path, array, selection))))
-        for array, selection, values in work
-    }
+    written = {}
+    for array, selection, values in work:
+        files = chunk_files(path / array.basename, array, selection)
+        written[array.basename] = Written(checksum(values), tuple(map(file_checksum, files)))
+    return written
 
 
-def chunk_files(path: Path, array: zarr.Array[Any], selection: Sequence[slice]) -> list[Path]:
-    """The chunk files of a selection made of whole chunks of `array` in the store `path`; a chunk of only fill has none."""
+def chunk_files(folder: Path, array: zarr.Array[Any], selection: Sequence[slice]) -> list[Path]:
+    """The files of a selection made of whole chunks of `array`, which lies in `folder`; a chunk of only fill has none."""
     cut = zip(selection, array.chunks, strict=True)
     places = [range(part.start // chunk, -(-part.stop // chunk)) for part, chunk in cut]
-    return [path / array.basename / array.metadata.encode_chunk_key(at) for at in itertools.product(*places)]
+    return [folder / array.metadata.encode_chunk_key(at) for at in itertools.product(*places)]
 
 
 def _array(group: zarr.Group, key: str, path: Path) -> zarr.Array[Any]:

@@ -15,7 +15,7 @@ import pickle
 import threading
 import zlib
 from collections.abc import Iterator, Mapping
-from dataclasses import asdict, dataclass, field
+from dataclasses import asdict, dataclass, field, replace
 from pathlib import Path
 from typing import Any
 
@@ -78,7 +78,8 @@ class Ledger:
     def open(self, charter: Mapping[str, Any]) -> None:
         """Begin a ledger, or put another charter into it."""
         self.folder.mkdir(exist_ok=True)
-        _write(self.folder / _CHARTER, json.dumps(charter, indent=1, ensure_ascii=False), lasting=True)
+        content = {**charter, "check": _check(charter)}
+        _write(self.folder / _CHARTER, json.dumps(content, indent=1, ensure_ascii=False), lasting=True)
 
     def charter(self) -> dict[str, Any] | None:
         """What `open` was given; None if there is none that can be read."""
@@ -86,7 +87,7 @@ class Ledger:
             found = json.loads((self.folder / _CHARTER).read_text(encoding="utf-8"))
         except (OSError, ValueError):
             return None
-        return found if isinstance(found, dict) else None
+        return found if isinstance(found, dict) and found.pop("check", None) == _check(found) else None
 
     def place(self, block: int) -> Path:
         """Where the marker of a block lies."""
@@ -94,7 +95,7 @@ class Ledger:
 
     def put(self, marker: Marker) -> None:
         """Mark a block as finished; everything it vouches for must be written. Marking it twice is no harm."""
-        content = asdict(marker) | {"tallies": _packed(marker.tallies)}
+        content = asdict(replace(marker, tallies={})) | {"tallies": _packed(marker.tallies)}
         content["check"] = _check(content)
         _write(self.place(marker.block), json.dumps(content, ensure_ascii=False))
         self._failure(marker.block).unlink(missing_ok=True)
@@ -224,5 +225,5 @@ _OF_ARRAYS = frozenset({
 
 
 def _check(content: Mapping[str, Any]) -> str:
-    """CRC-32 of a marker without its check, in one spelling."""
+    """CRC-32 of a marker or charter without its check, in one spelling."""
     return f"crc32:{zlib.crc32(json.dumps(content, sort_keys=True).encode()):08x}"

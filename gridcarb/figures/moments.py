@@ -41,9 +41,26 @@ def choose_moment(header: xr.Dataset, axes: Axes, wanted: str | int) -> Moment:
     coordinate = header[axes.time_coordinate] if axes.time_coordinate else None
     count = header.sizes[axes.time] if axes.time else 1
     dates = () if coordinate is None else _dates(coordinate)
+    if coordinate is not None and coordinate.ndim and axes.time is None:
+        return _of_each_column(wanted, dates)
     index = _index(wanted, count, dates)
     described = _describe(header, coordinate, dates, index, count) if coordinate is not None or axes.time else ("", "")
     return Moment(index if axes.time else None, *described)
+
+
+def _of_each_column(wanted: str | int, dates: Sequence[cftime.datetime]) -> Moment:
+    """Casts and the like, each at a time of its own: all of them are shown."""
+    if wanted not in ("first", "last"):
+        raise InputError(
+            f"there is no map of '{wanted}': every column has a time of its own", where="figures: time",
+            mend="leave `time` out of this map in the recipe: it shows all columns",
+        )
+    ends = dict.fromkeys(_day(date) for date in (min(dates), max(dates))) if dates else ()
+    return Moment(None, " to ".join(ends))
+
+
+def _day(date: cftime.datetime) -> str:
+    return f"{date.day} {MONTHS[date.month - 1]} {date.year}"
 
 
 def _index(wanted: str | int, count: int, dates: Sequence[cftime.datetime]) -> int:
@@ -110,7 +127,7 @@ def _describe(
     date = dates[index]
     alone = sum((d.year, d.month, d.day) == (date.year, date.month, date.day) for d in dates) == 1
     clock = "" if alone else f"{date.hour:02d}:{date.minute:02d}"
-    label = f"{date.day} {MONTHS[date.month - 1]} {date.year}" + (f", {clock}" if clock else "")
+    label = _day(date) + (f", {clock}" if clock else "")
     slug = f"{date.year:04d}-{date.month:02d}-{date.day:02d}" + (f"T{clock.replace(':', '')}" if clock else "")
     return label, slug
 

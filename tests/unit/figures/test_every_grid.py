@@ -148,6 +148,14 @@ def test_stations_are_dots_and_columns_are_refused(picture: Picture) -> None:
         check(result_of("grid_single_column"), MapSettings.model_validate({"kind": "map", "field": "dic"}))
 
 
+def test_casts_have_times_of_their_own() -> None:
+    ds = result_of("grid_casts")
+    assert choose(ds, "dic", 0, "first").moment.label.count(" to ") <= 1
+    assert choose(ds, "dic", 0, "first").moment.slug == ""
+    with pytest.raises(InputError, match="time of its own"):
+        choose(ds, "dic", 0, "2010-11")
+
+
 @pytest.mark.parametrize("kind", ["vertical_ocean_s_g2", "vertical_ocean_sigma", "grid_tripolar_sigma"])
 def test_levels_that_follow_the_floor_are_told_by_pressure(kind: str, picture: Picture) -> None:
     ds = result_of(kind)

@@ -1,0 +1,189 @@
+"""A dask scheduler and two workers in processes of their own on the loopback, and runs through the command line."""
+
+from __future__ import annotations
+
+import json
+import re
+import signal
+import subprocess
+import sys
+import time
+from collections.abc import Callable, Iterator
+from contextlib import ExitStack, contextmanager
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from synthetic_grids import grids
+from synthetic_grids.clothes import Clothes, dress
+
+PATIENCE = 40.0
+"""Seconds after which a process that does not do what is waited for has failed the test."""
+
+_START = """
+import signal
+signal.signal(signal.SIGINT, signal.default_int_handler)  # which a shell may have switched off for background jobs
+from gridcarb.cli.main import main
+main()
+"""
+
+
+def pytest_configure(config: pytest.Config) -> None:
+    config.addinivalue_line("markers", "cluster: starts dask schedulers and workers in processes of their own, on the loopback")
+
+
+def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
+    for item in items:
+        if Path(__file__).parent in item.path.parents:
+            item.add_marker(pytest.mark.cluster)
+
+
+@pytest.fixture(scope="session")
+def ocean_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """Six months on 12 x 24 columns of 5 levels."""
+    grid, depth = grids.rectilinear(12, 24), grids.levels((0.0, 20.0, 100.0, 500.0, 2000.0, 5000.0))
+    time = grids.months(2010, 2010, "noleap").isel(time=slice(6))
+    truth = grids.sample(grid["lon"], grid["lat"], depth["lev"], time["year"])
+    dressed = dress(truth, depth["lev"], grid["lat"], Clothes(salinity="practical")).drop_vars("year", errors="ignore")
+    path = tmp_path_factory.mktemp("ocean") / "ocean.nc"
+    whole = dressed.assign_coords(grid.merge(depth).merge(time[["time"]]).coords)
+    whole.to_netcdf(path, engine="netcdf4", encoding={name: {"_FillValue": None} for name in whole.coords})
+    return path
+
+
+@dataclass
+class Process:
+    """A process with what it has said so far."""
+
+    process: subprocess.Popen[str]
+    log: Path
+
+    @property
+    def said(self) -> str:
+        return self.log.read_text()
+
+    def wait_for(self, pattern: str) -> None:
+        """Wait until it has said something that matches; fail if it ends or takes too long."""
+        until = time.monotonic() + PATIENCE
+        while not re.search(pattern, self.said):
+            assert self.process.poll() is None, f"ended before it said {pattern!r}:\n{self.said}"
+            assert time.monotonic() < until, f"never said {pattern!r}:\n{self.said}"
+            time.sleep(0.01)
+
+    def wait(self) -> int:
+        """The exit code."""
+        return self.process.wait(PATIENCE)
+
+    def end(self, number: int = signal.SIGKILL) -> int:
+        """Send a signal to this process; its exit code."""
+        if self.process.poll() is None:
+            self.process.send_signal(number)
+        return self.wait()
+
+
+@contextmanager
+def started(folder: Path, *command: str) -> Iterator[Process]:
+    """A process of this Python, ended with the block."""
+    folder.mkdir(exist_ok=True)
+    log = folder / f"{time.monotonic_ns()}.log"
+    with log.open("w") as file:
+        process = subprocess.Popen([sys.executable, *command], stdout=file, stderr=file, text=True, cwd=folder)
+    running = Process(process, log)
+    try:
+        yield running
+    finally:
+        running.end()
+
+
+@dataclass
+class Cluster:
+    """A scheduler with its workers."""
+
+    address: str
+    scheduler: Process
+    workers: list[Process]
+
+
+@contextmanager
+def cluster_in(folder: Path) -> Iterator[Cluster]:
+    """`dask scheduler` and twice `dask worker`, as the README tells to start them."""
+    told = folder / "scheduler.json"
+    with ExitStack() as stack:
+        here = ("--host", "127.0.0.1", "--no-dashboard")
+        scheduler = stack.enter_context(started(
+            folder, "-m", "dask", "scheduler", *here, "--port", "0", "--scheduler-file", str(told)))
+        scheduler.wait_for("Scheduler at:")
+        address = json.loads(told.read_text())["address"]
+        workers = [
+            stack.enter_context(started(folder, "-m", "dask", "worker", address, "--nthreads", "1", "--no-nanny", *here))
+            for _ in range(2)
+        ]
+        for worker in workers:
+            worker.wait_for("Registered to:")
+        yield Cluster(address, scheduler, workers)
+
+
+@pytest.fixture(scope="session")
+def cluster(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Cluster]:
+    """For tests that leave it whole."""
+    with cluster_in(tmp_path_factory.mktemp("cluster")) as found:
+        yield found
+
+
+@pytest.fixture
+def own_cluster(tmp_path: Path) -> Iterator[Cluster]:
+    """For tests that break it."""
+    with cluster_in(tmp_path / "cluster") as found:
+        yield found
+
+
+@pytest.fixture(scope="session")
+def write_recipe(ocean_file: Path) -> Callable[..., Path]:
+    """Write a recipe whose result is `folder`; by default a run of 72 blocks."""
+
+    def write(folder: Path, **engine: Any) -> Path:
+        base = {
+            "recipe": 1, "inputs": {"files": str(ocean_file)}, "reading": {"density": "1026 kg m-3"},
+            "chemistry": {"fields": ["ph_total_scale", "aragonite_saturation"]},
+            "engine": {"workers": 2, "block": {"time": 1, "cells": 24}, **engine},
+            "output": {"folder": str(folder), "netcdf": False},
+        }
+        path = folder.with_suffix(".yaml")
+        path.write_text(json.dumps(base))
+        return path
+
+    return write
+
+
+@pytest.fixture
+def gridcarb(tmp_path: Path) -> Iterator[Callable[..., Process]]:
+    """Begin `gridcarb ...` in a process of its own."""
+    with ExitStack() as stack:
+        yield lambda *words: stack.enter_context(started(tmp_path / "logs", "-c", _START, *map(str, words)))
+
+
+@pytest.fixture(scope="session")
+def on_threads(write_recipe: Callable[..., Path], tmp_path_factory: pytest.TempPathFactory) -> dict[str, bytes]:
+    """Every file of the store that threads make: what all others are held against."""
+    folder = tmp_path_factory.mktemp("threads") / "result"
+    with started(folder.parent / "logs", "-c", _START, "run", str(write_recipe(folder))) as run:
+        assert run.wait() == 0, run.said
+    return store_files(folder)
+
+
+def store_files(result: Path) -> dict[str, bytes]:
+    """Every file of the store, by its place. The history of the store tells when it was made."""
+    files = {}
+    for path in (result / "fields.zarr").rglob("*"):
+        if path.is_file():
+            files[str(path.relative_to(result))] = re.sub(rb"\d{4}-\d\d-\d\dT\d\d:\d\d:\d\d", b"then", path.read_bytes())
+    assert files
+    return files
+
+
+def events_of(result: Path, *kinds: str) -> list[dict[str, Any]]:
+    """The events of a run, of these kinds."""
+    lines = (result / "events.jsonl").read_text().splitlines()
+    return [event for event in map(json.loads, lines) if event["event"] in kinds]

@@ -1,0 +1,99 @@
+"""Threads, processes, a scheduler with two workers, other blocks: the same store, to the last byte."""
+
+from __future__ import annotations
+
+import json
+import signal
+
+import numpy as np
+import pytest
+import xarray as xr
+
+from tests.cluster.conftest import events_of, store_files
+
+A_FIFTH = r"(?m)^ *(5|10|15|20) %"
+
+
+def test_processes(gridcarb, write_recipe, on_threads, tmp_path) -> None:
+    run = gridcarb("run", write_recipe(tmp_path / "result"), "--engine", "processes")
+    assert run.wait() == 0, run.said
+    assert store_files(tmp_path / "result") == on_threads
+    workers = {event["worker"] for event in events_of(tmp_path / "result", "done")}
+    assert len(workers) == 2
+    assert "Traceback" not in run.said
+    assert not (tmp_path / "result" / "job.pickle").exists()
+
+
+def test_a_scheduler_told_in_the_recipe(gridcarb, cluster, write_recipe, on_threads, tmp_path) -> None:
+    run = gridcarb("run", write_recipe(tmp_path / "result", address=cluster.address))
+    assert run.wait() == 0, run.said
+    assert store_files(tmp_path / "result") == on_threads
+    pids = {int(event["worker"].split(":")[1]) for event in events_of(tmp_path / "result", "done")}
+    assert pids == {worker.process.pid for worker in cluster.workers}
+    begin, end = events_of(tmp_path / "result", "begin", "end")
+    assert (begin["engine"], begin["blocks"], begin["pid"]) == ("scheduler", 72, run.process.pid)
+    assert (end["state"], end["done"], end["failed"]) == ("complete", 72, 0)
+    assert json.loads((tmp_path / "result" / "journal.json").read_text())["engine"]["address"] == cluster.address
+
+
+def test_blocks_of_another_size(gridcarb, cluster, write_recipe, on_threads, tmp_path) -> None:
+    run = gridcarb("run", write_recipe(tmp_path / "result", block={"time": 4, "cells": 100}), "--engine", cluster.address)
+    assert run.wait() == 0, run.said
+    (tmp_path / "threads").mkdir()
+    for name, content in on_threads.items():
+        path = tmp_path / "threads" / name
+        path.parent.mkdir(parents=True, exist_ok=True)
+        path.write_bytes(content)
+    words = {"decode_cf": False, "consolidated": False, "chunks": None}
+    with xr.open_zarr(tmp_path / "result" / "fields.zarr", **words) as one, \
+            xr.open_zarr(tmp_path / "threads" / "fields.zarr", **words) as other:
+        assert one["ph_total_scale"].encoding["chunks"] != other["ph_total_scale"].encoding["chunks"]
+        assert set(one.variables) == set(other.variables)
+        for name in one.variables:
+            assert np.array_equal(one[name].values.view("u1"), other[name].values.view("u1")), name
+
+
+def test_a_worker_killed_in_the_middle(gridcarb, own_cluster, write_recipe, on_threads, tmp_path) -> None:
+    run = gridcarb("run", write_recipe(tmp_path / "result"), "--engine", own_cluster.address)
+    run.wait_for(A_FIFTH)
+    own_cluster.workers[0].end(signal.SIGKILL)
+    assert run.wait() == 0, run.said
+    assert store_files(tmp_path / "result") == on_threads
+    done = events_of(tmp_path / "result", "done")
+    assert sorted(event["block"] for event in done) == list(range(1, 73))
+    last = {int(event["worker"].split(":")[1]) for event in done[-10:]}
+    assert last == {own_cluster.workers[1].process.pid}
+
+
+@pytest.mark.parametrize(("number", "code", "engine"), [
+    (signal.SIGINT, 130, "processes"), (signal.SIGTERM, 143, "scheduler"),
+])
+def test_stopped_in_the_middle_and_gone_on(
+    gridcarb, cluster, write_recipe, on_threads, tmp_path, number, code, engine
+) -> None:
+    words = ("run", write_recipe(tmp_path / "result"), "--engine", cluster.address if engine == "scheduler" else engine)
+    run = gridcarb(*words)
+    run.wait_for(A_FIFTH)
+    assert run.end(number) == code, run.said
+    assert "--resume" in run.said
+    assert "Traceback" not in run.said
+    (end,) = events_of(tmp_path / "result.partial", "end")
+    assert end["state"] == "interrupted"
+    assert not (tmp_path / "result.partial" / "job.pickle").exists()
+    again = gridcarb(*words, "--resume")
+    assert again.wait() == 0, again.said
+    assert store_files(tmp_path / "result") == on_threads
+    assert len(events_of(tmp_path / "result", "begin")) == 2
+
+
+def test_a_scheduler_lost_in_the_middle(gridcarb, own_cluster, write_recipe, on_threads, tmp_path) -> None:
+    recipe = write_recipe(tmp_path / "result")
+    run = gridcarb("run", recipe, "--engine", own_cluster.address)
+    run.wait_for(A_FIFTH)
+    own_cluster.scheduler.end(signal.SIGKILL)
+    assert run.wait() == 7, run.said
+    assert "Traceback" not in run.said
+    assert "--resume" in run.said.splitlines()[-1]
+    again = gridcarb("run", recipe, "--resume")
+    assert again.wait() == 0, again.said
+    assert store_files(tmp_path / "result") == on_threads

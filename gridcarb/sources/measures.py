@@ -59,27 +59,38 @@ def find_measures(
     parts: dict[str, Part] = {}
     notices: list[Notice] = []
     for kind in MEASURES:
-        name = settings.role(kind).variable
+        said = settings.role(kind)
         fits: list[Part] = []
         misfits: list[tuple[Candidate, GridcarbError]] = []
-        for one in faults.attempt(_candidates, kind, name, groups[kind], reference) or ():
+        found = faults.attempt(_candidates, kind, said.variable, groups[kind], reference)
+        for one in found or ():
             try:
                 fits.append(_fitting(kind, one, reference, rules))
             except GridcarbError as error:
                 misfits.append((one, error))
-        if misfits and not fits:
-            first, trouble = misfits[0]
-            if name or settings.role(kind).files:
-                faults.put(trouble)
-            else:
-                notices.append(Notice("measure-left-aside", f"'{first.variable}' was not taken as {kind}: {trouble.what}"))
-        if len(fits) > 1:
-            names = " or ".join(f"`inputs: {{{kind}: {part.variable}}}`" for part in fits)
-            several = ", ".join(f"'{part.variable}'" for part in fits)
-            notices.append(Notice("measure-in-doubt", f"{several} could be the {kind}; none is used", names))
-        elif fits:
+        if len(fits) == 1:
             parts[kind] = fits[0]
+        elif fits:
+            notices.append(_doubt(kind, fits))
+        elif said.variable or said.files:
+            missing = [_unknown(kind, groups[kind])] if found == [] else []
+            for trouble in (*missing, *(error for _, error in misfits[:1])):
+                faults.put(trouble)
+        elif misfits:
+            first, trouble = misfits[0]
+            notices.append(Notice("measure-left-aside", f"'{first.variable}' was not taken as {kind}: {trouble.what}"))
     return Measures(parts, tuple(notices))
+
+
+def _doubt(kind: str, fits: Sequence[Part]) -> Notice:
+    lines = " or ".join(f"`inputs: {{{kind}: {part.variable}}}`" for part in fits)
+    several = ", ".join(f"'{part.variable}'" for part in fits)
+    return Notice("measure-in-doubt", f"{several} could be the {kind}; none is used", lines)
+
+
+def _unknown(kind: str, headers: Sequence[Header]) -> InputError:
+    return InputError(f"no variable is known as the {kind} of the cells", where=headers[0].path if headers else "inputs",
+                      mend=f"name it: `inputs: {{{kind}: {{files: FILE, variable: NAME}}}}`")
 
 
 def _candidates(kind: str, name: str | None, headers: Sequence[Header], reference: Part) -> list[Candidate]:

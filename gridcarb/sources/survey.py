@@ -88,8 +88,8 @@ class Survey:
     """All files, all faults, and the collection as far as one can be made.
 
     faults : everything that would make `gather` raise, in the order it would; empty if all is well.
-    collection : None if a role that is needed has no variable or does not fit the others; if `faults` is not empty, it is
-        made of what is left without the faulty files, to look at, not to run.
+    collection : the roles that fit together, None if none does; if `faults` is not empty, roles and files may be lacking
+        in it: it is there to be looked at, not to be run.
     """
 
     files: tuple[FileSurvey, ...]

@@ -90,6 +90,11 @@ def test_a_stated_area_of_another_grid_is_refused(tmp_path: Path) -> None:
         _measures(tmp_path, lambda fixed: fixed.isel(j=slice(1, None)), area="areacello")
 
 
+def test_a_file_of_the_area_without_one_is_refused(tmp_path: Path) -> None:
+    with pytest.raises(InputError, match="no variable is known as the area"):
+        _measures(tmp_path, lambda fixed: fixed.drop_vars("areacello"), area={"files": "fixed.nc"})
+
+
 def test_two_areas_are_a_question(tmp_path: Path) -> None:
     def change(fixed: xr.Dataset) -> xr.Dataset:
         return fixed.assign(other=fixed.deptho, deptho=fixed.deptho)

@@ -125,6 +125,8 @@ def _time_words(collection: Collection) -> str:
     if source is None or source.values is None or not source.values.size:
         return f"{collection.sizes[collection.axes.time]} steps without dates" if collection.axes.time else "no time"
     units, values = Units.of(source.attrs), source.values.ravel()
+    if collection.axes.time is None and values.size > 1:
+        return f"{units.date(values.min())} to {units.date(values.max())}, a time for each place, calendar {units.calendar}"
     edges = _edges(source.attrs)
     spread = f"{units.date(values[0])} to {units.date(values[-1])}, {values.size} steps" if values.size > 1 else (
         units.date(values[0]))

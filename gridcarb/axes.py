@@ -238,8 +238,8 @@ def _parts_of_meshes(ds: xr.Dataset) -> set[str]:
     found: set[str] = set()
     for name, variable in ds.variables.items():
         if variable.attrs.get("cf_role") == "mesh_topology":
-            told = [str(text) for key, text in variable.attrs.items() if str(key).endswith(("_coordinates", "_connectivity"))]
-            words = " ".join(told).split()
+            keys = [key for key in variable.attrs if str(key).endswith(("_coordinates", "_connectivity"))]
+            words = " ".join(str(variable.attrs[key]) for key in keys).split()
             found |= {str(name), *(word for word in words if word in ds.variables)}
     return found
 

@@ -67,7 +67,7 @@ def choose_group(holders: Mapping[str, list[Head]], where: str) -> str:
     ------
     InputError : the fields lie in several groups that are not one below the other.
     """
-    filled = [group for group, heads in holders.items() if any(not _describes(head) for head in heads)]
+    filled = sorted(group for group, heads in holders.items() if any(not _describes(head) for head in heads))
     if "" in filled or not filled:
         return ""
     deepest = max(filled, key=len)

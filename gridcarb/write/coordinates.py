@@ -15,6 +15,12 @@ _FILLS = ("_FillValue", "missing_value")
 _OF_THE_SOURCE = (*_FILLS, "coordinates", "_ARRAY_DIMENSIONS", "_NCProperties")
 """Attributes that belong to the file a coordinate came from, not to the coordinate."""
 
+_MEASURES = frozenset({
+    "cell_area", "cell_thickness", "ocean_volume", "sea_area_fraction", "sea_floor_depth", "sea_floor_depth_below_geoid",
+    "sea_floor_depth_below_mean_sea_level", "sea_floor_depth_below_sea_surface",
+})
+"""Standard names of what is told about cells and places no cell anywhere: variables in their own right."""
+
 
 def clean_coordinates(template: xr.Dataset, axes: Axes) -> dict[str, xr.Variable]:
     """Every coordinate, bound, measure, term and topology among the coords of `template`, ready to be stored.
@@ -46,6 +52,7 @@ def auxiliary(dims: Sequence[str], coordinates: Mapping[str, xr.Variable]) -> li
         name for name, variable in coordinates.items()
         if name not in variable.dims and name not in hidden and set(variable.dims) <= set(dims)
         and "grid_mapping_name" not in variable.attrs and not _is_topology(variable)
+        and variable.attrs.get("standard_name") not in _MEASURES
     ]
 
 

@@ -94,8 +94,8 @@ def test_levels_in_any_order_and_pressure() -> None:
 
 def test_levels_without_depth_are_refused() -> None:
     ds = make_result(step=30)
-    sigma = ds.assign_coords(lev=("lev", [-0.1, -0.9], {"units": "1", "standard_name": "ocean_sigma_coordinate"}))
-    for bad in (sigma, ds.drop_vars("lev")):
+    fractions = ds.assign_coords(lev=("lev", [0.1, 0.9], {"units": "1", "axis": "Z"}))
+    for bad in (fractions, ds.drop_vars("lev")):
         with pytest.raises(InputError, match="levels of one depth each"):
             level(bad, 0)
 

@@ -19,7 +19,6 @@ import xarray as xr
 import gridcarb
 from gridcarb.run.conduct import Outcome
 from synthetic_grids.clothes import MODEL_NAMES
-from synthetic_grids.geography import sea_floor_depth
 from synthetic_grids.kinds import KINDS, scene_of, stated
 from synthetic_grids.masks import PACKING
 from synthetic_grids.measures import cell_areas, fixed_fields

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import cast
 
+from gridcarb.errors import OutputError
 from gridcarb.products.ranges import Ranges
 from gridcarb.run.task import Job, Record, run_block
 from gridcarb.write.ledger import LEDGER, Ledger, Marker
@@ -14,7 +15,11 @@ STATUS = "solution_status"
 def do_block(job: Job, number: int, parts: int = 1) -> Record:
     """Do a block and mark it in the ledger beside the store. Doing it twice leaves the same bytes and the same mark."""
     record = run_block(job, number, parts)
-    Ledger(job.store.parent / LEDGER).put(marker_of(job, record))
+    try:
+        Ledger(job.store.parent / LEDGER).put(marker_of(job, record))
+    except OutputError as error:
+        error.where = f"{error.where} ({job.name(number)})"
+        raise
     return record
 
 

@@ -48,6 +48,10 @@ class Job:
         """The catalogue keys to solve for."""
         return tuple(entry.key for entry in self.fields)
 
+    def name(self, number: int) -> str:
+        """What a block is called, counted from one."""
+        return f"block {number + 1} of {len(self.layout)}"
+
 
 @dataclass(frozen=True)
 class Record:
@@ -72,7 +76,7 @@ def run_block(job: Job, number: int, parts: int = 1) -> Record:
     ------
     GridcarbError : whatever went wrong, with the block in its `where`.
     """
-    place = f"block {number + 1} of {len(job.layout)}"
+    place = job.name(number)
     try:
         return _run_block(job, number, parts)
     except GridcarbError as error:

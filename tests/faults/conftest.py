@@ -150,3 +150,16 @@ def place(tmp_path: Path, ocean_file: Path) -> Iterator[Callable[..., Place]]:
         for run in each.running:
             if run.process.poll() is None:
                 run.end(signal.SIGKILL)
+
+
+@pytest.fixture
+def tiny_disk(tmp_path: Path) -> Iterator[Path]:
+    """A disk of 300 kB; mounting it is for root alone."""
+    folder = tmp_path / "disk"
+    folder.mkdir()
+    command = ["mount", "-t", "tmpfs", "-o", "size=300k", "tmpfs", str(folder)]
+    mounted = subprocess.run(command, capture_output=True, check=False)
+    if mounted.returncode:
+        pytest.skip(f"a small tmpfs cannot be mounted here: {mounted.stderr.decode().strip()}")
+    yield folder
+    subprocess.run(["umount", "-l", str(folder)], check=True)

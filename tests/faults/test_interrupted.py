@@ -16,7 +16,7 @@ def test_killed_in_the_middle(place) -> None:
     assert run.end(signal.SIGKILL) == -signal.SIGKILL
     assert here.contents() == earlier
     assert here.journal(here.partial)["state"] == "running"
-    after = here.begin()
+    after = here.begin("--anew")
     assert after.wait() == 0, after.said
     said = " ".join(after.said.split())
     assert f"had left its lock (process {run.process.pid} on {os.uname().nodename}" in said
@@ -37,6 +37,7 @@ def test_stopped_in_the_middle(place, number, code, words) -> None:
     assert run.end(number) == code
     assert words in run.said
     assert f"the incomplete result was left in {here.partial}" in run.said
+    assert f"of 60 blocks are done: `gridcarb run {here.recipe} --resume` goes on from there" in run.said
     assert "Traceback" not in run.said
     assert here.contents() == earlier
     assert not here.lock.exists()

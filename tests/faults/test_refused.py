@@ -5,22 +5,8 @@ from __future__ import annotations
 import os
 import shutil
 import signal
-import subprocess
 
 import pytest
-
-
-@pytest.fixture
-def tiny_disk(tmp_path):
-    """A disk of 300 kB; mounting it is for root alone."""
-    folder = tmp_path / "disk"
-    folder.mkdir()
-    command = ["mount", "-t", "tmpfs", "-o", "size=300k", "tmpfs", str(folder)]
-    mounted = subprocess.run(command, capture_output=True, check=False)
-    if mounted.returncode:
-        pytest.skip(f"a small tmpfs cannot be mounted here: {mounted.stderr.decode().strip()}")
-    yield folder
-    subprocess.run(["umount", "-l", str(folder)], check=True)
 
 
 def error_lines(said: str) -> list[str]:

@@ -64,7 +64,7 @@ def test_a_resumed_run_does_the_rest_and_leaves_the_same_bytes(
     assert 4 <= done < 9
     again = []
     run_block = tasks._run_block
-    monkeypatch.setattr(tasks, "_run_block", lambda job, number, *rest: again.append(number) or run_block(job, number, *rest))
+    monkeypatch.setattr(tasks, "_run_block", lambda job, block, parts: again.append(block) or run_block(job, block, parts))
     outcome = conduct(prepare(recipe(engine=BLOCK, output=output)), watcher, "resume")
     assert len(again) == len(set(again)) == 9 - done
     assert watcher.total == (9 - done, (9 - done) * 120)

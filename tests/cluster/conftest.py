@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import os
 import re
 import signal
 import subprocess
@@ -16,6 +17,8 @@ from typing import Any
 
 import pytest
 
+from gridcarb.recipe import load
+from gridcarb.run import conduct, prepare
 from synthetic_grids import grids
 from synthetic_grids.clothes import Clothes, dress
 
@@ -31,7 +34,7 @@ main()
 
 
 def pytest_configure(config: pytest.Config) -> None:
-    config.addinivalue_line("markers", "cluster: starts dask schedulers and workers in processes of their own, on the loopback")
+    config.addinivalue_line("markers", "cluster: starts schedulers and workers in processes of their own, on the loopback")
 
 
 def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
@@ -85,11 +88,14 @@ class Process:
 
 @contextmanager
 def started(folder: Path, *command: str) -> Iterator[Process]:
-    """A process of this Python, ended with the block."""
+    """A process of this Python that finds this checkout, ended with the block."""
     folder.mkdir(exist_ok=True)
+    environment = {**os.environ, "PYTHONPATH": str(Path(__file__).parents[2])}
     log = folder / f"{time.monotonic_ns()}.log"
     with log.open("w") as file:
-        process = subprocess.Popen([sys.executable, *command], stdout=file, stderr=file, text=True, cwd=folder)
+        process = subprocess.Popen(
+            [sys.executable, *command], stdout=file, stderr=file, text=True, cwd=folder, env=environment
+        )
     running = Process(process, log)
     try:
         yield running
@@ -164,13 +170,27 @@ def gridcarb(tmp_path: Path) -> Iterator[Callable[..., Process]]:
         yield lambda *words: stack.enter_context(started(tmp_path / "logs", "-c", _START, *map(str, words)))
 
 
+class Silent:
+    """A watcher that looks away."""
+
+    def start(self, total_blocks: int, cells: int) -> None: ...
+    def block_done(self, cells: int, note: str = "") -> None: ...
+    def block_failed(self, note: str) -> None: ...
+    def strength(self, workers: int, resident: int) -> None: ...
+    def message(self, text: str) -> None: ...
+    def stop(self) -> None: ...
+
+
+def run_here(recipe: Path, **words: Any) -> dict[str, bytes]:
+    """A run in this process; the files of its store."""
+    outcome = conduct(prepare(load(recipe)), Silent(), **words)
+    return store_files(outcome.written["Zarr store"].parent)
+
+
 @pytest.fixture(scope="session")
 def on_threads(write_recipe: Callable[..., Path], tmp_path_factory: pytest.TempPathFactory) -> dict[str, bytes]:
     """Every file of the store that threads make: what all others are held against."""
-    folder = tmp_path_factory.mktemp("threads") / "result"
-    with started(folder.parent / "logs", "-c", _START, "run", str(write_recipe(folder))) as run:
-        assert run.wait() == 0, run.said
-    return store_files(folder)
+    return run_here(write_recipe(tmp_path_factory.mktemp("threads") / "result"))
 
 
 def store_files(result: Path) -> dict[str, bytes]:

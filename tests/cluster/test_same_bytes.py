@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 import xarray as xr
 
-from tests.cluster.conftest import events_of, store_files
+from tests.cluster.conftest import events_of, run_here, store_files
 
 A_FIFTH = r"(?m)^ *(5|10|15|20) %"
 
@@ -36,9 +36,8 @@ def test_a_scheduler_told_in_the_recipe(gridcarb, cluster, write_recipe, on_thre
     assert json.loads((tmp_path / "result" / "journal.json").read_text())["engine"]["address"] == cluster.address
 
 
-def test_blocks_of_another_size(gridcarb, cluster, write_recipe, on_threads, tmp_path) -> None:
-    run = gridcarb("run", write_recipe(tmp_path / "result", block={"time": 4, "cells": 100}), "--engine", cluster.address)
-    assert run.wait() == 0, run.said
+def test_blocks_of_another_size(cluster, write_recipe, on_threads, tmp_path) -> None:
+    run_here(write_recipe(tmp_path / "result", block={"time": 4, "cells": 100}, address=cluster.address))
     (tmp_path / "threads").mkdir()
     for name, content in on_threads.items():
         path = tmp_path / "threads" / name
@@ -71,8 +70,8 @@ def test_a_worker_killed_in_the_middle(gridcarb, own_cluster, write_recipe, on_t
 def test_stopped_in_the_middle_and_gone_on(
     gridcarb, cluster, write_recipe, on_threads, tmp_path, number, code, engine
 ) -> None:
-    words = ("run", write_recipe(tmp_path / "result"), "--engine", cluster.address if engine == "scheduler" else engine)
-    run = gridcarb(*words)
+    recipe = write_recipe(tmp_path / "result")
+    run = gridcarb("run", recipe, "--engine", cluster.address if engine == "scheduler" else engine)
     run.wait_for(A_FIFTH)
     assert run.end(number) == code, run.said
     assert "--resume" in run.said
@@ -80,9 +79,7 @@ def test_stopped_in_the_middle_and_gone_on(
     (end,) = events_of(tmp_path / "result.partial", "end")
     assert end["state"] == "interrupted"
     assert not (tmp_path / "result.partial" / "job.pickle").exists()
-    again = gridcarb(*words, "--resume")
-    assert again.wait() == 0, again.said
-    assert store_files(tmp_path / "result") == on_threads
+    assert run_here(recipe, manner="resume") == on_threads
     assert len(events_of(tmp_path / "result", "begin")) == 2
 
 
@@ -94,6 +91,4 @@ def test_a_scheduler_lost_in_the_middle(gridcarb, own_cluster, write_recipe, on_
     assert run.wait() == 7, run.said
     assert "Traceback" not in run.said
     assert "--resume" in run.said.splitlines()[-1]
-    again = gridcarb("run", recipe, "--resume")
-    assert again.wait() == 0, again.said
-    assert store_files(tmp_path / "result") == on_threads
+    assert run_here(recipe, manner="resume") == on_threads

@@ -19,7 +19,7 @@ from gridcarb.errors import BlockError, EngineError, GridcarbError
 from gridcarb.run.engines.crew import Answer, Crew, Order, Strength, attempt, is_at_work, resident_bytes
 
 LOOPBACK = "127.0.0.1"
-_PATIENCE = "15s"
+_PATIENCE = "10s"
 """How long a scheduler may take to answer, at the beginning or after a break."""
 
 _LOST = (OSError, TimeoutError, RuntimeError, CommClosedError)

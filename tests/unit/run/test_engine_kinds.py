@@ -14,7 +14,7 @@ import pytest
 from dask.utils import parse_bytes
 from pydantic import ValidationError
 
-import gridcarb.errors as errors
+from gridcarb import errors
 from gridcarb.errors import EngineError, GridcarbError, UnknownWordError
 from gridcarb.recipe.engine import EngineSettings, spoken_engine
 from gridcarb.run.engines import open_crew, queue
@@ -118,7 +118,7 @@ def test_the_command_that_goes_over_ssh(monkeypatch) -> None:
 
 
 @pytest.mark.parametrize(("system", "lines"), [
-    ("slurm", [r"#SBATCH -p wide", r"#SBATCH -A ocean", r"#SBATCH -t 02:30:00", 
+    ("slurm", [r"#SBATCH -p wide", r"#SBATCH -A ocean", r"#SBATCH -t 02:30:00",
                r"#SBATCH --cpus-per-task=4", r"#SBATCH --mem=\d"]),
     ("pbs", [r"#PBS -q wide", r"#PBS -A ocean", r"#PBS -l walltime=02:30:00", r"#PBS -l select=1:ncpus=4:mem=\d"]),
     ("sge", [r"#\$ -q wide", r"#\$ -P ocean", r"#\$ -l h_rt=02:30:00"]),

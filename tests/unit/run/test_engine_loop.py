@@ -55,7 +55,9 @@ class Order:
         return self.function(number, parts)
 
 
-def on_threads(function: Callable[[int, int], Any], numbers: Any, workers: int = 2, retries: int = 1, book: Any = None) -> Book:
+def on_threads(
+    function: Callable[[int, int], Any], numbers: Any, workers: int = 2, retries: int = 1, book: Any = None
+) -> Book:
     book = book or Book()
     order = Order(function)
     with open_crew(EngineSettings(), workers, order, lambda _: None) as crew:

@@ -20,6 +20,7 @@ from gridcarb.products.exact import ExactSum
 from gridcarb.products.shelf import PRODUCTS, Product
 
 Numbers = NDArray[np.float64]
+_LN10 = math.log(10.0)
 
 
 @dataclass
@@ -32,13 +33,14 @@ class Mean:
     hydrogen: ExactSum = field(default_factory=ExactSum)
 
     def add(self, values: Numbers, weights: Numbers) -> None:
-        """Count in values with their weights; NaN has none."""
-        there = np.isfinite(values) & (weights > 0)
-        values, weights = values[there], weights[there]
+        """Count in values with their weights, all of them positive; NaN has none."""
+        there = np.isfinite(values)
+        if not there.all():
+            values, weights = values[there], weights[there]
         self.weight.add(float(weights.sum()))
         self.total.add(float((values * weights).sum()))
         if self.is_ph:
-            self.hydrogen.add(float((np.power(10.0, -values) * weights).sum()))
+            self.hydrogen.add(float((np.exp(-_LN10 * values) * weights).sum()))
 
     def merge(self, other: Mean) -> None:
         """Count in another share of the same field."""
@@ -63,8 +65,8 @@ class Extents:
     weights: dict[int, ExactSum] = field(default_factory=dict)
 
     def add(self, values: NDArray[np.generic], weights: Numbers) -> None:
-        """Count in the weights of each value."""
-        for value in np.unique(values[weights > 0]):
+        """Count in the weights of each value, all of them positive."""
+        for value in np.unique(values):
             self.weights.setdefault(int(value), ExactSum()).add(float(weights[values == value].sum()))
 
     def merge(self, other: Extents) -> None:
@@ -110,10 +112,12 @@ class Means:
     def _count(self, extent: str, fields: xr.Dataset, weights: xr.DataArray) -> None:
         self.known.add(extent)
         dims = next(iter(fields.data_vars.values())).dims
-        flat = weights.transpose(*dims).values
+        flat = weights.transpose(*dims).values.ravel()
+        counted = np.flatnonzero(flat > 0)
+        flat = flat[counted]
         self.sizes[extent].add(float(flat.sum()))
         for key, share in self.shares[extent].items():
-            values = fields[key].transpose(*dims).values
+            values = fields[key].transpose(*dims).values.ravel()[counted]
             share.add(values if isinstance(share, Extents) else values.astype(np.float64, copy=False), flat)
 
     def merge(self, other: Means) -> None:

@@ -41,11 +41,11 @@ class Range:
         if not values.size:
             return
         self.values += values.size
-        self.minimum = min(self.minimum, float(values.min()))
-        self.maximum = max(self.maximum, float(values.max()))
+        low, high = float(values.min()), float(values.max())
+        self.minimum, self.maximum = min(self.minimum, low), max(self.maximum, high)
         self.total.add(float(values.sum()))
-        self.below += int(np.count_nonzero(values < self.low))
-        self.above += int(np.count_nonzero(values > self.high))
+        self.below += int(np.count_nonzero(values < self.low)) if low < self.low else 0
+        self.above += int(np.count_nonzero(values > self.high)) if high > self.high else 0
 
     def merge(self, other: Range) -> None:
         """Count in another share of the same field."""

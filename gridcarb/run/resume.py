@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, field, replace
 from datetime import datetime
@@ -39,6 +38,7 @@ class Start:
     resumed: bool
     notices: tuple[Notice, ...]
     done: set[int] = field(default_factory=set)
+    _cells_done: int = 0
 
     @property
     def store(self) -> Path:
@@ -53,8 +53,7 @@ class Start:
     @property
     def cells_left(self) -> int:
         """Cells of the blocks still to be done."""
-        layout = self.plan.layout
-        return layout.cells - sum(math.prod(layout.extent(layout.region(block))) for block in self.done)
+        return self.plan.layout.cells - self._cells_done
 
     def to_do(self) -> Iterator[int]:
         """The blocks still to be done, in order."""
@@ -92,6 +91,7 @@ class Start:
                 dropped.setdefault("it was finished last, and its chunks are not as its marker says", []).append(block)
                 continue
             self.done.add(block)
+            self._cells_done += marker.cells
             add(marker)
         for blocks in dropped.values():
             for block in blocks:
@@ -162,7 +162,7 @@ def _go_on(plan: Plan, ledger: Ledger, old: Charter, now: datetime, notices: tup
     _refuse_damaged_frame(plan.folder.partial / STORE, old)
     ledger.sweep()
     sweep_store(plan.folder.partial / STORE)
-    for rest in plan.folder.partial.glob(".*"):
+    for rest in plan.folder.partial.glob(".*"):  # half a journal, half a NetCDF file
         rest.unlink()
     # What may change between the two runs is taken from the new one.
     kept = replace(charter, begun=old.begun, fixed=old.fixed)

@@ -1,7 +1,7 @@
-"""Ranges: for each field how many values, their extremes and mean, and how many lie outside the sane range.
+"""Ranges: for each field how many values, their extremes, and how many lie outside the sane range.
 
-One pass, float64 throughout. Sums are kept as exact integers, so that the order in which blocks are merged changes nothing,
-not even the last bit. (The sum *within* a block is a float64 sum: another block size may move the last digits of a mean.)
+Counts and extremes only, so that neither the order in which blocks are merged nor their size changes anything. A mean over
+cells of unlike size would mislead: means are weighted, see `means`.
 """
 
 from __future__ import annotations
@@ -16,7 +16,6 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from gridcarb.fields import Field
-from gridcarb.products.exact import ExactSum
 from gridcarb.products.shelf import PRODUCTS, Product
 
 
@@ -30,20 +29,21 @@ class Range:
     values: int = 0
     minimum: float = math.inf
     maximum: float = -math.inf
-    total: ExactSum = field(default_factory=ExactSum)
     below: int = 0
     above: int = 0
 
     def add(self, values: NDArray[np.float64]) -> None:
         """Count in `values`; NaN or infinity is a cell without a value."""
         self.cells += values.size
-        values = values[np.isfinite(values)]
-        if not values.size:
+        there = int(np.count_nonzero(np.isfinite(values)))
+        if not there:
             return
-        self.values += values.size
-        low, high = float(values.min()), float(values.max())
+        self.values += there
+        low, high = float(np.fmin.reduce(values, axis=None)), float(np.fmax.reduce(values, axis=None))
+        if math.isinf(low) or math.isinf(high):
+            values = values[np.isfinite(values)]
+            low, high = float(values.min()), float(values.max())
         self.minimum, self.maximum = min(self.minimum, low), max(self.maximum, high)
-        self.total.add(float(values.sum()))
         self.below += int(np.count_nonzero(values < self.low)) if low < self.low else 0
         self.above += int(np.count_nonzero(values > self.high)) if high > self.high else 0
 
@@ -53,17 +53,15 @@ class Range:
         self.values += other.values
         self.minimum = min(self.minimum, other.minimum)
         self.maximum = max(self.maximum, other.maximum)
-        self.total.merge(other.total)
         self.below += other.below
         self.above += other.above
 
     def report(self) -> dict[str, Any]:
-        """Counts and extremes; None for the extremes and the mean of nothing."""
+        """Counts and extremes; None for the extremes of nothing."""
         some = self.values > 0
         return {
             "cells": self.cells, "values": self.values,
             "minimum": self.minimum if some else None, "maximum": self.maximum if some else None,
-            "mean_of_cells": self.total.over(self.values),
             "sane_range": [self.low, self.high], "below_sane_range": self.below, "above_sane_range": self.above,
         }
 
@@ -117,5 +115,5 @@ class Ranges:
 
 
 PRODUCTS.put("ranges", Product(
-    "ranges", "number of values, extremes, mean over cells, and how many lie outside the sane range", Ranges,
+    "ranges", "number of values, extremes, and how many lie outside the sane range", Ranges,
 ))

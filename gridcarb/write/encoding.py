@@ -75,14 +75,14 @@ def fill_of(dtype: np.dtype[Any], zarr_format: Literal[2, 3], *, missing: bool) 
 
 
 def compressor(zarr_format: Literal[2, 3]) -> BloscCodec | numcodecs.Blosc:
-    """Zstandard at level 3 behind a byte shuffle, in the Blosc container.
+    """Zstandard at level 1 behind a byte shuffle, in the Blosc container.
 
     Blosc is the one codec with a shuffle that the core of both Zarr formats specifies, so every implementation reads it;
     plain Zstandard has no shuffle there, and smooth floats then take a third more room.
     """
     if zarr_format == 2:
-        return numcodecs.Blosc(cname="zstd", clevel=3, shuffle=numcodecs.Blosc.SHUFFLE)
-    return BloscCodec(cname="zstd", clevel=3, shuffle="shuffle")
+        return numcodecs.Blosc(cname="zstd", clevel=1, shuffle=numcodecs.Blosc.SHUFFLE)
+    return BloscCodec(cname="zstd", clevel=1, shuffle="shuffle")
 
 
 def stored(values: NDArray[np.generic], dtype: np.dtype[np.generic]) -> NDArray[np.generic]:

@@ -29,12 +29,13 @@ _LOST = (OSError, TimeoutError, RuntimeError, CommClosedError)
 def own_scheduler() -> AbstractContextManager[Any]:
     """Settings of a scheduler that works for one run alone, and of the workers it starts.
 
-    A block that has cost two workers their lives is not given to a third: it is done in halves. One thread in each
-    process: linear algebra and the like must not start their own.
+    A block that has cost two workers their lives is not given to a third: it is done in halves. Blocks wait with the
+    scheduler, not with the worker, so that only the one that was at work is suspected. One thread in each process: linear
+    algebra and the like must not start their own.
     """
     alone = ("OMP_NUM_THREADS", "MKL_NUM_THREADS", "OPENBLAS_NUM_THREADS")
     settings: AbstractContextManager[Any] = dask.config.set({
-        "distributed.scheduler.allowed-failures": 1,
+        "distributed.scheduler.allowed-failures": 1, "distributed.scheduler.worker-saturation": 1.0,
         **{f"distributed.nanny.pre-spawn-environ.{name}": 1 for name in alone},
     })  # fmt: skip
     return settings

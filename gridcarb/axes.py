@@ -11,10 +11,13 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Literal
 
+import numpy as np
 import xarray as xr
+from numpy.typing import NDArray
 
 from gridcarb.errors import InputError
 
+Numbers = NDArray[np.float64]
 GridKind = Literal["rectilinear", "curvilinear", "unstructured", "column"]
 
 
@@ -148,6 +151,31 @@ def grid_kind(ds: xr.Dataset, axes: Axes) -> GridKind:
         return "unstructured"
     plane = axes.latitude is not None and ds[axes.latitude].ndim == 2
     return "curvilinear" if plane else "rectilinear"
+
+
+def edges_between(centres: Numbers) -> Numbers:
+    """Edges (n, 2) halfway between neighbouring centres (n >= 2, in any order); the outer as far out as the inner."""
+    order = np.argsort(centres, kind="stable")
+    middles = (centres[order][:-1] + centres[order][1:]) / 2.0
+    first, last = centres[order[[0, -1]]]
+    edges = np.concatenate([[2.0 * first - middles[0]], middles, [2.0 * last - middles[-1]]])
+    found = np.empty((centres.size, 2))
+    found[order] = np.stack([edges[:-1], edges[1:]], axis=-1)
+    return found
+
+
+def on_one_turn(longitude: Numbers) -> Numbers:
+    """Centres (n,) in degrees moved by whole turns, so that neighbours on the map are neighbours in number.
+
+    Where they do not go around in order, the turn begins behind the widest gap.
+    """
+    turned = np.unwrap(longitude, period=360.0)
+    if (np.diff(turned) >= 0.0).all() or (np.diff(turned) <= 0.0).all():
+        return turned
+    around = np.sort(longitude % 360.0)
+    widest = int(np.argmax(np.diff(around, append=around[0] + 360.0)))
+    begin = around[(widest + 1) % around.size]
+    return np.asarray(begin + (longitude - begin) % 360.0)
 
 
 class _Survey:

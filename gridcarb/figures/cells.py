@@ -12,7 +12,7 @@ import numpy.typing as npt
 import shapely
 import xarray as xr
 
-from gridcarb.axes import Axes, grid_kind
+from gridcarb.axes import Axes, edges_between, grid_kind, on_one_turn
 from gridcarb.errors import InputError
 from gridcarb.figures.corners import bounds_of, degrees, patches_of, places
 
@@ -210,13 +210,11 @@ def _pairs(coordinate: xr.DataArray, bounds: Floats | None, whole_turn: bool) ->
     """(n, 2) edges of the cells along one axis, degrees."""
     centres = np.atleast_1d(degrees(coordinate))
     if whole_turn:
-        centres = np.unwrap(centres, period=360)
+        centres = on_one_turn(centres)
     if bounds is not None and bounds.shape == (centres.size, 2):
         if not whole_turn or centres.size == 1:
             return bounds
         return np.asarray(centres[:, None] + (bounds - centres[:, None] + 180) % 360 - 180)
     if centres.size == 1:
         return np.stack([centres - 0.5, centres + 0.5], axis=1)
-    middles = (centres[:-1] + centres[1:]) / 2
-    edges = np.concatenate([[2 * centres[0] - middles[0]], middles, [2 * centres[-1] - middles[-1]]])
-    return np.stack([edges[:-1], edges[1:]], axis=1)
+    return edges_between(centres)

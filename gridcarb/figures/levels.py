@@ -43,12 +43,17 @@ class Level:
         if self.depth is None:
             return ""
         near = "level nearest to " if self.within else ""
-        return near + (f"{self.depth:,.6g} m depth" if self.unit == "m" else f"{self.depth:,.6g} dbar")
+        return near + (f"{_rounded(self.depth):,.6g} m depth" if self.unit == "m" else f"{_rounded(self.depth):,.6g} dbar")
 
     @property
     def slug(self) -> str:
         """The same for a file name."""
-        return "top" if self.top else "" if self.depth is None else f"{self.depth:.6g}{self.unit}"
+        return "top" if self.top else "" if self.depth is None else f"{_rounded(self.depth):.6g}{self.unit}"
+
+
+def _rounded(depth: float) -> float:
+    """To four digits: 4.99994 m, as single precision has it, is 5 m to a reader."""
+    return float(f"{depth:.4g}")
 
 
 def choose_level(header: xr.Dataset, axes: Axes, wanted: float, fields: Collection[str] = ()) -> Level:

@@ -15,7 +15,7 @@ import numpy.typing as npt
 import xarray as xr
 
 from gridcarb import units
-from gridcarb.axes import Axes, grid_kind
+from gridcarb.axes import Axes, edges_between, grid_kind, on_one_turn
 from gridcarb.errors import UnitsError
 from gridcarb.harmonise import sphere
 from gridcarb.harmonise.corners import bounds_of, corner_names, corners, degrees
@@ -162,8 +162,7 @@ def _boxes(
         if edges is not None and edges.shape == (centres.size, 2) and _hold(edges, centres):
             how.append(f"bounds of '{name}'")
         elif centres.size > 1:
-            turned = np.unwrap(centres, period=360.0) if name == axes.longitude else centres
-            edges = sphere.edges_between(turned)
+            edges = edges_between(on_one_turn(centres) if name == axes.longitude else centres)
             how.append(f"'{name}' halfway between its centres")
         else:
             return MeasuresReading("unknown"), f"one '{name}' without bounds has no extent"

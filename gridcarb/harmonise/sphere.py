@@ -20,13 +20,6 @@ _PIECE = 16_384
 """Polygons worked on at a time, which bounds the memory of unit vectors."""
 
 
-def edges_between(centres: Numbers) -> Numbers:
-    """Edges (n, 2) halfway between neighbouring centres (n >= 2), the outer ones as far out as the inner ones are in."""
-    middles = (centres[:-1] + centres[1:]) / 2.0
-    edges = np.concatenate([[2.0 * centres[0] - middles[0]], middles, [2.0 * centres[-1] - middles[-1]]])
-    return np.stack([edges[:-1], edges[1:]], axis=-1)
-
-
 def heights(latitude_edges: Numbers) -> Numbers:
     """sin(upper) - sin(lower), positive, of edges (..., 2) in degrees; what lies beyond a pole is cut off."""
     edges = np.radians(np.clip(latitude_edges, -90.0, 90.0))

@@ -29,10 +29,6 @@ def test_widths_do_not_care_for_turns_or_order(west, turn):
     assert sphere.widths(given_edges, centres) == pytest.approx(np.radians(2.0), rel=1e-12)
 
 
-def test_edges_between_centres_are_halfway():
-    assert sphere.edges_between(np.array([0.0, 1.0, 3.0])).tolist() == [[-0.5, 0.5], [0.5, 2.0], [2.0, 4.0]]
-
-
 def test_edges_beyond_a_pole_are_cut_off():
     assert sphere.heights(np.array([[89.0, 91.0]])) == sphere.heights(np.array([[89.0, 90.0]]))
 

@@ -7,7 +7,7 @@ import json
 from collections.abc import Mapping
 from dataclasses import asdict, dataclass, field
 from datetime import UTC, datetime
-from functools import cache
+from functools import cache, cached_property
 from importlib.metadata import version
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -77,12 +77,12 @@ class Charter:
         """When the run first began."""
         return datetime.fromisoformat(self.begun)
 
-    @property
+    @cached_property
     def recipe_digest(self) -> str:
         """SHA-256 of what in the recipe and the program decides the numbers, and of how the grid is cut."""
         return _digest({"recipe": _binding(self.settings), "versions": self.versions, "layout": self.layout})
 
-    @property
+    @cached_property
     def inputs_digest(self) -> str:
         """SHA-256 of paths, sizes, times and fingerprints of the inputs."""
         return _digest(self.files)

@@ -53,8 +53,7 @@ def _verify(inspector: Inspector, watcher: Watcher, sample: int, *, repair: bool
         if not isinstance(shop, Workshop):
             verdict.not_again = shop
             return verdict
-        sound = [block for block in inspector.sample(sample) if block + 1 not in {each.block for each in verdict.damages}]
-        verdict.damages += inspector.compare(shop, sound)
+        verdict.damages += inspector.compare(shop, inspector.sample(sample))
         if repair and verdict.damages:
             _Mender(inspector, shop, watcher).mend()
     return verdict

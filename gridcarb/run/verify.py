@@ -111,6 +111,7 @@ class Inspector:
         self.charter = read_charter(result)
         self.layout = self.charter.grid_layout()
         self.store: Path | None = result / STORE if self.charter.settings["output"]["zarr"] else None
+        self._proof = Proof(result / STORE)
         self.verdict = Verdict(result)
 
     def look(self) -> Verdict:
@@ -127,7 +128,7 @@ class Inspector:
         """Metadata and coordinates of the store."""
         if self.store is None:
             return []
-        names = Proof(self.store).damaged_frame(self.charter.fixed)
+        names = self._proof.damaged_frame(self.charter.fixed)
         return [_file_damage("frame", self.store / name, f"{STORE}/{name}") for name in names]
 
     def all_blocks(self) -> Iterator[Damage]:
@@ -164,7 +165,7 @@ class Inspector:
         if self.store is None:
             return []
         try:
-            found = Proof(self.store).damaged_chunks(marker)
+            found = self._proof.damaged_chunks(marker)
         except Exception as error:  # whatever Zarr says of metadata that are damaged
             return [Damage("chunk", STORE, f"cannot be reached ({type(error).__name__})", marker.block + 1)]
         return [_file_damage("chunk", path, path.relative_to(self.result).as_posix(), marker.block + 1, field)
@@ -201,8 +202,8 @@ class Inspector:
             self._watcher.message(text)
 
     def sample(self, wanted: int) -> list[int]:
-        """Some of the blocks whose markers are sound, another choice each time."""
-        bad = {damage.block - 1 for damage in self.verdict.damages if damage.kind == "marker"}
+        """Some of the blocks that were found whole, another choice each time."""
+        bad = {damage.block - 1 for damage in self.verdict.damages}
         blocks = range(len(self.layout))
         drawn = random.sample(blocks, min(len(blocks), wanted))
         return sorted(block for block in drawn if block not in bad)

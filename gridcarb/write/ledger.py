@@ -199,11 +199,11 @@ def _write(path: Path, text: str, *, lasting: bool = False) -> None:
 
 def _packed(tallies: Mapping[str, Any]) -> str:
     """Tallies promise to be picklable, and are as exact as they were."""
-    return base64.b85encode(zlib.compress(pickle.dumps(dict(tallies), protocol=5))).decode("ascii")
+    return base64.b64encode(zlib.compress(pickle.dumps(dict(tallies), protocol=5))).decode("ascii")
 
 
 def _unpacked(text: str) -> dict[str, Any]:
-    found: dict[str, Any] = _Reader(io.BytesIO(zlib.decompress(base64.b85decode(text)))).load()
+    found: dict[str, Any] = _Reader(io.BytesIO(zlib.decompress(base64.b64decode(text)))).load()
     return found
 
 

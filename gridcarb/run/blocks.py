@@ -126,10 +126,11 @@ def halves(region: Region, axes: Axes) -> tuple[Region, ...]:
     """A region cut in two: in time where it has several steps, else along the longer side of the map; one column is left
     whole."""
     lengths = {dim: region[dim].stop - region[dim].start for dim in region}
-    across = max(axes.horizontal, key=lambda dim: lengths[dim])
-    dim = axes.time if axes.time and lengths[axes.time] > 1 else across
-    if lengths[dim] < 2:
+    across = sorted(axes.horizontal, key=lambda dim: -lengths[dim])[:1]
+    long = [dim for dim in (axes.time, *across) if dim and lengths[dim] > 1]
+    if not long:
         return (region,)
+    dim = long[0]
     middle = region[dim].start + lengths[dim] // 2
     return {**region, dim: slice(region[dim].start, middle)}, {**region, dim: slice(middle, region[dim].stop)}
 

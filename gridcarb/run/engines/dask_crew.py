@@ -42,8 +42,8 @@ def own_scheduler() -> AbstractContextManager[Any]:
 
 
 def dashboard(host: str) -> dict[str, Any]:
-    """The word that gives a scheduler of our own a dashboard, where the library that draws it is installed."""
-    return {"dashboard_address": f"{host}:0" if importlib.util.find_spec("bokeh") else None}
+    """The word that gives a scheduler of our own a dashboard, at any port that is free."""
+    return {"dashboard_address": f"{host}:0"}
 
 
 @contextmanager
@@ -64,7 +64,7 @@ def connected(target: Any, order: Order, say: Callable[[str], None]) -> Iterator
         ) from error
     with client:
         crew = DaskCrew(client)
-        if "dashboard" in client.scheduler_info(n_workers=0)["services"]:
+        if client.dashboard_link and importlib.util.find_spec("bokeh"):  # without it there is a page that says so
             say(f"dashboard: {client.dashboard_link}")
         crew.get_ready(order, say)
         yield crew

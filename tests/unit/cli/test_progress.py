@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from gridcarb.cli.progress import Bar, Lines, Silence, duration_words, rate_words, watcher
+from gridcarb.cli.progress import TOLD, Bar, Lines, Silence, duration_words, rate_words, watcher
 
 
 class Terminal(io.StringIO):
@@ -102,3 +102,29 @@ def test_rates(cells, seconds, words):
 @pytest.mark.parametrize(("seconds", "words"), [(0.2, "0 s"), (59.4, "59 s"), (61, "1 min 1 s"), (7260, "2 h 1 min")])
 def test_durations(seconds, words):
     assert duration_words(seconds) == words
+
+
+@pytest.mark.parametrize("kind", [Lines, Bar])
+def test_memory_and_failures_are_shown(kind):
+    stream = Terminal()
+    looking = kind(stream, Clock())
+    looking.start(4, 4000)
+    looking.strength(2, 1_250_000_000)
+    looking.block_failed("block 2 of 4 failed: no room")
+    for _ in range(3):
+        looking.block_done(1000)
+    looking.stop()
+    assert "block 2 of 4 failed: no room" in stream.getvalue()
+    assert "1.25 GB  1 failed" in stream.getvalue()
+
+
+def test_many_failures_are_only_counted():
+    stream = io.StringIO()
+    lines = Lines(stream, Clock())
+    lines.start(1000, 1000)
+    for number in range(500):
+        lines.block_failed(f"block {number} failed")
+    assert len(stream.getvalue().splitlines()) == 1 + TOLD
+    assert "only counted" in stream.getvalue().splitlines()[-1]
+    lines.block_done(1)
+    assert lines._health.words() == "500 failed"

@@ -227,7 +227,7 @@ def _unknown_notice(raw: xr.Dataset, axes: Axes) -> tuple[Notice, ...]:
         return ()
     kind = grid_kind(raw, axes)
     stations = str(raw.attrs.get("featureType", "")).lower() in _STATIONS
-    stations |= any("cf_role" in raw[name].attrs and set(raw[name].dims) <= set(axes.horizontal) for name in raw.coords)
+    stations |= any(str(coord.attrs.get("cf_role", "")).endswith("_id") for coord in raw.coords.values())
     if kind == "rectilinear" or (kind == "unstructured" and stations):
         return ()
     return (Notice(

@@ -38,5 +38,5 @@ def _attributes(plan: Plan, raw: xr.Dataset, dated: datetime) -> dict[str, objec
     notes += [f"Notice: {notice.text}." for notice in plan.notices]
     return global_attributes(
         title=plan.recipe.title, template=raw, axes=plan.collection.axes, fields=plan.fields, now=dated, citations=keys,
-        notes=notes, own=plan.recipe.output.attributes,
+        notes=notes, own={**plan.recipe.output.attributes, "constants": plan.recipe.chemistry.constants},
     )

@@ -68,8 +68,8 @@ def expected(temperature: xr.DataArray, depth: Any, lat: Any, lon: Any, so: xr.D
 
 def inputs(temperature: Any, carbon: list[Path], more: Mapping[str, Any] | None = None) -> dict[str, Any]:
     files = [str(path) for path in carbon]
-    return {"files": [], "temperature": temperature, **{role: {"files": files} for role in ("dic", "alkalinity", "salinity")},
-            **(more or {})}
+    beside = {role: {"files": files} for role in ("dic", "alkalinity", "salinity")}
+    return {"files": [], "temperature": temperature, **beside, **(more or {})}
 
 
 def assert_drawn(outcome: Outcome, number: int) -> None:

@@ -8,6 +8,7 @@ import logging
 import time
 import uuid
 from collections.abc import Callable, Iterable, Iterator, Sequence
+from concurrent.futures import CancelledError
 from contextlib import AbstractContextManager, contextmanager, suppress
 from typing import Any
 
@@ -19,7 +20,7 @@ from gridcarb.errors import BlockError, EngineError, GridcarbError
 from gridcarb.run.engines.crew import Answer, Crew, Order, Strength, attempt, is_at_work, resident_bytes
 
 LOOPBACK = "127.0.0.1"
-_PATIENCE = "10s"
+_PATIENCE = "5s"
 """How long a scheduler may take to answer, at the beginning or after a break."""
 
 _LOST = (OSError, TimeoutError, RuntimeError, CommClosedError)
@@ -102,15 +103,19 @@ class DaskCrew:
             if future.done():
                 _raise_unable(address, future.exception() or future.result())
 
-    def submit(self, order: Order, number: int, parts: int) -> Future:
+    def submit(self, order: Order, number: int, parts: int) -> Future[Answer]:
         key = (self._name, number, next(self._numbers))
         return self._client.submit(attempt, order, number, parts, key=key)
 
-    def collect(self, futures: Sequence[Future]) -> list[Answer]:
+    def collect(self, futures: Sequence[Future[Answer]]) -> list[Answer]:
         try:
-            found = iter(self._client.gather([future for future in futures if future.status == "finished"]))
-            return [next(found) if future.status == "finished" else _without_answer(future) for future in futures]
-        except _LOST as error:
+            ready = [future for future in futures if future.status == "finished"]
+            try:
+                found = dict(zip(ready, self._client.gather(ready), strict=True))
+            except KilledWorker:  # an answer was lost with its worker, and asking again cost another one
+                found = {}
+            return [found[future] if future in found else _single_answer(future) for future in futures]
+        except (*_LOST, CancelledError) as error:
             raise self._lost(error) from error
 
     def strength(self) -> Strength:
@@ -121,7 +126,7 @@ class DaskCrew:
         resident = sum(int(worker.get("metrics", {}).get("memory", 0)) for worker in workers)
         return Strength(sum(worker["nthreads"] for worker in workers), resident + resident_bytes(children=False))
 
-    def drop(self, futures: Sequence[Future]) -> None:
+    def drop(self, futures: Sequence[Future[Answer]]) -> None:
         with suppress(*_LOST):
             self._client.cancel(list(futures))
             while any(flag is True for flag in self._client.run(is_at_work, self._order, on_error="return").values()):
@@ -158,9 +163,12 @@ def _raise_unable(address: str, found: BaseException | None) -> None:
     ) from found
 
 
-def _without_answer(future: Future) -> Answer:
-    """The answer for a block whose worker gave none."""
+def _single_answer(future: Future[Answer]) -> Answer:
+    """The answer to one attempt, waited for where it was lost with its worker and is made again."""
     error = future.exception()
+    if error is None:
+        answer: Answer = future.result()
+        return answer
     if not isinstance(error, KilledWorker):
         raise EngineError(
             f"a worker could not give its answer ({type(error).__name__}: {error})", where="engine",

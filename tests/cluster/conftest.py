@@ -22,7 +22,7 @@ from gridcarb.run import conduct, prepare
 from synthetic_grids import grids
 from synthetic_grids.clothes import Clothes, dress
 
-PATIENCE = 40.0
+PATIENCE = 90.0
 """Seconds after which a process that does not do what is waited for has failed the test."""
 
 _START = """

@@ -11,6 +11,7 @@ from contextlib import contextmanager
 from distributed import LocalCluster
 
 from gridcarb.recipe.engine import EngineSettings
+from gridcarb.run.engines import deaf
 from gridcarb.run.engines.crew import Crew, Order
 from gridcarb.run.engines.dask_crew import LOOPBACK, connected, dashboard, own_scheduler
 
@@ -20,6 +21,7 @@ def crew(_: EngineSettings, workers: int, order: Order, say: Callable[[str], Non
     """A crew of `workers` processes."""
     say(f"starting {workers} processes")
     with own_scheduler(), LocalCluster(
-        n_workers=workers, threads_per_worker=1, processes=True, host=LOOPBACK, **dashboard(LOOPBACK),
+        n_workers=workers, threads_per_worker=1, processes=True, host=LOOPBACK, preload=[deaf.__name__],
+        **dashboard(LOOPBACK),
     ) as cluster, connected(cluster, order, say) as found:  # fmt: skip
         yield found

@@ -8,15 +8,13 @@ from typing import TYPE_CHECKING
 import click
 
 from gridcarb.cli import faces, show
-from gridcarb.cli.terminal import debug_option, json_option, quiet_option, terminal
+from gridcarb.cli.terminal import ASSUMED, debug_option, json_option, quiet_option, terminal
 from gridcarb.errors import InputError, OutputError, UnknownWordError
 
 if TYPE_CHECKING:
     from gridcarb.cli.faces import Audit
 
 _RECIPES = (".yaml", ".yml")
-ASSUMED = 7
-"""The exit code under --strict when something was assumed."""
 
 
 @click.command()

@@ -13,6 +13,9 @@ import click
 from gridcarb.cli import show
 from gridcarb.errors import GridcarbError
 
+ASSUMED = 9
+"""Of `audit --strict` when something was assumed."""
+
 INTERRUPTED = 128 + signal.SIGINT
 TERMINATED = 128 + signal.SIGTERM
 Command = TypeVar("Command", bound=Callable[..., Any])
@@ -91,5 +94,6 @@ def exit_codes() -> str:
     lines = ["0    all is well", f"{GridcarbError.exit_code}    anything not listed here"]
     for code, words in sorted(meanings.items()):
         lines += [f"{code}    {words[0]}", *(f"     or {word}" for word in words[1:])]
+    lines.append(f"{ASSUMED}    audit --strict: something was assumed")
     lines += [f"{INTERRUPTED}  stopped by Ctrl-C", f"{TERMINATED}  stopped by SIGTERM"]
     return "\b\nExit codes:\n" + "\n".join(f"  {line}" for line in lines)

@@ -239,7 +239,11 @@ def test_a_wrong_command_line_ends_with_two(words):
 def test_help_and_version():
     for words in (["--help"], ["run", "--help"], ["plan", "-h"], ["fields", "--help"], ["keys", "--help"], ["--version"]):
         assert call(*words).exit_code == 0
-    assert "gridcarb run recipes/first_look.yaml" in call("--help").stdout
+    told = call("--help").stdout
+    assert "gridcarb run recipes/first_look.yaml" in told
+    assert "9    audit --strict" in told
+    assert "130  stopped by Ctrl-C" in told
+    assert "143  stopped by SIGTERM" in told
 
 
 def test_the_command_is_light_to_import():

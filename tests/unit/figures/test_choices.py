@@ -92,6 +92,14 @@ def test_levels_in_any_order_and_pressure() -> None:
     assert level(pressure, 480).label == "500 dbar"
 
 
+@pytest.mark.parametrize(("depth", "label", "slug"), [
+    (4.999938, "5 m depth", "5m"), (2533.336, "2,533 m depth", "2533m"), (0.5057600, "0.5058 m depth", "0.5058m"),
+])
+def test_depths_of_single_precision_are_told_to_four_digits(depth: float, label: str, slug: str) -> None:
+    found = Level(0, depth)
+    assert (found.label, found.slug) == (label, slug)
+
+
 def test_levels_without_depth_are_refused() -> None:
     ds = make_result(step=30)
     fractions = ds.assign_coords(lev=("lev", [0.1, 0.9], {"units": "1", "axis": "Z"}))

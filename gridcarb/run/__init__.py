@@ -1,7 +1,7 @@
 """The run: the one place that joins the stages.
 
-`audit_files` and `audit_recipe` tell everything about inputs, `prepare` turns a recipe into a plan from headers alone, `conduct` carries the plan out, `derive` does the same work
-lazily on a dataset in memory.
+`audit_files` and `audit_recipe` tell everything about inputs, `prepare` turns a recipe into a plan from headers alone,
+`conduct` carries the plan out, `derive` does the same work lazily on a dataset in memory.
 """
 
 from __future__ import annotations

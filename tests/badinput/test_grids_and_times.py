@@ -110,7 +110,8 @@ def test_months_since(bench, ocean) -> None:
     bench.put(ds)
     told = bench.refusal(3)
     assert "months since 2010-01-15" in told.what
-    assert "`days since`" in told.mend
+    assert "`inputs: {months: calendar}`" in told.mend
+    assert "`inputs: {months: mean}`" in told.mend
     ds["time"].attrs |= {"calendar": "360_day"}  # where a month has a length
     bench.put(ds)
     assert bench.success().sizes["time"] == 3

@@ -1,11 +1,11 @@
 """Wall time of a whole run beside a dask pipeline that only copies as many bytes in and out.
 
-    python -m tests.benchmarks.end_to_end [STEPS] [zarr|netcdf]
+    python -m tests.benchmarks.end_to_end [STEPS] [zarr|netcdf] [potential]
 
-Both read the same six inputs from the same store or files and write eight fields as float32 into a Zarr store of the same
-chunks and codec, on all cores, turn and turn about; medians are told. The water is the invented ocean on a 1 degree grid with
-30 levels, in-situ temperature, practical salinity and amounts per mass: what is measured is the way of the bytes and the
-chemistry. `potential` as a third word dresses temperature and amounts as models do, with TEOS-10 and a density to pay for.
+Both read the same six inputs from the same store or file and write eight fields as float32 into a Zarr store of the same
+chunks and codec, on all cores, turn and turn about; medians are told. The water is the invented ocean on a 1 degree grid
+with 30 levels, in-situ temperature, practical salinity and amounts per mass: what is measured is the way of the bytes and
+the chemistry. `potential` dresses it as models do, with TEOS-10 and a density to pay for.
 """
 
 from __future__ import annotations
@@ -59,7 +59,8 @@ def seconds_of_run(source: Path, folder: Path) -> float:
     """The run as a user starts it, from recipe to store; no NetCDF export, no figures."""
     recipe = check(
         f"recipe: 1\ninputs: {{files: {source}}}\nreading: {{salinity: practical, density: 1026 kg m-3}}\n"
-        f"chemistry: {{fields: [{', '.join(FIELDS)}]}}\noutput: {{folder: {folder / 'run'}, netcdf: false, replace: true}}\n"
+        f"chemistry: {{fields: [{', '.join(FIELDS)}]}}\n"
+        f"output: {{folder: {folder / 'run'}, netcdf: false, replace: true}}\n"
     )
     begun = time.perf_counter()
     conduct(prepare(recipe), watcher(quiet=True))

@@ -34,7 +34,6 @@ main()
 
 
 def pytest_configure(config: pytest.Config) -> None:
-    config.addinivalue_line("markers", "cluster: starts schedulers and workers in processes of their own, on the loopback")
 
 
 def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:

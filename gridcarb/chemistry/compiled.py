@@ -23,7 +23,7 @@ from typing import Any
 
 import numba
 
-TILE = 4096
+TILE = 2048
 """Cells in a tile: the rows of a whole solution stay in the second-level cache."""
 
 COMPILE_LOCK = threading.RLock()
@@ -89,6 +89,15 @@ def arguments(function: Any) -> tuple[str, ...]:
 
 
 _loops: dict[str, tuple[str, dict[str, Any]]] = {}
+
+
+def tile_function(name: str, columns: tuple[str, ...], lines: list[str], uses: dict[str, Any]) -> Any:
+    """A compiled function of the lines given; its name is made this function's own by a digest of them."""
+    body = "".join(f"    {line}\n" for line in lines)
+    own = f"{name}_{hashlib.sha256(body.encode()).hexdigest()[:12]}"
+    space: dict[str, Any] = {**uses, "__name__": __name__}
+    exec(compile(f"def {own}({', '.join(columns)}):\n{body}", __file__, "exec"), space)
+    return compile_function(space[own])
 
 
 def tile_loop(name: str, columns: tuple[str, ...], expression: str, uses: dict[str, Any]) -> Any:

@@ -7,23 +7,19 @@ following the names of each function's arguments; nothing that is not needed is 
 from __future__ import annotations
 
 import functools
-from collections.abc import Callable
 from dataclasses import asdict, dataclass, replace
 from typing import Any
 
-import numpy as np
-import numpy.typing as npt
-
 from gridcarb.chemistry import solver
-from gridcarb.chemistry.compiled import COMPILE_LOCK, TILE, arguments, plain, tile_loop
+from gridcarb.chemistry.compiled import COMPILE_LOCK, arguments, plain, tile_function, tile_loop
 from gridcarb.chemistry.constants_set import CONSTANTS, ConstantsSet
 from gridcarb.chemistry.declare import COLUMNS, DERIVED, Formula
+from gridcarb.chemistry.elementary import exp, log
 from gridcarb.chemistry.formulas.pressure import ln_pressure_factor
+from gridcarb.chemistry.passage import solve_cells_with
 from gridcarb.chemistry.reuse import assign_rows
+from gridcarb.chemistry.status import seal
 from gridcarb.fields import FIELDS
-
-Rows = npt.NDArray[np.float64]
-Call = tuple[Callable[..., Any], tuple[Any, ...]]
 
 INPUTS = ("t", "s", "p_bar", "dic", "alk", "pt", "sit")
 """The rows a caller fills: degC, practical salinity, bar, and four amounts in mol/kg."""
@@ -32,20 +28,17 @@ _ACIDS = ("k1", "k2", "kb", "kw", "kp1", "kp2", "kp3", "ksi")
 _SOLIDS = ("k_calcite", "k_aragonite")
 
 
+exp_row = tile_loop("exp_row", ("x",), "exp(x)", {"exp": exp})
+log_row = tile_loop("log_row", ("x",), "log(x)", {"log": log})
+
+
 @dataclass(frozen=True)
 class Step:
-    """Fill row `out` from rows `reads` (a tile loop), or by a NumPy function of one row."""
+    """Fill row `out` from rows `reads` by a tile loop."""
 
-    run: Callable[..., Any]
+    run: Any
     out: int
     reads: tuple[int, ...]
-    ufunc: bool = False
-
-    def bind(self, scratch: Rows) -> Call:
-        """The function and the arguments that take this step on `scratch`."""
-        if self.ufunc:
-            return self.run, (scratch[self.reads[0]], scratch[self.out])
-        return self.run, (scratch, self.out, *self.reads)
 
     def moved(self, rows: dict[int, int]) -> Step:
         """The same step with every row renumbered."""
@@ -59,7 +52,7 @@ class Program:
     rows : how many rows of scratch a tile needs; the inputs come first.
     before, after : steps up to the equation's columns, and from its root to the fields.
     unknowns : rows of the solver, in its order; hydrogen and step : the rows it fills.
-    outputs : field key -> row.
+    outputs : rows of the fields, in the order asked for.
     """
 
     rows: int
@@ -68,33 +61,28 @@ class Program:
     hydrogen: int
     step: int
     after: tuple[Step, ...]
-    outputs: dict[str, int]
+    outputs: tuple[int, ...]
 
-    def bind(self, scratch: Rows) -> Bound:
-        """The calls that solve one tile held in `scratch` (rows x TILE)."""
-        return Bound(
-            [step.bind(scratch) for step in self.before],
-            [step.bind(scratch) for step in self.after],
-            (scratch[self.hydrogen], scratch[self.step], *(scratch[row] for row in self.unknowns)),
-        )
+    def compiled(self, constants: str) -> Any:
+        """One function that solves any number of cells without the interpreter; see `passage.solve_cells`."""
+        found = ", ".join(f"scratch[{row}]" for row in (self.hydrogen, self.step, *self.unknowns))
+        lines = [
+            *_calls(self.before),
+            f"if sweep({found}):",
+            f"    settle({found})",
+            *_calls(self.after),
+            f"return seal(flags, scratch[{self.hydrogen}], scratch[{self.step}], {solver.SWEPT!r})",
+        ]
+        uses = {step.run.__name__: step.run for step in (*self.before, *self.after)}
+        tile = tile_function(
+            f"tile_of_{constants}", ("scratch", "flags"), lines,
+            {**uses, "sweep": solver.sweep, "settle": solver.settle, "seal": seal},
+        )  # fmt: skip
+        return solve_cells_with(tile)
 
 
-@dataclass(frozen=True)
-class Bound:
-    """A program bound to its scratch: the input rows are filled, `run` overwrites all others."""
-
-    before: list[Call]
-    after: list[Call]
-    equation: tuple[Rows, ...]
-
-    def run(self) -> None:
-        """Solve the tile."""
-        for function, arguments_ in self.before:
-            function(*arguments_)
-        if solver.sweep(*self.equation):
-            solver.settle(*self.equation)
-        for function, arguments_ in self.after:
-            function(*arguments_)
+def _calls(steps: tuple[Step, ...]) -> list[str]:
+    return [f"{step.run.__name__}(scratch, {step.out}, {', '.join(map(str, step.reads))})" for step in steps]
 
 
 class _Builder:
@@ -127,7 +115,7 @@ class _Builder:
             self._constant(name, self.formulas[key], pressure=None)
         elif name == "kf_pressure_factor":
             self._loop(f"ln_{name}", self._pressure_columns(), self._pressure("kf"), {"factor": ln_pressure_factor})
-            self._ufunc(name, np.exp, f"ln_{name}")
+            self._elementary(name, exp_row, f"ln_{name}")
         elif name in ("kf_surface", "kf_surface_free"):
             self._fluoride(name)
         elif name in COLUMNS or name in DERIVED:
@@ -135,9 +123,9 @@ class _Builder:
         elif name in self.formulas:
             self._call(name, self.formulas[name].cell)
         elif name.startswith("ln_"):
-            self._ufunc(name, np.log, name.removeprefix("ln_"))
+            self._elementary(name, log_row, name.removeprefix("ln_"))
         else:
-            self._ufunc(name, np.exp, f"ln_{name}")
+            self._elementary(name, exp_row, f"ln_{name}")
 
     def _loop(self, name: str, columns: tuple[str, ...], expression: str, uses: dict[str, Any]) -> None:
         reads = tuple(self.row(column) for column in columns)
@@ -149,9 +137,9 @@ class _Builder:
         reads = tuple(self.row(column) for column in columns)
         self.steps.append(Step(_plain_loop(cell), self.fresh(name), reads))
 
-    def _ufunc(self, name: str, function: np.ufunc, argument: str) -> None:
+    def _elementary(self, name: str, loop: Any, argument: str) -> None:
         reads = (self.row(argument),)
-        self.steps.append(Step(function, self.fresh(name), reads, ufunc=True))
+        self.steps.append(Step(loop, self.fresh(name), reads))
 
     def _pressure_columns(self) -> tuple[str, ...]:
         return ("t", "p_bar", "tk")
@@ -173,7 +161,7 @@ class _Builder:
             columns.append(shift)
         unique = tuple(dict.fromkeys(columns))
         self._loop(f"ln_{name}", unique, expression, {"cell": formula.cell, "factor": ln_pressure_factor})
-        self._ufunc(name, np.exp, f"ln_{name}")
+        self._elementary(name, exp_row, f"ln_{name}")
 
     def _fluoride(self, name: str) -> None:
         """KF at the surface on the total scale (kf_surface) or the free scale, whichever the set's equation gives."""
@@ -192,8 +180,8 @@ def _plain_loop(cell: Any) -> Any:
 
 
 @functools.cache
-def program(constants: str, fields: tuple[str, ...]) -> Program:
-    """The compiled program for a set and a selection of derived fields (both by key).
+def program(constants: str, fields: tuple[str, ...]) -> tuple[Program, Any]:
+    """The program for a set and a selection of derived fields (both by key), and its compiled function.
 
     Raises
     ------
@@ -203,15 +191,18 @@ def program(constants: str, fields: tuple[str, ...]) -> Program:
     for key in fields:
         FIELDS[key], DERIVED[key]
     with COMPILE_LOCK:
-        builder = _Builder(chosen)
-        unknowns = tuple(builder.row(name) for name in solver.UNKNOWNS)
-        before = tuple(builder.steps)
-        builder.steps = []
-        hydrogen, step = builder.fresh("h"), builder.fresh("newton_step")
-        outputs = {key: builder.row(key) for key in fields}
-        made = _compact(Program(len(builder.rows), before, unknowns, hydrogen, step, tuple(builder.steps), outputs))
-        _compile(made)
-    return made
+        made = _build(chosen, fields)
+        return made, made.compiled(constants)
+
+
+def _build(chosen: ConstantsSet, fields: tuple[str, ...]) -> Program:
+    builder = _Builder(chosen)
+    unknowns = tuple(builder.row(name) for name in solver.UNKNOWNS)
+    before = tuple(builder.steps)
+    builder.steps = []
+    hydrogen, step = builder.fresh("h"), builder.fresh("newton_step")
+    outputs = tuple(builder.row(key) for key in fields)
+    return _compact(Program(len(builder.rows), before, unknowns, hydrogen, step, tuple(builder.steps), outputs))
 
 
 def _compact(made: Program) -> Program:
@@ -222,7 +213,7 @@ def _compact(made: Program) -> Program:
         (root, made.unknowns),
         *(((step.out,), step.reads) for step in made.after),
     ]
-    rows, count = assign_rows(work, len(INPUTS), (*root, *made.outputs.values()))
+    rows, count = assign_rows(work, len(INPUTS), (*root, *made.outputs))
     return Program(
         count,
         tuple(step.moved(rows) for step in made.before),
@@ -230,15 +221,5 @@ def _compact(made: Program) -> Program:
         rows[made.hydrogen],
         rows[made.step],
         tuple(step.moved(rows) for step in made.after),
-        {key: rows[row] for key, row in made.outputs.items()},
+        tuple(rows[row] for row in made.outputs),
     )
-
-
-def _compile(made: Program) -> None:
-    """Run an ordinary tile once, so that all compiling is over before threads enter."""
-    scratch = np.full((made.rows, TILE), 1.0)
-    for row, value in enumerate((15.0, 35.0, 0.0, 2.1e-3, 2.3e-3, 0.0, 0.0)):
-        scratch[row] = value
-    bound = made.bind(scratch)
-    bound.run()
-    solver.settle(*bound.equation)

@@ -46,24 +46,30 @@ def noncarbonate(
     bt: float, st: float, ft: float, pt: float, sit: float,
 ) -> tuple[float, float]:  # fmt: skip
     """Alkalinity of borate, water, phosphate, silicate, bisulfate and hydrogen fluoride, and its buffer d/d(-ln h), a
-    sum of positive terms. ks is on the free scale, every other constant on the total scale."""
+    sum of positive terms. ks is on the free scale, every other constant on the total scale.
+
+    Division is by far the slowest arithmetic here, so six reciprocals come from two: 1/a = bcd * (1/abcd).
+    """
     p3 = kp1 * kp2 * kp3
     p2 = kp1 * kp2 * h
     p1 = kp1 * h * h
     p0 = h * h * h
-    per_p = 1.0 / (p0 + p1 + p2 + p3)
+    p = p0 + p1 + p2 + p3
+    per_ph = 1.0 / (p * h)
+    per_p, per_h = per_ph * h, per_ph * p
     phosphate = pt * per_p * (p2 + 2.0 * p3 - p0)
     phosphate_buffer = pt * per_p * per_p * (p0 * p1 + p1 * p2 + p2 * p3 + 4.0 * (p0 * p2 + p1 * p3) + 9.0 * p0 * p3)
     free = ks + st
-    per_borate = 1.0 / (kb + h)
+    weak, strong = (kb + h) * (ksi + h), (free + h) * (kf + h)
+    per_all = 1.0 / (weak * strong)
+    per_weak, per_strong = per_all * strong, per_all * weak
+    per_borate, per_silicate = per_weak * (ksi + h), per_weak * (kb + h)
+    per_bisulfate, per_fluoride = per_strong * (kf + h), per_strong * (free + h)
     borate = bt * kb * per_borate
-    per_silicate = 1.0 / (ksi + h)
     silicate = sit * ksi * per_silicate
-    per_bisulfate = 1.0 / (free + h)
     bisulfate = st * h * per_bisulfate
-    per_fluoride = 1.0 / (kf + h)
     fluoride = ft * h * per_fluoride
-    hydroxide = kw / h
+    hydroxide = kw * per_h
     free_hydrogen = h * (ks / free)
     alkalinity = borate + hydroxide - free_hydrogen + phosphate + silicate - bisulfate - fluoride
     buffer = (
@@ -122,7 +128,8 @@ def first_guess(alk: float, dic: float, bt: float, k1: float, k2: float, kb: flo
     h = h if d > 0.0 else 1e-7
     h = h if alk < 2.0 * dic + bt else 1e-10
     h = h if alk > 0.0 else 1e-3
-    return h if h > 0.0 else 1e-7
+    # A vanishing alkalinity throws the cubic anywhere; from there powers of h would overflow.
+    return min(max(h, 1e-15), 1.0) if h > 0.0 else 1e-7
 
 
 def sweep_tile(

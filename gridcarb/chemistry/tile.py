@@ -11,16 +11,14 @@ import numpy.typing as npt
 from gridcarb.chemistry.compiled import TILE
 from gridcarb.chemistry.constants_set import CONSTANTS
 from gridcarb.chemistry.declare import DERIVED
-from gridcarb.chemistry.program import INPUTS, Program, program
-from gridcarb.chemistry.solver import SWEPT
-from gridcarb.chemistry.status import MISSING, SOLUTION_STATUS, judge, seal
+from gridcarb.chemistry.program import program
+from gridcarb.chemistry.status import MISSING, SOLUTION_STATUS, Flags
 from gridcarb.errors import InputError, UnknownWordError, did_you_mean
 
 Array = npt.NDArray[np.float64]
 
-_TO_CANONICAL = (1.0, 1.0, 0.1, 1e-6, 1e-6, 1e-6, 1e-6)
 _FEW = 0.85
-_PADDING = (15.0, 35.0, 0.0, 2.1e-3, 2.3e-3, 0.0, 0.0)
+_NO_PLACES = np.empty(0, dtype=np.intp)
 
 
 def speciate(
@@ -68,13 +66,9 @@ def speciate(
     )  # fmt: skip
     shape = np.broadcast_shapes(*(array.shape for array in given))
     wanted = tuple(key for key in keys if key != SOLUTION_STATUS.key)
-    made = program(constants, wanted)
-    ranges = (*CONSTANTS[constants].temperature_range, *CONSTANTS[constants].salinity_range)
-    size = int(np.prod(shape))
-    results = {key: np.full(size, np.nan) for key in wanted}
-    status = np.full(size, MISSING, dtype=np.int8)
-    _solve_all([_flat(array, shape) for array in given], made, ranges, results, status)
-    every: dict[str, npt.NDArray[np.generic]] = {**results, SOLUTION_STATUS.key: status}
+    results, status = _solve([_flat(array, shape) for array in given], int(np.prod(shape)), wanted, constants)
+    every: dict[str, npt.NDArray[np.generic]] = dict(zip(wanted, results, strict=True))
+    every[SOLUTION_STATUS.key] = status
     return {key: every[key].reshape(shape) for key in keys}
 
 
@@ -87,13 +81,13 @@ def _checked(fields: Sequence[str]) -> tuple[str, ...]:
     return tuple(dict.fromkeys(keys))
 
 
-def _broadcast(**inputs: npt.ArrayLike) -> list[npt.NDArray[np.floating]]:
-    arrays: dict[str, npt.NDArray[np.floating]] = {}
+def _broadcast(**inputs: npt.ArrayLike) -> list[npt.NDArray[np.generic]]:
+    arrays: dict[str, npt.NDArray[np.generic]] = {}
     for name, value in inputs.items():
         array = np.asarray(_unmasked(value) if isinstance(value, np.ma.MaskedArray) else value)
         if array.dtype.kind not in "fiu":
             raise InputError(f"{name} is not made of real numbers (dtype {array.dtype})", where=f"speciate: {name}")
-        arrays[name] = array if array.dtype in (np.float64, np.float32) else array.astype(np.float64)
+        arrays[name] = array
     try:
         np.broadcast_shapes(*(array.shape for array in arrays.values()))
     except ValueError:
@@ -110,51 +104,36 @@ def _unmasked(value: np.ma.MaskedArray[Any, Any]) -> Array:
     return filled
 
 
-def _flat(array: npt.NDArray[np.floating], shape: tuple[int, ...]) -> npt.NDArray[np.floating]:
-    """The array as one line of cells; a single number stays a single number."""
+def _flat(array: npt.NDArray[np.generic], shape: tuple[int, ...]) -> Array:
+    """The array as one line of float64 cells; a single number stays a single number. A copy only where it must be one:
+    compiled code takes lines that are contiguous and, though it leaves them alone, writeable."""
     if array.size == 1:
-        return array.reshape(1)
-    return np.ascontiguousarray(np.broadcast_to(array, shape)).reshape(-1)
+        return array.reshape(1).astype(np.float64)
+    whole = array if array.shape == shape else np.broadcast_to(array, shape)
+    line = np.ascontiguousarray(whole, dtype=np.float64).reshape(-1)
+    return line if line.flags.writeable else line.copy()
 
 
-def _solve_all(
-    inputs: list[npt.NDArray[np.floating]],
-    made: Program,
-    ranges: tuple[float, ...],
-    results: dict[str, Array],
-    status: npt.NDArray[np.int8],
-) -> None:
-    """Fill results and status tile by tile. The last tile is padded with ordinary water up to the full length, so that
-    every cell of every grid goes through the same instructions."""
-    scratch = np.empty((made.rows, TILE))
-    flags = np.empty(TILE, dtype=np.int8)
-    bound = made.bind(scratch)
-    outputs = list(made.outputs.values())
-    wet = _wet(inputs, status.size)
-    total = status.size if wet is None else wet.size
-    for start in range(0, total, TILE):
-        count = min(TILE, total - start)
-        here = slice(start, start + count) if wet is None else wet[start : start + count]
-        for row, (array, factor) in enumerate(zip(inputs, _TO_CANONICAL, strict=True)):
-            values = array if array.size == 1 else array[here]
-            np.multiply(values, factor, out=scratch[row, :count], dtype=np.float64)
-            scratch[row, count:] = _PADDING[row]
-        judge(flags, *scratch[: len(INPUTS)], *ranges)
-        bound.run()
-        worst = seal(flags, scratch[made.hydrogen], scratch[made.step], SWEPT)
-        if worst >= MISSING:
-            scratch[outputs] = np.where(flags >= MISSING, np.nan, scratch[outputs])
-        for key, row in made.outputs.items():
-            results[key][here] = scratch[row, :count]
-        status[here] = flags[:count]
+def _solve(inputs: list[Array], size: int, fields: tuple[str, ...], constants: str) -> tuple[Array, Flags]:
+    """Results (fields x cells) and status of all cells."""
+    made, solve_cells = program(constants, fields)
+    chosen = CONSTANTS[constants]
+    wet = _wet(inputs, size)
+    results = np.empty((len(fields), size)) if wet is None else np.full((len(fields), size), np.nan)
+    status = np.full(size, MISSING, dtype=np.int8)
+    solve_cells(
+        tuple(inputs), results, status, _NO_PLACES if wet is None else wet, wet is None, np.empty((made.rows, TILE)),
+        np.empty(TILE, dtype=np.int8), np.array(made.outputs, dtype=np.intp),
+        (*chosen.temperature_range, *chosen.salinity_range),
+    )  # fmt: skip
+    return results, status
 
 
-def _wet(inputs: list[npt.NDArray[np.floating]], size: int) -> npt.NDArray[np.intp] | None:
+def _wet(inputs: list[Array], size: int) -> npt.NDArray[np.intp] | None:
     """The places of the cells that miss no input; None where there are so many that picking them out would cost more
     than solving the rest with them. Land and sea floor are often half of a grid."""
     missing = np.zeros(size, dtype=bool)
     for array in inputs:
         if array.size > 1:
             missing |= np.isnan(array)
-    wet = np.flatnonzero(~missing)
-    return wet if wet.size < _FEW * size else None
+    return np.flatnonzero(~missing) if np.count_nonzero(missing) > (1.0 - _FEW) * size else None

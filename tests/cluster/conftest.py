@@ -33,9 +33,6 @@ main()
 """
 
 
-def pytest_configure(config: pytest.Config) -> None:
-
-
 def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
     for item in items:
         if Path(__file__).parent in item.path.parents:

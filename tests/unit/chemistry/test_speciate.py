@@ -138,12 +138,15 @@ def test_unphysical_input_gives_nan_and_a_status(name: str, value: float) -> Non
         {"salinity": 0.0, "alkalinity": -18000.0, "dic": 0.001}, {"dic": 25000.0}, {"dic": 0.001},
         {"salinity": 66.0, "temperature": 45.0}, {"alkalinity": 0.006, "dic": 0.001, "salinity": 0.0},
         {"dic": 5000.0, "alkalinity": 100.0},
+        *({"salinity": 0.0, "dic": 7055.0, "alkalinity": 10.0**power} for power in range(-320, 1, 5)),
+        *({"salinity": 0.0, "dic": 7055.0, "alkalinity": -(10.0**power)} for power in range(-320, 1, 5)),
     ],
 )  # fmt: skip
 def test_hard_but_physical_water_is_solved(water: dict[str, float]) -> None:
     result = speciate(**{**WATER, **water}, fields=[*KEYS, "solution_status"])
     assert result.pop("solution_status") in (0, 1)
     assert all(np.isfinite(value) for value in result.values())
+    assert -2 < result["ph_total_scale"] < 16
 
 
 def test_water_outside_the_range_of_the_constants_is_computed_and_flagged() -> None:
@@ -164,6 +167,20 @@ def test_float32_and_integers_are_computed_in_double_precision() -> None:
     for key, value in speciate(**cells).items():
         np.testing.assert_array_equal(value, expected[key])
     assert speciate(temperature=15, salinity=35, dic=2100, alkalinity=2300)["ph_total_scale"].dtype == np.float64
+
+
+def test_arrays_of_any_making_are_read_and_left_alone() -> None:
+    cells = waters(50)
+    expected = speciate(**cells)["ph_total_scale"]
+    frozen = {name: value.copy() for name, value in cells.items()}
+    for value in frozen.values():
+        value.flags.writeable = False
+    strided = {name: np.repeat(value, 3)[::3] for name, value in cells.items()}
+    swapped = {name: value.astype(">f8") for name, value in cells.items()}
+    for other in (frozen, strided, swapped, {name: list(value) for name, value in cells.items()}):
+        np.testing.assert_array_equal(speciate(**other)["ph_total_scale"], expected)
+    for name, value in frozen.items():
+        np.testing.assert_array_equal(value, cells[name])
 
 
 def test_unknown_words_are_answered_with_the_nearest() -> None:

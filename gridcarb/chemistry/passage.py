@@ -1,0 +1,97 @@
+"""The way of the cells through the tiles: all of it compiled, so that threads never wait for the interpreter.
+
+Cells are taken from the inputs, solved tile by tile, and put into the results. The last tile is padded with ordinary water
+up to the full length, so that every cell of every grid goes through the same instructions.
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from gridcarb.chemistry.compiled import TILE, compile_function, plain
+from gridcarb.chemistry.status import MISSING, Flags, judge
+
+Numbers = npt.NDArray[np.float64]
+Places = npt.NDArray[np.intp]
+
+TO_CANONICAL = (1.0, 1.0, 0.1, 1e-6, 1e-6, 1e-6, 1e-6)
+"""Factors from degC, 1, dbar and four times umol/kg to degC, 1, bar and mol/kg."""
+
+PADDING = (15.0, 35.0, 0.0, 2.1e-3, 2.3e-3, 0.0, 0.0)
+
+
+def take(scratch: Numbers, inputs: tuple[Numbers, ...], wet: Places, everywhere: bool, start: int, count: int) -> None:
+    """Fill the input rows of a tile with `count` cells: from `start` on, or the places in `wet` from `start` on."""
+    for row in range(7):
+        values = inputs[row]
+        factor = TO_CANONICAL[row]
+        filled = scratch[row]
+        if values.size == 1:
+            for i in range(count):
+                filled[i] = values[0] * factor
+        elif everywhere:
+            for i in range(count):
+                filled[i] = values[start + i] * factor
+        else:
+            for i in range(count):
+                filled[i] = values[wet[start + i]] * factor
+        for i in range(count, TILE):
+            filled[i] = PADDING[row]
+
+
+def give(
+    results: Numbers, status: Flags, scratch: Numbers, flags: Flags, outputs: Places, wet: Places, everywhere: bool,
+    start: int, count: int, worst: int,
+) -> None:  # fmt: skip
+    """Put the fields of a tile into the results, NaN where a cell was not solved."""
+    for field in range(outputs.size):
+        filled = scratch[outputs[field]]
+        line = results[field]
+        if worst >= MISSING:
+            for i in range(count):
+                if flags[i] >= MISSING:
+                    filled[i] = np.nan
+        if everywhere:
+            for i in range(count):
+                line[start + i] = filled[i]
+        else:
+            for i in range(count):
+                line[wet[start + i]] = filled[i]
+    for i in range(count):
+        status[start + i if everywhere else wet[start + i]] = flags[i]
+
+
+_take = compile_function(take)
+_give = compile_function(give)
+
+
+def solve_cells_with(tile: Any) -> Any:
+    """The compiled function ``solve_cells(inputs, results, status, wet, everywhere, scratch, flags, outputs, ranges)`` that
+    solves all cells with the tile function of a program.
+
+    inputs : seven float64 lines, each of one number or of all cells. results : fields x cells. status : cells, int8.
+    wet : places of the cells to solve, unless `everywhere`. scratch : rows x TILE. outputs : row of each field.
+    ranges : lowest and highest temperature and salinity in which the constants were measured.
+    """
+
+    def solve_cells(
+        inputs: tuple[Numbers, ...], results: Numbers, status: Flags, wet: Places, everywhere: bool, scratch: Numbers,
+        flags: Flags, outputs: Places, ranges: tuple[float, float, float, float],
+    ) -> None:  # fmt: skip
+        total = status.size if everywhere else wet.size
+        for start in range(0, total, TILE):
+            count = min(TILE, total - start)
+            _take(scratch, inputs, wet, everywhere, start, count)
+            judge(
+                flags, scratch[0], scratch[1], scratch[2], scratch[3], scratch[4], scratch[5], scratch[6],
+                ranges[0], ranges[1], ranges[2], ranges[3],
+            )  # fmt: skip
+            worst = tile(scratch, flags)
+            _give(results, status, scratch, flags, outputs, wet, everywhere, start, count, worst)
+
+    # The name is the tile's, since compiled code is kept on disk under it.
+    solve_cells.__name__ = solve_cells.__qualname__ = f"cells_of_{plain(tile).__name__}"
+    return compile_function(solve_cells)

@@ -12,6 +12,7 @@ if TYPE_CHECKING:
     from pathlib import Path
 
     from gridcarb.recipe import Recipe
+    from gridcarb.run.watching import Watcher
 
 
 class Section(Protocol):
@@ -101,28 +102,6 @@ class Audit(Protocol):
 
     def starter(self, path: Path) -> str:
         """A recipe for it, to be kept at `path`."""
-
-
-class Watcher(Protocol):
-    """One who looks on while a run works; called from one thread."""
-
-    def start(self, total_blocks: int, cells: int) -> None:
-        """The run begins: so many blocks, so many cells in all."""
-
-    def block_done(self, cells: int, note: str = "") -> None:
-        """A block is finished; a note, if any, is worth a line."""
-
-    def block_failed(self, note: str) -> None:
-        """A block failed for good."""
-
-    def strength(self, workers: int, resident: int) -> None:
-        """Every few seconds: how many blocks are done at a time, and the bytes all processes have resident."""
-
-    def message(self, text: str) -> None:
-        """Something worth telling at once."""
-
-    def stop(self) -> None:
-        """The run is over, well or not; may be called twice."""
 
 
 def audit_files(files: Sequence[str]) -> Audit:

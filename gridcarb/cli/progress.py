@@ -8,10 +8,10 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, TextIO
 
-from gridcarb.cli.faces import Watcher
-
 if TYPE_CHECKING:
     from rich.progress import Progress, TaskID
+
+    from gridcarb.run.watching import Watcher
 
 STEP = 5  # per cent between two lines of a log
 TOLD = 20  # failed blocks told one by one

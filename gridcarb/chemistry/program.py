@@ -10,8 +10,10 @@ import functools
 from dataclasses import asdict, dataclass, replace
 from typing import Any
 
+import numpy as np
+
 from gridcarb.chemistry import solver
-from gridcarb.chemistry.compiled import COMPILE_LOCK, arguments, plain, tile_function, tile_loop
+from gridcarb.chemistry.compiled import COMPILE_LOCK, TILE, arguments, plain, tile_function, tile_loop
 from gridcarb.chemistry.constants_set import CONSTANTS, ConstantsSet
 from gridcarb.chemistry.declare import COLUMNS, DERIVED, Formula
 from gridcarb.chemistry.elementary import exp, log
@@ -192,7 +194,19 @@ def program(constants: str, fields: tuple[str, ...]) -> tuple[Program, Any]:
         FIELDS[key], DERIVED[key]
     with COMPILE_LOCK:
         made = _build(chosen, fields)
-        return made, made.compiled(constants)
+        solve_cells = made.compiled(constants)
+        _solve_one(made, solve_cells)
+    return made, solve_cells
+
+
+def _solve_one(made: Program, solve_cells: Any) -> None:
+    """Solve one ordinary cell, so that all compiling is over before threads enter."""
+    water = (15.0, 35.0, 0.0, 2100.0, 2300.0, 0.0, 0.0)
+    solve_cells(
+        tuple(np.array([value]) for value in water), np.empty((len(made.outputs), 1)), np.empty(1, dtype=np.int8),
+        np.empty(0, dtype=np.intp), True, np.empty((made.rows, TILE)), np.empty(TILE, dtype=np.int8),
+        np.array(made.outputs, dtype=np.intp), (2.0, 35.0, 19.0, 43.0),
+    )  # fmt: skip
 
 
 def _build(chosen: ConstantsSet, fields: tuple[str, ...]) -> Program:

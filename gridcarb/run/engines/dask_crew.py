@@ -86,7 +86,7 @@ class DaskCrew:
             say(f"no worker has come to {self._client.scheduler.address} yet; waiting for the first")
         while not self._workers():
             time.sleep(0.2)
-        say("preparing the chemistry on every worker (a few seconds the first time on a machine)")
+        say("preparing the chemistry on every worker (some fifteen seconds the first time on a machine)")
         first = {address.rpartition(":")[0]: address for address in self._workers()}
         self._look_into(order, first.values())  # what one compiles, the others of its host find on its disk
         self._look_into(order, self._workers().keys() - first.values())

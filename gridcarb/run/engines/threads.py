@@ -13,7 +13,7 @@ from gridcarb.run.engines.crew import Answer, Crew, Order, Strength, attempt, re
 @contextmanager
 def crew(_: EngineSettings, workers: int, order: Order, say: Callable[[str], None]) -> Iterator[Crew]:
     """A crew of `workers` threads."""
-    say("preparing the chemistry (a few seconds the first time on this machine)")
+    say("preparing the chemistry (some fifteen seconds the first time on this machine)")
     order.ready()
     with ThreadPoolExecutor(workers, thread_name_prefix="block") as pool:
         yield Threads(pool, workers)

@@ -5,6 +5,7 @@ from __future__ import annotations
 import inspect
 import math
 
+import numba
 import numpy as np
 import pytest
 
@@ -12,6 +13,7 @@ from gridcarb.chemistry import COLUMNS, CONSTANTS, DERIVED, FORMULAS
 from gridcarb.chemistry.compiled import arguments, plain, tile_loop
 from gridcarb.chemistry.declare import Formula
 from gridcarb.chemistry.formulas.pressure import MILLERO1995
+from gridcarb.chemistry.program import program
 from gridcarb.chemistry.tile import speciate
 from gridcarb.citations import CITATIONS
 from gridcarb.fields import FIELDS, ROLES
@@ -77,3 +79,10 @@ def test_two_loops_of_one_name_are_refused() -> None:
     tile_loop("of_a_test", ("s",), "s + 1.0", {})
     with pytest.raises(RuntimeError, match="of_a_test"):
         tile_loop("of_a_test", ("s",), "s + 2.0", {})
+
+
+def test_a_program_is_compiled_when_it_is_made() -> None:
+    """Threads must find it ready: compiling is done under a lock, before they enter."""
+    made, solve_cells = program("practice2022", ("bicarbonate_ion", "revelle_factor"))
+    assert len(made.outputs) == 2
+    assert numba.config.DISABLE_JIT or solve_cells.signatures

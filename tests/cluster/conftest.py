@@ -5,7 +5,6 @@ from __future__ import annotations
 import json
 import os
 import re
-import signal
 import subprocess
 import sys
 import time
@@ -19,18 +18,10 @@ import pytest
 
 from gridcarb.recipe import load
 from gridcarb.run import conduct, prepare
-from synthetic_grids import grids
-from synthetic_grids.clothes import Clothes, dress
+from tests.processes import COMMAND_LINE, Watched, write_small_ocean
 
 PATIENCE = 90.0
 """Seconds after which a process that does not do what is waited for has failed the test."""
-
-_START = """
-import signal
-signal.signal(signal.SIGINT, signal.default_int_handler)  # which a shell may have switched off for background jobs
-from gridcarb.cli.main import main
-main()
-"""
 
 
 def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
@@ -42,48 +33,11 @@ def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
 @pytest.fixture(scope="session")
 def ocean_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """Six months on 12 x 24 columns of 5 levels."""
-    grid, depth = grids.rectilinear(12, 24), grids.levels((0.0, 20.0, 100.0, 500.0, 2000.0, 5000.0))
-    time = grids.months(2010, 2010, "noleap").isel(time=slice(6))
-    truth = grids.sample(grid["lon"], grid["lat"], depth["lev"], time["year"])
-    dressed = dress(truth, depth["lev"], grid["lat"], Clothes(salinity="practical")).drop_vars("year", errors="ignore")
-    path = tmp_path_factory.mktemp("ocean") / "ocean.nc"
-    whole = dressed.assign_coords(grid.merge(depth).merge(time[["time"]]).coords)
-    whole.to_netcdf(path, engine="netcdf4", encoding={name: {"_FillValue": None} for name in whole.coords})
-    return path
-
-
-@dataclass
-class Process:
-    """A process with what it has said so far."""
-
-    process: subprocess.Popen[str]
-    log: Path
-
-    @property
-    def said(self) -> str:
-        return self.log.read_text()
-
-    def wait_for(self, pattern: str) -> None:
-        """Wait until it has said something that matches; fail if it ends or takes too long."""
-        until = time.monotonic() + PATIENCE
-        while not re.search(pattern, self.said):
-            assert self.process.poll() is None, f"ended before it said {pattern!r}:\n{self.said}"
-            assert time.monotonic() < until, f"never said {pattern!r}:\n{self.said}"
-            time.sleep(0.01)
-
-    def wait(self) -> int:
-        """The exit code."""
-        return self.process.wait(PATIENCE)
-
-    def end(self, number: int = signal.SIGKILL) -> int:
-        """Send a signal to this process; its exit code."""
-        if self.process.poll() is None:
-            self.process.send_signal(number)
-        return self.wait()
+    return write_small_ocean(tmp_path_factory.mktemp("ocean") / "ocean.nc", 12, 24)
 
 
 @contextmanager
-def started(folder: Path, *command: str) -> Iterator[Process]:
+def started(folder: Path, *command: str) -> Iterator[Watched]:
     """A process of this Python that finds this checkout, ended with the block."""
     folder.mkdir(exist_ok=True)
     environment = {**os.environ, "PYTHONPATH": str(Path(__file__).parents[2])}
@@ -92,7 +46,7 @@ def started(folder: Path, *command: str) -> Iterator[Process]:
         process = subprocess.Popen(
             [sys.executable, *command], stdout=file, stderr=file, text=True, cwd=folder, env=environment
         )
-    running = Process(process, log)
+    running = Watched(process, log, PATIENCE)
     try:
         yield running
     finally:
@@ -104,8 +58,8 @@ class Cluster:
     """A scheduler with its workers."""
 
     address: str
-    scheduler: Process
-    workers: list[Process]
+    scheduler: Watched
+    workers: list[Watched]
 
 
 @contextmanager
@@ -160,10 +114,10 @@ def write_recipe(ocean_file: Path) -> Callable[..., Path]:
 
 
 @pytest.fixture
-def gridcarb(tmp_path: Path) -> Iterator[Callable[..., Process]]:
+def gridcarb(tmp_path: Path) -> Iterator[Callable[..., Watched]]:
     """Begin `gridcarb ...` in a process of its own."""
     with ExitStack() as stack:
-        yield lambda *words: stack.enter_context(started(tmp_path / "logs", "-c", _START, *map(str, words)))
+        yield lambda *words: stack.enter_context(started(tmp_path / "logs", "-c", COMMAND_LINE, *map(str, words)))
 
 
 class Silent:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import json
-import re
 import signal
 import subprocess
 import sys
@@ -15,8 +14,7 @@ from typing import Any
 
 import pytest
 
-from synthetic_grids import grids
-from synthetic_grids.clothes import Clothes, dress
+from tests.processes import COMMAND_LINE, Watched, write_small_ocean
 
 PATIENCE = 40.0
 """Seconds after which a process that does not do what is waited for has failed the test."""
@@ -24,62 +22,21 @@ PATIENCE = 40.0
 MIDDLE = r"(?m)^ *(5|10|15|20) %"
 """What a run in its first fifth has said."""
 
-_START = """
-import signal
-signal.signal(signal.SIGINT, signal.default_int_handler)  # which a shell may have switched off for background jobs
-from gridcarb.cli.main import main
-main()
-"""
-
 
 @pytest.fixture(scope="session")
 def ocean_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """Six months on 10 x 20 columns of 5 levels."""
-    grid, depth = grids.rectilinear(10, 20), grids.levels((0.0, 20.0, 100.0, 500.0, 2000.0, 5000.0))
-    time = grids.months(2010, 2010, "noleap").isel(time=slice(6))
-    truth = grids.sample(grid["lon"], grid["lat"], depth["lev"], time["year"])
-    dressed = dress(truth, depth["lev"], grid["lat"], Clothes(salinity="practical")).drop_vars("year", errors="ignore")
-    path = tmp_path_factory.mktemp("ocean") / "ocean.nc"
-    whole = dressed.assign_coords(grid.merge(depth).merge(time[["time"]]).coords)
-    whole.to_netcdf(path, engine="netcdf4", encoding={name: {"_FillValue": None} for name in whole.coords})
-    return path
+    return write_small_ocean(tmp_path_factory.mktemp("ocean") / "ocean.nc", 10, 20)
 
 
-@dataclass
-class Run:
-    """One ``gridcarb run`` of a recipe in a process of its own, with what it has said so far."""
-
-    recipe: Path
-    words: tuple[str, ...] = ()
-    process: subprocess.Popen[str] = field(init=False)
-
-    def __post_init__(self) -> None:
-        self.log = self.recipe.with_suffix(f".{time.monotonic_ns()}.log")
-        with self.log.open("w") as log:
-            self.process = subprocess.Popen(
-                [sys.executable, "-c", _START, "run", str(self.recipe), *self.words], stdout=log, stderr=log, text=True,
-            )
-
-    @property
-    def said(self) -> str:
-        return self.log.read_text()
-
-    def wait_for(self, pattern: str) -> None:
-        """Wait until the process has said something that matches; fail if it ends or takes too long."""
-        until = time.monotonic() + PATIENCE
-        while not re.search(pattern, self.said):
-            assert self.process.poll() is None, f"ended before it said {pattern!r}:\n{self.said}"
-            assert time.monotonic() < until, f"never said {pattern!r}:\n{self.said}"
-            time.sleep(0.01)
-
-    def wait(self) -> int:
-        """The exit code."""
-        return self.process.wait(PATIENCE)
-
-    def end(self, number: int) -> int:
-        """Send a signal to this process; its exit code."""
-        self.process.send_signal(number)
-        return self.wait()
+def started(recipe: Path, words: tuple[str, ...]) -> Watched:
+    """One ``gridcarb run`` of a recipe in a process of its own."""
+    log = recipe.with_suffix(f".{time.monotonic_ns()}.log")
+    with log.open("w") as file:
+        process = subprocess.Popen(
+            [sys.executable, "-c", COMMAND_LINE, "run", str(recipe), *words], stdout=file, stderr=file, text=True,
+        )
+    return Watched(process, log, PATIENCE)
 
 
 @dataclass
@@ -88,7 +45,7 @@ class Place:
 
     folder: Path
     recipe: Path
-    running: list[Run] = field(default_factory=list)
+    running: list[Watched] = field(default_factory=list)
 
     @property
     def result(self) -> Path:
@@ -102,12 +59,12 @@ class Place:
     def lock(self) -> Path:
         return self.folder / "result.lock"
 
-    def begin(self, *words: str) -> Run:
-        run = Run(self.recipe, words)
+    def begin(self, *words: str) -> Watched:
+        run = started(self.recipe, words)
         self.running.append(run)
         return run
 
-    def begin_and_reach_the_middle(self, *words: str) -> Run:
+    def begin_and_reach_the_middle(self, *words: str) -> Watched:
         run = self.begin(*words)
         run.wait_for(MIDDLE)
         return run

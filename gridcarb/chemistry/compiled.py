@@ -3,84 +3,26 @@
 A published equation stays a plain scalar function. `scalar` compiles it; `tile_loop` wraps it in one short loop over a
 tile, which LLVM turns into vector instructions. Every loop always runs over the whole tile (the last tile of a grid is
 padded), so that each cell meets the same instructions wherever it lies: results do not depend on chunking or threads.
-
-Compiled code is kept on disk in a folder of this host and of exactly these sources, so that neither a cluster's shared
-home nor an edit can bring back something stale.
 """
 
 from __future__ import annotations
 
-import functools
 import hashlib
 import inspect
-import os
-import platform
-import threading
-from collections.abc import Callable, Iterator
-from contextlib import contextmanager
-from pathlib import Path
+from collections.abc import Callable
 from typing import Any
 
 import numba
 
+from gridcarb.compiling import FLAGS, compile_function, plain
+
 TILE = 2048
 """Cells in a tile: the rows of a whole solution stay in the second-level cache."""
-
-COMPILE_LOCK = threading.RLock()
-
-# NaN and infinity must keep their meaning (land is NaN), so neither `nnan` nor `ninf`.
-_FLAGS = {"contract", "nsz", "arcp", "reassoc"}
-
-
-@functools.cache
-def cache_folder() -> Path | None:
-    """Where compiled code is kept between processes, or None where no such place can be written.
-
-    The path holds the host name, the Python and numba versions and a digest of the sources of this package.
-    """
-    digest = hashlib.sha256(f"{platform.python_version()} {numba.__version__}".encode())
-    for source in sorted(Path(__file__).parent.rglob("*.py")):
-        digest.update(source.read_bytes())
-    root = Path(os.environ.get("XDG_CACHE_HOME") or Path.home() / ".cache")
-    folder = root / "gridcarb" / (platform.node() or "host") / digest.hexdigest()[:16]
-    try:
-        folder.mkdir(mode=0o700, parents=True, exist_ok=True)
-        owned = os.access(folder, os.W_OK) and (not hasattr(os, "getuid") or folder.stat().st_uid == os.getuid())
-    except OSError:
-        return None
-    return folder if owned else None
-
-
-@contextmanager
-def _own_cache_folder(folder: Path) -> Iterator[None]:
-    """numba asks for its cache folder when a function is decorated; other packages' choice is put back at once."""
-    before = numba.config.CACHE_DIR
-    numba.config.CACHE_DIR = str(folder)
-    try:
-        yield
-    finally:
-        numba.config.CACHE_DIR = before
-
-
-def compile_function(function: Callable[..., Any]) -> Any:
-    """Compile for one cell or one tile: without the interpreter lock, division by zero as NumPy does it."""
-    options: dict[str, Any] = {"nogil": True, "error_model": "numpy", "fastmath": _FLAGS}
-    folder = None if numba.config.DISABLE_JIT else cache_folder()
-    if folder is None:
-        return numba.njit(**options)(function)
-    with COMPILE_LOCK, _own_cache_folder(folder):
-        return numba.njit(cache=True, **options)(function)
 
 
 def scalar(function: Callable[..., Any]) -> Any:
     """Compile a function of one cell, to be inlined into a tile loop. `.py_func` stays the plain source."""
-    return numba.njit(nogil=True, error_model="numpy", fastmath=_FLAGS)(function)
-
-
-def plain(function: Any) -> Callable[..., Any]:
-    """The Python function behind a compiled one (itself when the compiler is off)."""
-    found: Callable[..., Any] = getattr(function, "py_func", function)
-    return found
+    return numba.njit(nogil=True, error_model="numpy", fastmath=set(FLAGS))(function)
 
 
 def arguments(function: Any) -> tuple[str, ...]:

@@ -11,8 +11,9 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from gridcarb.chemistry.compiled import TILE, compile_function, plain
+from gridcarb.chemistry.compiled import TILE
 from gridcarb.chemistry.status import MISSING, Flags, judge
+from gridcarb.compiling import compile_function, plain
 
 Numbers = npt.NDArray[np.float64]
 Places = npt.NDArray[np.intp]

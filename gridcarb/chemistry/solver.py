@@ -12,7 +12,8 @@ import math
 import numpy as np
 import numpy.typing as npt
 
-from gridcarb.chemistry.compiled import TILE, compile_function, scalar
+from gridcarb.chemistry.compiled import TILE, scalar
+from gridcarb.compiling import compile_function
 
 Row = npt.NDArray[np.float64]
 

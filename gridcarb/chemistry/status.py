@@ -7,7 +7,8 @@ import math
 import numpy as np
 import numpy.typing as npt
 
-from gridcarb.chemistry.compiled import TILE, compile_function
+from gridcarb.chemistry.compiled import TILE
+from gridcarb.compiling import compile_function
 from gridcarb.fields import Field, Ink, declare
 
 Flags = npt.NDArray[np.int8]

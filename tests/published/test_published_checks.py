@@ -15,8 +15,8 @@ import numpy as np
 import pytest
 
 from gridcarb.chemistry import FORMULAS
-from gridcarb.chemistry.compiled import plain
 from gridcarb.chemistry.formulas.pressure import MILLERO1995, ln_pressure_factor
+from gridcarb.compiling import plain
 from tests.unit.chemistry.test_declarations import columns_at
 
 TABLE = Path(__file__).parents[2].parent / "shared" / "data" / "published_checks.json"

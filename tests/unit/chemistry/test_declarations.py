@@ -10,12 +10,13 @@ import numpy as np
 import pytest
 
 from gridcarb.chemistry import COLUMNS, CONSTANTS, DERIVED, FORMULAS
-from gridcarb.chemistry.compiled import arguments, plain, tile_loop
+from gridcarb.chemistry.compiled import arguments, tile_loop
 from gridcarb.chemistry.declare import Formula
 from gridcarb.chemistry.formulas.pressure import MILLERO1995
 from gridcarb.chemistry.program import program
 from gridcarb.chemistry.tile import speciate
 from gridcarb.citations import CITATIONS
+from gridcarb.compiling import plain
 from gridcarb.fields import FIELDS, ROLES
 
 

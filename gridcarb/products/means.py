@@ -17,6 +17,7 @@ from numpy.typing import NDArray
 
 from gridcarb.fields import Field
 from gridcarb.products.exact import ExactSum
+from gridcarb.products.lines import weigh, weigh_flags
 from gridcarb.products.shelf import PRODUCTS, Product
 
 Numbers = NDArray[np.float64]
@@ -33,14 +34,12 @@ class Mean:
     hydrogen: ExactSum = field(default_factory=ExactSum)
 
     def add(self, values: Numbers, weights: Numbers) -> None:
-        """Count in values with their weights, all of them positive; NaN has none."""
-        there = np.isfinite(values)
-        if not there.all():
-            values, weights = values[there], weights[there]
-        self.weight.add(float(weights.sum()))
-        self.total.add(float((values * weights).sum()))
+        """Count in values with their weights, 0 for a cell that does not count; NaN has none."""
+        weight, total = weigh(values, weights)
+        self.weight.add(weight)
+        self.total.add(total)
         if self.is_ph:
-            self.hydrogen.add(float((np.exp(-_LN10 * values) * weights).sum()))
+            self.hydrogen.add(weigh(np.exp(-_LN10 * values), weights)[1])
 
     def merge(self, other: Mean) -> None:
         """Count in another share of the same field."""
@@ -64,10 +63,10 @@ class Extents:
     words: tuple[tuple[int, str], ...]
     weights: dict[int, ExactSum] = field(default_factory=dict)
 
-    def add(self, values: NDArray[np.generic], weights: Numbers) -> None:
-        """Count in the weights of each value, all of them positive."""
-        for value in np.unique(values):
-            self.weights.setdefault(int(value), ExactSum()).add(float(weights[values == value].sum()))
+    def add(self, values: NDArray[np.int8], weights: Numbers) -> None:
+        """Count in the weights of each value."""
+        for value, weight in weigh_flags(values, weights).items():
+            self.weights.setdefault(value, ExactSum()).add(weight)
 
     def merge(self, other: Extents) -> None:
         """Count in another share of the same status."""
@@ -113,11 +112,10 @@ class Means:
         self.known.add(extent)
         dims = next(iter(fields.data_vars.values())).dims
         flat = weights.transpose(*dims).values.ravel()
-        counted = np.flatnonzero(flat > 0)
-        flat = flat[counted]
+        flat = np.where(flat > 0, flat, 0.0)
         self.sizes[extent].add(float(flat.sum()))
         for key, share in self.shares[extent].items():
-            values = fields[key].transpose(*dims).values.ravel()[counted]
+            values = fields[key].transpose(*dims).values.ravel()
             share.add(values if isinstance(share, Extents) else values.astype(np.float64, copy=False), flat)
 
     def merge(self, other: Means) -> None:

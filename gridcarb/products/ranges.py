@@ -16,6 +16,7 @@ import xarray as xr
 from numpy.typing import NDArray
 
 from gridcarb.fields import Field
+from gridcarb.products.lines import count_flags
 from gridcarb.products.shelf import PRODUCTS, Product
 
 
@@ -73,10 +74,10 @@ class Flags:
     words: tuple[tuple[int, str], ...]
     counts: dict[int, int] = field(default_factory=dict)
 
-    def add(self, values: NDArray[np.generic]) -> None:
+    def add(self, values: NDArray[np.int8]) -> None:
         """Count in the values of a status field."""
-        for value, count in zip(*np.unique(values, return_counts=True), strict=True):
-            self.counts[int(value)] = self.counts.get(int(value), 0) + int(count)
+        for value, count in count_flags(values.ravel()).items():
+            self.counts[value] = self.counts.get(value, 0) + count
 
     def merge(self, other: Flags) -> None:
         """Count in another share of the same status."""

@@ -30,7 +30,11 @@ _RANGE_KEYS = ("valid_range", "valid_min", "valid_max")
 _USUAL = (-999.0, -9999.0)
 _BEYOND = 1e15
 
+MARKS = {rule: np.uint8(1 << place) for place, rule in enumerate(RULES)}
+"""The mark of each rule: one bit of a byte, so that marks of several variables can be laid over each other."""
+
 Numbers = npt.NDArray[np.float64]
+Marks = npt.NDArray[np.uint8]
 Flags = npt.NDArray[np.bool_]
 
 
@@ -85,25 +89,31 @@ def read_mask(variable: xr.DataArray, where: str) -> MaskReading:
     )
 
 
-def unmask(raw: npt.NDArray[Any], reading: MaskReading) -> tuple[Numbers, dict[str, Flags]]:
-    """Unpacked float64 numbers, NaN where missing, and for every rule met where it applied.
+def unmask(raw: npt.NDArray[Any], reading: MaskReading) -> tuple[Numbers, Marks]:
+    """Unpacked float64 numbers, NaN where missing, and for every number the mark of the rule that applied (0: none).
 
-    `raw` is any numeric array; a rule that met nothing is left out.
+    `raw` is any numeric array.
     """
     if reading.unsigned:
         raw = raw.view(raw.dtype.str.replace("i", "u"))
-    packed = raw.astype(np.float64)
-    with np.errstate(over="ignore"):
-        numbers = packed if (reading.scale, reading.offset) == (1.0, 0.0) else packed * reading.scale + reading.offset
-    found: dict[str, Flags] = {}
-    gone = np.zeros(raw.shape, dtype=bool)
-    for rule, hit in _hits(raw, packed, numbers, reading):
-        fresh = hit & ~gone
-        if fresh.any():
-            found[rule] = found[rule] | fresh if rule in found else fresh
-            gone |= fresh
-    numbers[gone] = np.nan
-    return numbers, found
+    numbers = raw.astype(np.float64)
+    if (reading.scale, reading.offset) != (1.0, 0.0):
+        with np.errstate(over="ignore"):
+            numbers = numbers * reading.scale + reading.offset
+    marks = np.isnan(raw).view(np.uint8) * MARKS["nan"] if raw.dtype.kind == "f" else np.zeros(raw.shape, np.uint8)
+    more = False
+    for rule, hit in _hits(raw, numbers, reading):
+        marks |= np.where(marks, np.uint8(0), hit.view(np.uint8) * MARKS[rule])
+        more = True
+    if more:
+        np.putmask(numbers, marks != 0, np.nan)
+    return numbers, marks
+
+
+def rules_met(marks: Marks) -> tuple[str, ...]:
+    """The rules that applied to any number, in order."""
+    every = int(np.bitwise_or.reduce(marks, axis=None))
+    return tuple(rule for rule, mark in MARKS.items() if every & mark)
 
 
 def decoded(raw: xr.Dataset, name: str, readings: Mapping[str, MaskReading]) -> xr.DataArray:
@@ -120,43 +130,46 @@ def unmask_roles(
     Returns them with the count for each of `RULES`: of the cells in which it took away the value of any role.
     """
     clean: dict[str, xr.DataArray] = {}
-    flags: dict[str, xr.DataArray] = {}
+    marked = xr.Variable((), np.uint8(0))
     for role in roles:
-        variable = raw[role]
-        numbers, found = unmask(np.asarray(variable.values), readings[role])
+        variable = raw[role].variable
+        numbers, marks = unmask(np.asarray(variable.values), readings[role])
         clean[role] = xr.DataArray(numbers, dims=variable.dims)
-        for rule, hit in found.items():
-            mask = xr.DataArray(hit, dims=variable.dims)
-            flags[rule] = flags[rule] | mask if rule in flags else mask
-    land = (clean["salinity"] <= 0) & (clean["alkalinity"] <= 0)
-    if land.any():
-        flags["land"] = land
+        marked = marked | xr.Variable(variable.dims, marks)
+    salt = clean["salinity"] <= 0
+    if salt.any() and (land := salt & (clean["alkalinity"] <= 0)).any():
+        marked = marked | land.variable.astype(np.uint8) * MARKS["land"]
         clean = {
             role: values.where(~land) if set(land.dims) <= set(values.dims) else values for role, values in clean.items()
         }
-    return clean, {rule: int(flags[rule].sum()) if rule in flags else 0 for rule in RULES}
+    met = rules_met(marked.values)
+    return clean, {rule: int(np.count_nonzero(marked.values & MARKS[rule])) if rule in met else 0 for rule in RULES}
 
 
-def _hits(
-    raw: npt.NDArray[Any], packed: Numbers, numbers: Numbers, reading: MaskReading
-) -> Iterator[tuple[str, Flags]]:
-    """Rule by rule, where it applies; rules that cannot apply to any of the numbers cost nothing."""
-    lowest = np.fmin.reduce(packed, axis=None, initial=np.inf)
-    highest = np.fmax.reduce(packed, axis=None, initial=-np.inf)
-    yield "nan", np.isnan(packed)
+def _hits(raw: npt.NDArray[Any], numbers: Numbers, reading: MaskReading) -> Iterator[tuple[str, Flags]]:
+    """Rule by rule after `nan`, where it applies; rules that cannot apply to any of the numbers cost nothing."""
+    lowest, highest = (float(edge) for edge in _edges(raw))
     for rule, value in reading.fills:
         if reading.unsigned or lowest - abs(value) * 1e-6 <= value <= highest + abs(value) * 1e-6:
             yield rule, _equal(raw, value)
     for value in _USUAL:
         if raw.dtype.kind == "f" and lowest <= value:
-            yield "usual_fill", packed == value
-    judged = numbers if reading.range_unpacked else packed
+            yield "usual_fill", raw == value
+    # Both sides in double precision: a limit must not be rounded to the type of the numbers.
+    judged = numbers if reading.range_unpacked else raw
     if reading.low is not None:
-        yield "valid_range", judged < reading.low
+        yield "valid_range", judged < np.float64(reading.low)
     if reading.high is not None:
-        yield "valid_range", judged > reading.high
-    if numbers is not packed or max(highest, -lowest) >= _BEYOND:
+        yield "valid_range", judged > np.float64(reading.high)
+    if (reading.scale, reading.offset) != (1.0, 0.0) or max(highest, -lowest) >= _BEYOND:
         yield "beyond_physics", np.abs(numbers) >= _BEYOND
+
+
+def _edges(raw: npt.NDArray[Any]) -> tuple[Any, Any]:
+    """Lowest and highest number, NaN left aside; a range of nothing if there are none."""
+    if not raw.size:
+        return np.inf, -np.inf
+    return np.fmin.reduce(raw, axis=None), np.fmax.reduce(raw, axis=None)
 
 
 def _equal(raw: npt.NDArray[Any], fill: float) -> Flags:

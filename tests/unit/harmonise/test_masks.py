@@ -11,13 +11,13 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from gridcarb.errors import InputError
-from gridcarb.harmonise.masks import RULES, read_mask, unmask, unmask_roles
+from gridcarb.harmonise.masks import RULES, read_mask, rules_met, unmask, unmask_roles
 
 
 def decode(values: Any, dtype: str, **attrs: Any) -> tuple[list[float], list[str]]:
     raw = xr.DataArray(np.array(values, dtype=dtype), attrs=attrs)
     numbers, found = unmask(raw.values, read_mask(raw, "somewhere"))
-    return numbers.tolist(), list(found)
+    return numbers.tolist(), list(rules_met(found))
 
 
 def same(numbers: list[float], wanted: list[float]) -> None:

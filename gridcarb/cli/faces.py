@@ -83,6 +83,13 @@ class Plan(Protocol):
         """What will be read, how it is understood, what it will cost."""
 
 
+class Rehearsal(Protocol):
+    """A plan of which some blocks have been tried."""
+
+    def report(self) -> Report:
+        """What the plan says, and what the run will cost as those blocks told."""
+
+
 class Outcome(Protocol):
     """A run that is over."""
 
@@ -133,6 +140,12 @@ def prepare(recipe: Recipe) -> Plan:
     """The plan of a recipe: headers are read, nothing is computed or written."""
     plan: Plan = importlib.import_module("gridcarb.run").prepare(recipe)
     return plan
+
+
+def rehearse(plan: Plan, watcher: Watcher, blocks: int) -> Rehearsal:
+    """Do some blocks of a plan aside, to tell what all of them will take."""
+    rehearsal: Rehearsal = importlib.import_module("gridcarb.run.rehearsal").rehearse(plan, watcher, blocks)
+    return rehearsal
 
 
 def conduct(plan: Plan, watcher: Watcher, manner: Literal["new", "resume", "anew"]) -> Outcome:

@@ -13,6 +13,7 @@ from gridcarb.cli.terminal import debug_option, json_option, quiet_option, termi
 
 if TYPE_CHECKING:
     from gridcarb.recipe import Recipe
+    from gridcarb.run.watching import Watcher
 
 Command = TypeVar("Command", bound=Callable[..., Any])
 
@@ -43,14 +44,29 @@ def _spoken(command: Command) -> Command:
 
 @click.command()
 @_spoken
-def plan(**words: Any) -> None:
+@click.option("--rehearse", type=click.IntRange(min=1), is_flag=False, flag_value=3, metavar="[N]", help=(
+    "Do N blocks of the run aside (3 if no number is given; write it after RECIPE) and tell from them the core-hours, "
+    "hours and bytes of the whole."))
+def plan(*, rehearse: int | None, **words: Any) -> None:
     """Show what RECIPE would do, without doing it.
 
     Reads headers only: which files and variables are taken and how they are understood, blocks, bytes in and out, memory
     for each worker. The checks are those of a run, so a plan without an error is a run that can begin.
     With --quiet only the exit code tells.
+
+    \b
+    gridcarb plan my_recipe.yaml --rehearse     # a minute or so more: what the run will cost
     """
-    _tell(faces.prepare(_recipe(**words)).report())
+    prepared = faces.prepare(_recipe(**words))
+    if rehearse is None:
+        _tell(prepared.report())
+        return
+    watcher = _watcher()
+    try:
+        rehearsal = faces.rehearse(prepared, watcher, rehearse)
+    finally:
+        watcher.stop()
+    _tell(rehearsal.report())
 
 
 @click.command()
@@ -70,13 +86,17 @@ def run(*, resume: bool, anew: bool, **words: Any) -> None:
     if resume and anew:
         raise click.UsageError("--resume and --anew exclude each other")
     prepared = faces.prepare(_recipe(**words))
-    wishes = terminal()
-    watcher = progress.watcher(quiet=wishes.quiet or wishes.as_json)  # a machine reads standard error too
+    watcher = _watcher()
     try:
         outcome = faces.conduct(prepared, watcher, "resume" if resume else "anew" if anew else "new")
     finally:
         watcher.stop()
     _tell(outcome.summary())
+
+
+def _watcher() -> Watcher:
+    wishes = terminal()
+    return progress.watcher(quiet=wishes.quiet or wishes.as_json)  # a machine reads standard error too
 
 
 def _recipe(recipe: Path, **words: Any) -> Recipe:

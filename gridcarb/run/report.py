@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
@@ -10,11 +10,13 @@ from gridcarb.chemistry import CONSTANTS
 from gridcarb.errors import Notice
 from gridcarb.fields import Field
 from gridcarb.run.budget import PROGRAM_BYTES
+from gridcarb.run.costs import Span
 from gridcarb.write.disk import free_bytes, sized
 
 if TYPE_CHECKING:
     from gridcarb.run.conduct import Outcome
     from gridcarb.run.plan import Plan
+    from gridcarb.run.rehearsal import Rehearsal
 
 Rows = list[tuple[str, str]]
 
@@ -50,6 +52,17 @@ def plan_report(plan: Plan) -> Report:
         Section("Where it will go", _place_rows(plan)),
     ]
     return Report(sections, plan.notices, plan_data(plan, plan.notices))
+
+
+def rehearsal_report(rehearsal: Rehearsal) -> Report:
+    """The plan, with what it will cost as some blocks of it told."""
+    told = plan_report(rehearsal.plan)
+    count = len(rehearsal.blocks)
+    title = f"What it will cost, measured on {count} block{'s' * (count != 1)}"
+    sections = [*told.sections[:-1], Section(title, _rehearsed_rows(rehearsal)), told.sections[-1]]
+    notices = rehearsal.notices
+    data = {**told.data, "notices": [notice.as_dict() for notice in notices], "cost": _cost_data(rehearsal)}
+    return Report(sections, notices, data)
 
 
 def outcome_report(outcome: Outcome) -> Report:
@@ -129,6 +142,76 @@ def _cost_rows(plan: Plan) -> Rows:
     if times > 1:
         rows.append(("reading", f"a chunk of the source is read up to {times} times: blocks are smaller than its chunks"))
     return rows
+
+
+def _rehearsed_rows(rehearsal: Rehearsal) -> Rows:
+    found, layout = rehearsal.costs, rehearsal.plan.layout
+    beside = f", {rehearsal.neighbours} of them to share chunks with another" * bool(rehearsal.neighbours)
+    machine = f"{found.cores} core{'s' * (found.cores != 1)}"
+    rows = [
+        ("measured", f"{rehearsal.cells:,} of {layout.cells:,} cells, {found.wet:.0%} of them water{beside}; it took "
+                     f"{lasting(rehearsal.seconds)}"),
+        ("speed of a core", _spanned(found.cells_per_second, lambda rate: f"{rate / 1e6:.3g}") + " million cells/s"),
+        ("spent on", ", ".join(f"{leg} {share:.0%}" for leg, share in found.shares.items())),
+        ("core-hours", _spanned(found.core_hours, _figures)),
+        ("by the clock", f"{_spanned(found.block_hours, _hours)} on {machine}, if none waits for another"),
+    ]
+    if rehearsal.plan.recipe.output.netcdf:
+        rows.append(("NetCDF copy", f"{_spanned(found.file_bytes, sized)}, {_spanned(found.export_hours, _hours)} more: "
+                                    "one core writes it when all blocks are done"))
+    bytes_in = "not known: a store behind an address" if rehearsal.bytes_in is None else sized(rehearsal.bytes_in)
+    rows += [
+        ("files in", f"{bytes_in} as they are stored"),
+        ("store out", f"{_spanned(found.store_bytes, sized)}, compressed"),
+        ("files out", f"{rehearsal.files:,}: {round(found.chunk_files):,} chunks, {len(layout):,} markers "
+                      f"({sized(found.marker_bytes)}), {rehearsal.frame_files:,} of metadata and coordinates"),
+        ("room", _room_words(rehearsal)),
+    ]
+    if not found.wet:
+        rows.append(("caution", "all of these blocks were land: water takes longer and more room; rehearse more of them"))
+    return rows
+
+
+def _room_words(rehearsal: Rehearsal) -> str:
+    (likely, most), free = rehearsal.needed, rehearsal.free
+    fit = "it would not fit" if likely > free else "it might not fit" if most > free else "it fits"
+    return f"{sized(likely)} while it is made, {sized(free)} free: {fit}"
+
+
+def _cost_data(rehearsal: Rehearsal) -> dict[str, object]:
+    found = rehearsal.costs
+    return {
+        "blocks": [number + 1 for number in rehearsal.blocks], "cells": rehearsal.cells, "seconds": rehearsal.seconds,
+        "wet_share": found.wet, "cores": found.cores, "cells_per_second": found.cells_per_second.as_dict(),
+        "shares": dict(found.shares), "core_hours": found.core_hours.as_dict(), "block_hours": found.block_hours.as_dict(),
+        "netcdf_hours": found.export_hours.as_dict(), "bytes_in": rehearsal.bytes_in,
+        "store_bytes": found.store_bytes.as_dict(), "netcdf_bytes": found.file_bytes.as_dict(),
+        "marker_bytes": found.marker_bytes, "files": rehearsal.files, "bytes_needed": rehearsal.needed[0],
+        "bytes_free": rehearsal.free,
+    }  # fmt: skip
+
+
+def _spanned(span: Span, words: Callable[[float], str]) -> str:
+    """The likely amount, and the ends of its span unless they read alike."""
+    likely, low, high = (words(amount) for amount in (span.likely, span.lowest, span.highest))
+    return likely if low == high else f"{likely} ({low} to {high})"
+
+
+def _figures(amount: float) -> str:
+    """Three figures, without an exponent where that can be helped: ``12,300``."""
+    return f"{float(f'{amount:.3g}'):,g}"
+
+
+def _hours(hours: float) -> str:
+    return lasting(3600 * hours)
+
+
+def lasting(seconds: float) -> str:
+    """A time in words of two or three figures: ``12 min``, ``3.5 h``, ``6.2 days``."""
+    for size, word, most in ((1, "s", 100), (60, "min", 100), (3600, "h", 72)):
+        if seconds < most * size:
+            return f"{seconds / size:.2g} {word}"
+    return f"{_figures(seconds / 86_400)} days"
 
 
 def _place_rows(plan: Plan) -> Rows:

@@ -98,7 +98,12 @@ def _examine(
 
 
 def _with_file(where: str, raw: xr.Dataset) -> str:
-    """The place of an error with the file (and the name in it) of the role it speaks of, as far as the data know it."""
+    """The place of an error with the file (and the name in it) of the role it speaks of, as far as the data know it.
+
+    The density lies in no variable: its place is the key of the recipe that states it.
+    """
+    if where == "density":
+        return "reading.density"
     speaker = raw.data_vars.get(where.partition(",")[0], raw.data_vars.get("temperature"))
     origin = {} if speaker is None else speaker.encoding
     if "source" not in origin or where.startswith("reading."):
@@ -150,7 +155,8 @@ def _fields(clean: Mapping[str, xr.DataArray], place: depth.Place, understanding
     for role, assumed in understanding.nutrients.items():
         fields[role] = nutrients.constant(assumed, of_water)
     if of_water is not None:
-        fields["density"] = of_water
+        # A variable may bear the name of an axis only if it has several, or just that one.
+        fields["density"] = of_water.broadcast_like(warm) if "density" in warm.dims else of_water
     return fields
 
 

@@ -133,3 +133,12 @@ def test_a_fill_value_that_is_text(bench, ocean) -> None:
     assert told.where.endswith("dissic (dic)")
 
 
+@pytest.mark.parametrize(("stated", "what"), [("5 kg m-3", "not that of sea water"), ("from file", "name none")])
+def test_a_density_that_cannot_be_has_its_place_in_the_recipe(bench, ocean, stated: str, what: str) -> None:
+    bench.put(ocean(tracer_units="mol m-3"))
+    bench.say({"reading": {"density": stated}})
+    told = bench.refusal(3)
+    assert told.where == "reading.density"
+    assert what in told.what
+    bench.say(told.line())
+    bench.success()

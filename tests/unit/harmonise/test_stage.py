@@ -180,6 +180,21 @@ def test_amounts_per_mass_need_no_density(ocean: Ocean) -> None:
     assert clothed["dic"].values[0, 0, 1, 1] == raw["dic"].values[0, 0, 1, 1] * 1e6
 
 
+@pytest.mark.parametrize("axis", ["time", "depth", "lon"])
+@pytest.mark.parametrize("density", ["1026 kg m-3", "in situ"])
+def test_an_axis_may_be_called_density(ocean: Ocean, axis: str, density: str) -> None:
+    raw = ocean()
+    column = {"time": 0, "lat": 2, "lon": 3}
+    for part in (raw, raw.isel({dim: slice(place, place + 1) for dim, place in column.items()}), raw.isel(column)):
+        if axis not in part.dims:
+            continue
+        renamed = part.rename({axis: "density"})
+        wanted, found = (clothe(each, understand(each, ReadingSettings(density=density))) for each in (part, renamed))
+        for key in (*ROLES, "sea_pressure"):
+            assert found[key].values.tobytes() == wanted[key].values.tobytes(), key
+        np.testing.assert_array_equal(found["density"].values, wanted["density"].values)
+
+
 def test_an_assumed_nutrient_is_a_scalar(ocean: Ocean) -> None:
     raw = ocean(attributes={"silicate": None})
     clothed = clothe(raw, understand(raw, ReadingSettings(silicate="2 umol kg-1")))

@@ -103,10 +103,10 @@ def unmask(raw: npt.NDArray[Any], reading: MaskReading) -> tuple[Numbers, Marks]
     marks = np.isnan(raw).view(np.uint8) * MARKS["nan"] if raw.dtype.kind == "f" else np.zeros(raw.shape, np.uint8)
     more = False
     for rule, hit in _hits(raw, numbers, reading):
-        marks |= np.where(marks, np.uint8(0), hit.view(np.uint8) * MARKS[rule])
+        marks |= (hit & (marks == 0)).view(np.uint8) * MARKS[rule]
         more = True
     if more:
-        np.putmask(numbers, marks != 0, np.nan)
+        np.copyto(numbers, np.nan, where=marks != 0)
     return numbers, marks
 
 
@@ -161,8 +161,9 @@ def _hits(raw: npt.NDArray[Any], numbers: Numbers, reading: MaskReading) -> Iter
         yield "valid_range", judged < np.float64(reading.low)
     if reading.high is not None:
         yield "valid_range", judged > np.float64(reading.high)
-    if (reading.scale, reading.offset) != (1.0, 0.0) or max(highest, -lowest) >= _BEYOND:
-        yield "beyond_physics", np.abs(numbers) >= _BEYOND
+    packed = (reading.scale, reading.offset) != (1.0, 0.0)
+    if packed or max(highest, -lowest) >= _BEYOND:
+        yield "beyond_physics", np.abs(numbers if packed else raw) >= _BEYOND
 
 
 def _edges(raw: npt.NDArray[Any]) -> tuple[Any, Any]:
@@ -187,7 +188,7 @@ def _equal(raw: npt.NDArray[Any], fill: float) -> Flags:
         inside = information.min <= whole <= information.max
         return np.asarray(raw == whole) if inside else np.zeros(raw.shape, dtype=bool)
     with np.errstate(over="ignore"):
-        return np.asarray(raw.astype(np.float32) == np.float32(fill)) if fill else np.asarray(raw == 0)
+        return np.asarray(raw.astype(np.float32, copy=False) == np.float32(fill)) if fill else np.asarray(raw == 0)
 
 
 def _numbers(attrs: Mapping[Any, Any], key: str, where: str) -> list[float]:

@@ -17,7 +17,7 @@ from gridcarb.write import lock
 from gridcarb.write.encoding import file_checksum
 from gridcarb.write.folder import ResultFolder
 from gridcarb.write.journal import JOURNAL, read_journal, write_journal
-from gridcarb.write.proof import large_file_checksum, put_file
+from gridcarb.write.proof import put_file
 
 
 def verify(result: Path, watcher: Watcher, *, sample: int = 3, repair: bool = False) -> Verdict:
@@ -101,7 +101,7 @@ class _Mender:
             make_file(self._result, watcher)
         if stale - {FILE}:
             draw_figures(planned(charter, self._shop.store.parent / "result", figures=True).recipe, self._result, watcher)
-        derived = {name: large_file_checksum(self._result / name) for name in charter.derived}
+        derived = {name: file_checksum(self._result / name) for name in charter.derived}
         self._at.charter = replace(charter, derived=derived)
         self._at.ledger.open(self._at.charter.as_dict())
 

@@ -14,8 +14,9 @@ from gridcarb.run.charter import Charter
 from gridcarb.run.frame import make_store
 from gridcarb.run.plan import STORE, Plan
 from gridcarb.run.task import Job
+from gridcarb.write.encoding import file_checksum
 from gridcarb.write.ledger import LEDGER, DamagedMarkerError, Ledger, Marker
-from gridcarb.write.proof import Proof, large_file_checksum, sweep_store
+from gridcarb.write.proof import Proof, sweep_store
 
 Manner = Literal["new", "resume", "anew"]
 """`new` refuses to touch what an interrupted run has finished, `resume` goes on from it, `anew` throws it away."""
@@ -72,7 +73,7 @@ class Start:
 
     def note_derived(self, names: Iterable[str]) -> None:
         """Note the checksums of what was made of the finished store."""
-        found = {name: large_file_checksum(self.plan.folder.partial / name) for name in sorted(names) if name != STORE}
+        found = {name: file_checksum(self.plan.folder.partial / name) for name in sorted(names) if name != STORE}
         self.charter = replace(self.charter, derived=found)
         self.ledger.open(self.charter.as_dict())
 

@@ -17,8 +17,9 @@ from gridcarb.run.plan import FILE, STORE
 from gridcarb.run.report import Report, Section
 from gridcarb.run.watching import Watcher
 from gridcarb.run.workshop import Workshop
+from gridcarb.write.encoding import file_checksum
 from gridcarb.write.ledger import LEDGER, DamagedMarkerError, Ledger, Marker
-from gridcarb.write.proof import FileProof, Proof, large_file_checksum
+from gridcarb.write.proof import FileProof, Proof
 
 _SLAB = 1000
 """Blocks looked at between two looks at the watcher."""
@@ -181,7 +182,7 @@ class Inspector:
         found = []
         for name, noted in self.charter.derived.items():
             self._say(f"looking at {name}")
-            if large_file_checksum(self.result / name) != noted:
+            if file_checksum(self.result / name) != noted:
                 found.append(_file_damage("file", self.result / name, name))
         return found
 

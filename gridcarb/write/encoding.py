@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 import itertools
-import zlib
 from collections.abc import Iterator, Mapping, Sequence
 from pathlib import Path
 from typing import Any, Literal
 
+import google_crc32c
 import numcodecs
 import numpy as np
 from numpy.typing import NDArray
@@ -21,6 +21,10 @@ Selection = tuple[slice, ...]
 
 # The threads of Blosc put their pieces into a chunk in the order they finish: its bytes would differ from run to run.
 numcodecs.blosc.use_threads = False
+
+_LEVEL = 1
+ENCODER = numcodecs.Blosc(cname="zstd", clevel=_LEVEL, shuffle=numcodecs.Blosc.SHUFFLE)
+"""What makes the bytes of a chunk, in either format."""
 
 _PIECE_BYTES = 16 * 2**20
 """Coordinates are mostly read whole: one chunk, unless they are so large that memory would feel it."""
@@ -80,9 +84,7 @@ def compressor(zarr_format: Literal[2, 3]) -> BloscCodec | numcodecs.Blosc:
     Blosc is the one codec with a shuffle that the core of both Zarr formats specifies, so every implementation reads it;
     plain Zstandard has no shuffle there, and smooth floats then take a third more room.
     """
-    if zarr_format == 2:
-        return numcodecs.Blosc(cname="zstd", clevel=1, shuffle=numcodecs.Blosc.SHUFFLE)
-    return BloscCodec(cname="zstd", clevel=1, shuffle="shuffle")
+    return ENCODER if zarr_format == 2 else BloscCodec(cname="zstd", clevel=_LEVEL, shuffle="shuffle")
 
 
 def stored(values: NDArray[np.generic], dtype: np.dtype[np.generic]) -> NDArray[np.generic]:
@@ -92,13 +94,22 @@ def stored(values: NDArray[np.generic], dtype: np.dtype[np.generic]) -> NDArray[
 
 
 def checksum(values: NDArray[np.generic]) -> str:
-    """A CRC-32 of the bytes of C-ordered `values` in little-endian order, to find damage, not malice."""
-    return f"crc32:{zlib.crc32(values.astype(values.dtype.newbyteorder('<'), copy=False).data):08x}"
+    """A CRC-32C of the bytes of C-ordered `values` in little-endian order, to find damage, not malice."""
+    return bytes_checksum(values.astype(values.dtype.newbyteorder("<"), copy=False))
+
+
+def bytes_checksum(content: bytes | NDArray[np.generic]) -> str:
+    """The same of bytes."""
+    return f"crc32c:{google_crc32c.value(content):08x}"
 
 
 def file_checksum(path: Path) -> str:
-    """The same of the bytes of a file; "" if there is none."""
+    """The same of the bytes of a file of any size; "" if there is none."""
+    so_far = 0
     try:
-        return f"crc32:{zlib.crc32(path.read_bytes()):08x}"
+        with path.open("rb") as file:
+            while piece := file.read(_PIECE_BYTES):
+                so_far = google_crc32c.extend(so_far, piece)
     except FileNotFoundError:
         return ""
+    return f"crc32c:{so_far:08x}"

@@ -4,22 +4,17 @@ from __future__ import annotations
 
 import os
 import shutil
-import zlib
 from collections.abc import Iterator, Mapping
 from pathlib import Path
-from typing import Any
 
 import netCDF4
 import numpy as np
-import zarr
 
 from gridcarb.netcdf_lock import NETCDF_LOCK
+from gridcarb.write.chunks import PARTIAL, chunked_field
 from gridcarb.write.disk import room_for, settle
 from gridcarb.write.encoding import checksum, file_checksum
 from gridcarb.write.ledger import Marker
-from gridcarb.write.store import chunk_files, dims_of_array
-
-_PIECE = 16 * 2**20
 
 
 class Proof:
@@ -27,7 +22,6 @@ class Proof:
 
     def __init__(self, store: Path) -> None:
         self.store = store
-        self._arrays: dict[str, zarr.Array[Any]] = {}
 
     def frame(self) -> dict[str, str]:
         """Checksum of every file of a store whose fields are still empty."""
@@ -46,21 +40,13 @@ class Proof:
         Raises whatever Zarr raises where the metadata of a field cannot be read.
         """
         for field, noted in marker.chunks.items():
-            array = self._array(field)
-            region = marker.slices()
-            selection = [slice(*region.get(dim, slice(None)).indices(size)[:2])
-                         for dim, size in zip(dims_of_array(array), array.shape, strict=True)]  # fmt: skip
-            for path, sum_then in zip(chunk_files(self.store / field, array, selection), noted, strict=True):
+            found = chunked_field(self.store, field)
+            for path, sum_then in zip(found.files(found.selection(marker.slices())), noted, strict=True):
                 yield field, path, sum_then
 
     def damaged_chunks(self, marker: Marker) -> list[tuple[str, Path]]:
         """Field and file of each chunk of a block that is not as its marker says."""
         return [(field, path) for field, path, sum_then in self.files(marker) if file_checksum(path) != sum_then]
-
-    def _array(self, field: str) -> zarr.Array[Any]:
-        if field not in self._arrays:
-            self._arrays[field] = zarr.open_array(self.store / field, mode="r")
-        return self._arrays[field]
 
 
 class FileProof:
@@ -102,18 +88,6 @@ class FileProof:
         return checksum(np.ascontiguousarray(values))
 
 
-def large_file_checksum(path: Path) -> str:
-    """Checksum of a file of any size; "" if there is none."""
-    so_far = 0
-    try:
-        with path.open("rb") as file:
-            while piece := file.read(_PIECE):
-                so_far = zlib.crc32(piece, so_far)
-    except FileNotFoundError:
-        return ""
-    return f"crc32:{so_far:08x}"
-
-
 def put_file(source: Path, target: Path) -> None:
     """Give `target` the bytes of `source`, whole or not at all; if there is no source there is no target either."""
     if not source.exists():
@@ -128,5 +102,5 @@ def put_file(source: Path, target: Path) -> None:
 
 def sweep_store(store: Path) -> None:
     """Remove what writers that were killed have left half written: Zarr gives it this ending until it is whole."""
-    for path in store.rglob("*.partial"):
+    for path in store.rglob(f"*{PARTIAL}"):
         path.unlink(missing_ok=True)

@@ -5,11 +5,10 @@ Opening it asks nothing special of xarray: metadata are consolidated as a courte
 
 from __future__ import annotations
 
-import itertools
 import warnings
 from collections.abc import Mapping, Sequence
 from pathlib import Path
-from typing import Any, Literal, NamedTuple, cast
+from typing import Any, Literal, NamedTuple
 
 import numpy as np
 import xarray as xr
@@ -20,6 +19,7 @@ from gridcarb.axes import Axes
 from gridcarb.errors import BlockError, OutputError
 from gridcarb.fields import Field
 from gridcarb.write.attributes import field_attributes, inherited_attributes
+from gridcarb.write.chunks import DIMS_V2, chunked_field
 from gridcarb.write.coordinates import clean_coordinates, numbers
 from gridcarb.write.disk import room_for
 from gridcarb.write.encoding import (
@@ -29,15 +29,11 @@ from gridcarb.write.encoding import (
     compressor,
     dims_of,
     dtype_of,
-    file_checksum,
     fill_of,
     pieces,
     split_chunks,
     stored,
 )  # fmt: skip
-
-_DIMS_V2 = "_ARRAY_DIMENSIONS"
-"""Where format 2 keeps the names of dimensions; format 3 has a place of its own for them."""
 
 
 def create(
@@ -96,55 +92,19 @@ def write_block(path: Path, region: Mapping[str, slice], block: xr.Dataset) -> d
         whole chunks, since two writers in one chunk lose data silently: anything else is a `BlockError`, before a byte
         is written. Writing the same block twice leaves the same bytes.
     """
-    group = zarr.open_group(path, mode="r+", use_consolidated=False)
     work = []
     for key, variable in block.data_vars.items():
-        array = _array(group, str(key), path)
-        dims = dims_of_array(array)
-        if set(dims) != set(variable.dims):
-            raise BlockError(f"'{key}' has dimensions {tuple(variable.dims)}, the store has {dims}", where=str(path))
-        selection = _aligned(array, dims, region, f"{path}: {key}")
-        values = stored(variable.transpose(*dims).values, array.dtype)
+        field = chunked_field(path, str(key))
+        if set(field.dims) != set(variable.dims):
+            raise BlockError(f"'{key}' has dimensions {tuple(variable.dims)}, the store has {field.dims}", where=str(path))
+        selection = field.selection(region)
+        values = stored(variable.transpose(*field.dims).values, field.dtype)
         expected = tuple(part.stop - part.start for part in selection)
         if values.shape != expected:
             raise BlockError(f"a block of shape {values.shape} does not fit a region of {expected}", where=f"{path}: {key}")
-        work.append((array, selection, values))
+        work.append((field, selection, values))
     with room_for(path, sum(values.nbytes for *_, values in work)):
-        for array, selection, values in work:
-            array[selection] = values
-    written = {}
-    for array, selection, values in work:
-        files = chunk_files(path / array.basename, array, selection)
-        written[array.basename] = Written(checksum(values), tuple(map(file_checksum, files)))
-    return written
-
-
-def chunk_files(folder: Path, array: zarr.Array[Any], selection: Sequence[slice]) -> list[Path]:
-    """The files of a selection made of whole chunks of `array`, which lies in `folder`; a chunk of only fill has none."""
-    cut = zip(selection, array.chunks, strict=True)
-    places = [range(part.start // chunk, -(-part.stop // chunk)) for part, chunk in cut]
-    return [folder / array.metadata.encode_chunk_key(at) for at in itertools.product(*places)]
-
-
-def _array(group: zarr.Group, key: str, path: Path) -> zarr.Array[Any]:
-    found = group.get(key)
-    if not isinstance(found, zarr.Array):
-        raise BlockError(f"the store has no field '{key}'", where=str(path))
-    return found
-
-
-def _aligned(
-    array: zarr.Array[Any], dims: Sequence[str], region: Mapping[str, slice], where: str
-) -> tuple[slice, ...]:
-    selection = []
-    for dim, size, chunk in zip(dims, array.shape, array.chunks, strict=True):
-        start, stop, step = region.get(dim, slice(None)).indices(size)
-        if step != 1 or start % chunk or (stop % chunk and stop != size) or start >= stop:
-            raise BlockError(
-                f"region {start}:{stop} along '{dim}' is not made of whole chunks of {chunk} (length {size})", where=where
-            )
-        selection.append(slice(start, stop))
-    return tuple(selection)
+        return {field.name: Written(checksum(values), field.write(selection, values)) for field, selection, values in work}
 
 
 def _put_coordinate(group: zarr.Group, name: str, variable: xr.Variable) -> None:
@@ -174,15 +134,8 @@ def _make(
         name, shape=tuple(shape.values()), dtype=str if dtype.kind == "O" else dtype, chunks=chunks,
         fill_value=fill,
         compressors=compressor(group.metadata.zarr_format), dimension_names=dims if third else None,
-        attributes=_plain(attributes if third else {**attributes, _DIMS_V2: dims}),
+        attributes=_plain(attributes if third else {**attributes, DIMS_V2: dims}),
     )
-
-
-def dims_of_array(array: zarr.Array[Any]) -> tuple[str, ...]:
-    """The names of the dimensions of an array of a store, in either format."""
-    if array.metadata.zarr_format == 3:
-        return tuple(str(dim) for dim in array.metadata.dimension_names or ())
-    return tuple(str(dim) for dim in cast(list[str], array.attrs[_DIMS_V2]))
 
 
 def _consolidate(path: Path) -> None:

@@ -1,0 +1,56 @@
+"""Compiled loops over lines of cells: what the summaries count and add up, in one passage and without temporaries."""
+
+from __future__ import annotations
+
+import numpy as np
+import numpy.typing as npt
+
+from gridcarb.compiling import compile_function
+
+Line = npt.NDArray[np.float64]
+
+_LARGEST = float(np.finfo(np.float64).max)
+
+
+def weigh_line(values: Line, weights: Line) -> tuple[float, float]:
+    """Sum of the weights, and of weights times values, of the cells that have a finite value.
+
+    weights : of the same length, finite; 0 for a cell that does not count.
+    """
+    weight = total = 0.0
+    for i in range(values.size):
+        there = abs(values[i]) <= _LARGEST
+        weight += weights[i] if there else 0.0
+        total += values[i] * weights[i] if there else 0.0
+    return weight, total
+
+
+def count_flags_of(flags: npt.NDArray[np.int8], counts: npt.NDArray[np.int64]) -> None:
+    """Add to `counts` how often each value occurs, at the place 128 higher than the value."""
+    for i in range(flags.size):
+        counts[int(flags[i]) + 128] += 1
+
+
+def weigh_flags_of(flags: npt.NDArray[np.int8], weights: Line, sums: Line) -> None:
+    """Add to `sums` the weights of the cells of each value, at the place 128 higher than the value."""
+    for i in range(flags.size):
+        sums[int(flags[i]) + 128] += weights[i]
+
+
+weigh = compile_function(weigh_line)
+_count_flags = compile_function(count_flags_of)
+_weigh_flags = compile_function(weigh_flags_of)
+
+
+def count_flags(flags: npt.NDArray[np.int8]) -> dict[int, int]:
+    """Value -> how often it occurs."""
+    counts = np.zeros(256, dtype=np.int64)
+    _count_flags(flags, counts)
+    return {int(place) - 128: int(counts[place]) for place in np.flatnonzero(counts)}
+
+
+def weigh_flags(flags: npt.NDArray[np.int8], weights: Line) -> dict[int, float]:
+    """Value -> sum of the weights of its cells, where that is not zero."""
+    sums = np.zeros(256)
+    _weigh_flags(flags, weights, sums)
+    return {int(place) - 128: float(sums[place]) for place in np.flatnonzero(sums)}

@@ -14,6 +14,7 @@ class Sample:
     wet : cells that were solved.
     legs : leg of the task -> wall seconds.
     core_seconds : how long a core was taken: wall seconds, or CPU seconds of all threads where those are more.
+    cpu_seconds : CPU seconds of all threads.
     store_bytes, chunk_files : what was written to the store, compressed.
     marker_bytes : its marker in the ledger.
     file_bytes, file_seconds : its copy in a NetCDF file; 0 where none is wanted.
@@ -23,6 +24,7 @@ class Sample:
     wet: float
     legs: Mapping[str, float]
     core_seconds: float
+    cpu_seconds: float
     store_bytes: float
     chunk_files: float
     marker_bytes: float
@@ -53,6 +55,7 @@ class Costs:
     export_hours, file_bytes : of the NetCDF file, which one core writes once the blocks are done.
     store_bytes, chunk_files, marker_bytes : of the store and its ledger.
     wet : part of the cells of the samples that were solved.
+    busy : part of the core's time in which it computed; the rest it waited, for a disk or for others on the machine.
     """
 
     cores: int
@@ -66,6 +69,7 @@ class Costs:
     chunk_files: float
     marker_bytes: float
     wet: float
+    busy: float
 
 
 def blended(first: Sample, neighbour: Sample, blocks_per_chunk: float) -> Sample:
@@ -75,18 +79,24 @@ def blended(first: Sample, neighbour: Sample, blocks_per_chunk: float) -> Sample
     neighbour : needs only chunks that `first` has read.
     """
     part = 1.0 / blocks_per_chunk
+    cells = _mean(first.cells, neighbour.cells)
 
-    def mix(of: Callable[[Sample], float]) -> float:
-        return part * of(first) + (1.0 - part) * of(neighbour)
+    def typical(one: float, other: float) -> float:
+        """Seconds: those of a cell of either block, the dear one as seldom as it comes."""
+        return cells * (part * one / first.cells + (1.0 - part) * other / neighbour.cells)
 
     return Sample(
-        mix(lambda block: block.cells), mix(lambda block: block.wet),
-        {leg: part * first.legs.get(leg, 0.0) + (1.0 - part) * neighbour.legs.get(leg, 0.0) for leg in first.legs},
-        mix(lambda block: block.core_seconds), mix(lambda block: block.store_bytes), mix(lambda block: block.chunk_files),
-        mix(lambda block: block.marker_bytes),
-        mix(lambda block: block.cells) * first.file_bytes / first.cells,
-        mix(lambda block: block.cells) * first.file_seconds / first.cells,
+        cells, _mean(first.wet, neighbour.wet),
+        {leg: typical(seconds, neighbour.legs.get(leg, 0.0)) for leg, seconds in first.legs.items()},
+        typical(first.core_seconds, neighbour.core_seconds), typical(first.cpu_seconds, neighbour.cpu_seconds),
+        _mean(first.store_bytes, neighbour.store_bytes), _mean(first.chunk_files, neighbour.chunk_files),
+        _mean(first.marker_bytes, neighbour.marker_bytes),
+        cells * first.file_bytes / first.cells, cells * first.file_seconds / first.cells,
     )
+
+
+def _mean(one: float, other: float) -> float:
+    return (one + other) / 2.0
 
 
 def costs(samples: Sequence[Sample], *, cells: int, blocks: int, cores: int) -> Costs:
@@ -97,23 +107,24 @@ def costs(samples: Sequence[Sample], *, cells: int, blocks: int, cores: int) -> 
 
     samples : at least one.
     """
-    busy = min(cores, blocks)
+    used = min(cores, blocks)
     core_hours = _over_cells(samples, lambda block: block.core_seconds, cells / 3600.0)
     pace = _over_cells(samples, lambda block: block.core_seconds, 1.0)
     spent = {leg: math.fsum(block.legs.get(leg, 0.0) for block in samples) for leg in samples[0].legs}
     total = math.fsum(spent.values())
     return Costs(
-        cores=busy,
+        cores=used,
         cells_per_second=Span(1 / pace.likely, 1 / pace.highest, 1 / pace.lowest),
         shares={leg: seconds / total for leg, seconds in spent.items()},
         core_hours=core_hours,
-        block_hours=Span(core_hours.likely / busy, core_hours.lowest / busy, core_hours.highest / busy),
+        block_hours=Span(core_hours.likely / used, core_hours.lowest / used, core_hours.highest / used),
         export_hours=_over_cells(samples, lambda block: block.file_seconds, cells / 3600.0),
         store_bytes=_over_cells(samples, lambda block: block.store_bytes, cells),
         file_bytes=_over_cells(samples, lambda block: block.file_bytes, cells),
         chunk_files=_over_cells(samples, lambda block: block.chunk_files, cells).likely,
         marker_bytes=blocks * math.fsum(block.marker_bytes for block in samples) / len(samples),
         wet=math.fsum(block.wet for block in samples) / math.fsum(block.cells for block in samples),
+        busy=math.fsum(block.cpu_seconds for block in samples) / math.fsum(block.core_seconds for block in samples),
     )
 
 

@@ -174,7 +174,7 @@ class _Stage:
         sample = Sample(
             record.cells, sum(status.get(word, 0) for word in _SOLVED),
             {**record.seconds, "mark": max(0.0, wall - math.fsum(record.seconds.values()))}, max(wall, busy),
-            sum(new.values()) - sum(markers), len(new) - len(markers), sum(markers),
+            busy, sum(new.values()) - sum(markers), len(new) - len(markers), sum(markers),
         )
         if not copy:
             return sample
@@ -241,17 +241,18 @@ def blocks_per_chunk(layout: Layout, source: Mapping[str, int]) -> float:
 
 
 def neighbour(layout: Layout, source: Mapping[str, int], number: int) -> int | None:
-    """The block after or before `number` which needs no chunk of the source that `number` does not; None if neither."""
+    """A block beside `number`, in any dimension, which needs no chunk of the source that `number` does not; else None."""
     def needed(block: int) -> list[tuple[int, int]]:
         return [(part.start // source.get(dim, 1), (part.stop - 1) // source.get(dim, 1))
                 for dim, part in layout.region(block).items()]  # fmt: skip
 
-    own = needed(number)
-    for other in (number + 1, number - 1):
-        if 0 <= other < len(layout) and all(
-            first <= low and high <= last for (first, last), (low, high) in zip(own, needed(other), strict=True)
-        ):
-            return other
+    own, stride = needed(number), 1
+    for count in reversed(layout.counts):
+        place = number // stride % count
+        for other in [number + stride] * (place + 1 < count) + [number - stride] * (place > 0):
+            if all(first <= low and high <= last for (first, last), (low, high) in zip(own, needed(other), strict=True)):
+                return other
+        stride *= count
     return None
 
 

@@ -140,7 +140,11 @@ def _cost_rows(plan: Plan) -> Rows:
     ]
     times = plan.reads_of_a_chunk()
     if times > 1:
-        rows.append(("reading", f"a chunk of the source is read up to {times} times: blocks are smaller than its chunks"))
+        rows.append(("reading", f"a chunk of the source is read up to {times} times: blocks are smaller than its chunks; "
+                     f"to keep these would take {sized(plan.memory_to_read_once())} of `memory` under `engine`"))
+    elif plan.kept:
+        rows.append(("reading", f"a chunk of the source is read once and kept for the {plan.blocks_of_a_chunk()} blocks "
+                     f"that need it, in up to {sized(plan.kept)} of each process"))
     return rows
 
 
@@ -152,7 +156,8 @@ def _rehearsed_rows(rehearsal: Rehearsal) -> Rows:
         ("measured", f"{rehearsal.cells:,} of {layout.cells:,} cells, {found.wet:.0%} of them water{beside}; it took "
                      f"{lasting(rehearsal.seconds)}"),
         ("speed of a core", _spanned(found.cells_per_second, lambda rate: f"{rate / 1e6:.3g}") + " million cells/s"),
-        ("spent on", ", ".join(f"{leg} {share:.0%}" for leg, share in found.shares.items())),
+        ("spent on", ", ".join(f"{leg} {share:.0%}" for leg, share in found.shares.items())
+                     + f"; computing {found.busy:.0%} of the time, else waiting"),
         ("core-hours", _spanned(found.core_hours, _figures)),
         ("by the clock", f"{_spanned(found.block_hours, _hours)} on {machine}, if none waits for another"),
     ]
@@ -183,7 +188,8 @@ def _cost_data(rehearsal: Rehearsal) -> dict[str, object]:
     return {
         "blocks": [number + 1 for number in rehearsal.blocks], "cells": rehearsal.cells, "seconds": rehearsal.seconds,
         "wet_share": found.wet, "cores": found.cores, "cells_per_second": found.cells_per_second.as_dict(),
-        "shares": dict(found.shares), "core_hours": found.core_hours.as_dict(), "block_hours": found.block_hours.as_dict(),
+        "shares": dict(found.shares), "busy_share": found.busy,
+        "core_hours": found.core_hours.as_dict(), "block_hours": found.block_hours.as_dict(),
         "netcdf_hours": found.export_hours.as_dict(), "bytes_in": rehearsal.bytes_in,
         "store_bytes": found.store_bytes.as_dict(), "netcdf_bytes": found.file_bytes.as_dict(),
         "marker_bytes": found.marker_bytes, "files": rehearsal.files, "bytes_needed": rehearsal.needed[0],

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import os
 import tempfile
 from collections.abc import Callable
 from dataclasses import replace
@@ -18,11 +19,10 @@ from gridcarb.run.costs import Sample, Span, blended, costs
 from gridcarb.run.rehearsal import Rehearsal, blocks_per_chunk, bytes_of_inputs, neighbour, rehearse, spread_blocks
 from gridcarb.run.report import lasting
 
-ENGINE = {"workers": 2, "block": {"time": 1, "cells": 36}}
-"""Six blocks, each of one chunk of the source."""
 
-SMALL = {"workers": 2, "block": {"time": 1, "cells": 12}}
-"""Eighteen blocks, three to a chunk of the source."""
+def cut(cells: int = 36, **output: object) -> dict[str, dict[str, object]]:
+    """The sections of a recipe that make blocks of one month and so many columns, half of the map by default."""
+    return {"engine": {"workers": 2, "block": {"time": 1, "cells": cells}}, "output": output}
 
 
 @pytest.fixture
@@ -36,7 +36,7 @@ def aside(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
 
 @pytest.fixture
 def rehearsed(recipe, watcher) -> Callable[..., Rehearsal]:
-    return lambda blocks=3, **sections: rehearse(prepare(recipe(**{"engine": ENGINE, **sections})), watcher, blocks)
+    return lambda blocks=3, **words: rehearse(prepare(recipe(**cut(**words))), watcher, blocks)
 
 
 def rows(found: Rehearsal) -> dict[str, str]:
@@ -45,8 +45,8 @@ def rows(found: Rehearsal) -> dict[str, str]:
 
 
 def test_costs_are_plain_arithmetic() -> None:
-    one = Sample(100, 50, {"read": 1.0, "solve": 3.0}, 4.0, 1000, 4, 10, 800, 0.5)
-    other = Sample(300, 250, {"read": 3.0, "solve": 1.0}, 2.0, 1400, 4, 20, 2400, 1.5)
+    one = Sample(100, 50, {"read": 1.0, "solve": 3.0}, 4.0, 3.0, 1000, 4, 10, 800, 0.5)
+    other = Sample(300, 250, {"read": 3.0, "solve": 1.0}, 2.0, 1.5, 1400, 4, 20, 2400, 1.5)
     found = costs([one, other], cells=144_000, blocks=480, cores=3)
     assert found.core_hours == Span(0.6, 144_000 * 2 / 300 / 3600, 1.6)
     assert found.block_hours == Span(found.core_hours.likely / 3, found.core_hours.lowest / 3, found.core_hours.highest / 3)
@@ -54,21 +54,22 @@ def test_costs_are_plain_arithmetic() -> None:
     assert found.store_bytes.as_dict() == pytest.approx({"likely": 864_000, "lowest": 672_000, "highest": 1_440_000})
     assert found.file_bytes.as_dict() == pytest.approx({"likely": 1_152_000, "lowest": 1_152_000, "highest": 1_152_000})
     assert found.export_hours.likely == pytest.approx(0.2)
-    assert (found.shares, found.wet, found.cores) == ({"read": 0.5, "solve": 0.5}, 0.75, 3)
+    assert (found.shares, found.wet, found.busy, found.cores) == ({"read": 0.5, "solve": 0.5}, 0.75, 0.75, 3)
     assert (found.chunk_files, found.marker_bytes) == (2880, 7200)
 
 
 def test_there_is_nothing_to_do_for_more_cores_than_blocks() -> None:
-    sample = Sample(100, 50, {"solve": 3.6}, 3.6, 1000, 4, 10)
+    sample = Sample(100, 50, {"solve": 3.6}, 3.6, 3.6, 1000, 4, 10)
     found = costs([sample], cells=200, blocks=2, cores=64)
     assert (found.cores, found.core_hours.likely, found.block_hours.likely) == (2, 0.002, 0.001)
 
 
 def test_of_blocks_that_share_a_chunk_one_pays_for_reading_it() -> None:
-    first = Sample(100, 80, {"read": 10.0, "solve": 2.0}, 12.0, 500, 4, 10, 300, 0.5)
-    after = Sample(100, 40, {"read": 2.0, "solve": 2.0}, 4.0, 300, 4, 10)
+    first = Sample(100, 80, {"read": 10.0, "solve": 2.0}, 12.0, 8.0, 500, 4, 10, 300, 0.5)
+    after = Sample(300, 40, {"read": 6.0, "solve": 6.0}, 12.0, 12.0, 300, 8, 20)
     found = blended(first, after, 4)
-    assert found == Sample(100, 50, {"read": 4.0, "solve": 2.0}, 6.0, 350, 4, 10, 300, 0.5)
+    assert found.legs == pytest.approx({"read": 8.0, "solve": 4.0})
+    assert replace(found, legs={}) == Sample(200, 60, {}, 12.0, 10.0, 400, 6, 15, 600, 1.0)
 
 
 @pytest.mark.parametrize(("steps", "places", "wanted", "found"), [
@@ -100,7 +101,10 @@ def test_how_many_blocks_need_a_chunk() -> None:
     assert blocks_per_chunk(layout, {"time": 4}) == 4
     assert blocks_per_chunk(layout, {"lat": 5, "lon": 8}) == 3
     assert [neighbour(layout, {"lat": 4, "lon": 8}, number) for number in range(6)] == [1, 0, 3, 2, None, 6]
+    fine = Layout(sizes, {"time": 1, "lat": 2, "lon": 4}, {})
+    assert [neighbour(fine, {"lat": 4, "lon": 4}, number) for number in range(10)] == [2, 3, 0, 1, 6, 7, 4, 5, None, None]
     assert neighbour(Layout(sizes, sizes, {}), {"lat": 4}, 0) is None
+    assert [neighbour(layout, {"time": 2, "lat": 2}, number) for number in range(0, 20, 5)] == [5, 0, 15, 10]
 
 
 def test_it_leaves_nothing_behind_and_says_how_far_it_is(rehearsed, watcher, aside, tmp_path) -> None:
@@ -113,8 +117,8 @@ def test_it_leaves_nothing_behind_and_says_how_far_it_is(rehearsed, watcher, asi
 
 
 def test_when_all_blocks_are_rehearsed_it_tells_what_the_run_then_writes(rehearsed, recipe, watcher, tmp_path) -> None:
-    found = rehearsed(blocks=6, output={"netcdf": True})
-    conduct(prepare(recipe(engine=ENGINE, output={"netcdf": True})), watcher)
+    found = rehearsed(blocks=6, netcdf=True)
+    conduct(prepare(recipe(**cut(netcdf=True))), watcher)
     result = tmp_path / "result"
     store = {path: path.stat().st_size for path in (result / "fields.zarr").rglob("*") if path.is_file()}
     markers = [path.stat().st_size for path in (result / "ledger").rglob("0*.json")]
@@ -136,14 +140,14 @@ def test_without_a_netcdf_file_none_is_told(rehearsed) -> None:
 
 
 def test_neighbours_are_done_where_blocks_share_chunks_of_the_source(rehearsed, watcher) -> None:
-    found = rehearsed(blocks=2, engine=SMALL)
+    found = rehearsed(blocks=2, cells=12)
     assert (len(found.plan.layout), found.neighbours, len(found.blocks), len(watcher.done)) == (18, 2, 4, 4)
     assert {number // 3 for number in found.blocks} == {0, 5}
     assert "2 of them to share chunks with another" in rows(found)["measured"]
 
 
 def test_the_report_is_the_plan_and_a_section_more(rehearsed) -> None:
-    found = rehearsed(output={"netcdf": True})
+    found = rehearsed(netcdf=True)
     plain, told = found.plan.report(), found.report()
     titles = [section.title for section in told.sections]
     assert titles == [
@@ -156,7 +160,7 @@ def test_the_report_is_the_plan_and_a_section_more(rehearsed) -> None:
                            "files in", "store out", "files out", "room"]  # fmt: skip
     assert shown["measured"].startswith("540 of 1,080 cells")
     assert "on 2 cores" in shown["by the clock"]
-    assert [part.split()[0] for part in shown["spent on"].split(", ")] == list(found.costs.shares)
+    assert [part.split()[0] for part in shown["spent on"].partition(";")[0].split(", ")] == list(found.costs.shares)
     assert shown["room"].endswith("free: it fits")
     data = told.as_dict()
     cost = data.pop("cost")
@@ -165,11 +169,12 @@ def test_the_report_is_the_plan_and_a_section_more(rehearsed) -> None:
     assert cost["blocks"] == [1, 4, 6]
     assert cost["core_hours"]["lowest"] <= cost["core_hours"]["likely"] <= cost["core_hours"]["highest"]
     assert cost["core_hours"]["likely"] == pytest.approx(1080 / cost["cells_per_second"]["likely"] / 3600)
+    assert 0 < cost["busy_share"] <= 1
     assert sum(cost["shares"].values()) == pytest.approx(1)
 
 
 def test_a_result_that_would_not_fit_is_told(rehearsed) -> None:
-    found = rehearsed(output={"netcdf": True})
+    found = rehearsed(netcdf=True)
     store, file, most = found.costs.store_bytes.likely, found.costs.file_bytes.likely, found.needed[1]
     fixed = found.frame_bytes + found.costs.marker_bytes
     assert found.needed[0] == pytest.approx(store + file + fixed)
@@ -247,7 +252,11 @@ def test_a_large_store_is_weighed_by_some_of_its_files(tmp_path, monkeypatch, fo
         (tmp_path / "all" / str(folder)).mkdir(parents=True)
         for file in range(files):
             (tmp_path / "all" / str(folder) / str(file)).write_bytes(b"x" * 30)
+    entered: list[object] = []
+    scandir = os.scandir
+    monkeypatch.setattr(os, "scandir", lambda place: entered.append(place) or scandir(place))
     assert rehearsal._bytes_below(tmp_path / "all") == pytest.approx(30 * folders * files)
+    assert len(entered) == 1 + min(folders, 5)
 
 
 def test_times_in_words() -> None:

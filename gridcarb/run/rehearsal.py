@@ -7,6 +7,7 @@ import os
 import random
 import time
 from collections.abc import Callable, Iterable, Mapping, Sequence
+from contextlib import ExitStack
 from dataclasses import dataclass, replace
 from pathlib import Path
 from shutil import rmtree
@@ -24,7 +25,7 @@ from gridcarb.run.report import Report, rehearsal_report
 from gridcarb.run.stopping import ends_tidily
 from gridcarb.run.task import Job, Record
 from gridcarb.run.watching import Watcher
-from gridcarb.sources import Collection
+from gridcarb.sources import Collection, close_all
 from gridcarb.sources.places import is_url, split
 from gridcarb.sources.storage import storage_kind
 from gridcarb.write.disk import free_bytes, sized
@@ -113,28 +114,45 @@ def rehearse(plan: Plan, watcher: Watcher, blocks: int = 3) -> Rehearsal:
     chosen = spread_blocks(steps, len(layout) // steps, blocks)
     sharing = blocks_per_chunk(layout, chunks)
     pairs = [(number, neighbour(layout, chunks, number) if sharing > 1 else None) for number in chosen]
-    with ends_tidily(), TemporaryDirectory(prefix="gridcarb-") as folder:
+    with ends_tidily(), TemporaryDirectory(prefix="gridcarb-") as folder, ExitStack() as after:
+        after.callback(close_all)
         watcher.message("preparing the chemistry (some fifteen seconds the first time on this machine)")
         _Stage(plan, Path(folder) / "first").do(_one_beside(chosen, len(layout)))
         rmtree(Path(folder) / "first")
         stage = _Stage(plan, Path(folder) / "measured")
-        done = [number for pair in pairs for number in pair if number is not None]
-        cells = {number: math.prod(layout.extent(layout.region(number))) for number in done}
-        watcher.start(len(done), sum(cells.values()))
-        samples = []
-        for number, beside in pairs:
-            sample = stage.measured(number, copy=plan.recipe.output.netcdf)
-            watcher.block_done(cells[number])
-            if beside is not None:
-                sample = blended(sample, stage.measured(beside, copy=False), sharing)
-                watcher.block_done(cells[beside])
-            samples.append(sample)
+        samples = _measured(stage, pairs, sharing, watcher)
     watcher.stop()
     found = costs(samples, cells=layout.cells, blocks=len(layout), cores=plan.workers * plan.recipe.engine.machines)
+    done = sorted({number for pair in pairs for number in pair if number is not None})
     return Rehearsal(
-        plan, tuple(sorted(done)), len(done) - len(pairs), sum(cells.values()), time.perf_counter() - begun, found,
-        bytes_of_inputs(plan.collection), stage.frame_files, stage.frame_bytes, free_bytes(plan.folder.target),
+        plan, tuple(done), len(done) - len(pairs), sum(_cells(layout, number) for number in done),
+        time.perf_counter() - begun, found, bytes_of_inputs(plan.collection), stage.frame_files, stage.frame_bytes,
+        free_bytes(plan.folder.target),
     )
+
+
+def _measured(
+    stage: _Stage, pairs: Sequence[tuple[int, int | None]], sharing: float, watcher: Watcher
+) -> list[Sample]:
+    """What each block took, blended with its neighbour where it has one."""
+    layout = stage.plan.layout
+    cells = [_cells(layout, number) for pair in pairs for number in pair if number is not None]
+    watcher.start(len(cells), sum(cells))
+    samples = []
+    for number, beside in pairs:
+        if beside is not None:
+            close_all()  # what an earlier pair has read must not help this one
+        sample = stage.measured(number, copy=stage.plan.recipe.output.netcdf)
+        watcher.block_done(_cells(layout, number))
+        if beside is not None:
+            sample = blended(sample, stage.measured(beside, copy=False), sharing)
+            watcher.block_done(_cells(layout, beside))
+        samples.append(sample)
+    return samples
+
+
+def _cells(layout: Layout, number: int) -> int:
+    return math.prod(layout.extent(layout.region(number)))
 
 
 class _Stage:
@@ -142,11 +160,11 @@ class _Stage:
 
     def __init__(self, plan: Plan, folder: Path) -> None:
         folder.mkdir()
-        self._plan, self._folder = plan, folder
+        self.plan, self._folder = plan, folder
         self._job: Job = replace(plan.job(folder), recipe="rehearsal", inputs="rehearsal")
         make_store(plan, folder / STORE, date_of_writing())
-        sizes = _sizes(folder)
-        self.frame_files, self.frame_bytes = len(sizes), sum(sizes.values())
+        found = _files(folder)
+        self.frame_files, self.frame_bytes = len(found), sum(size for size, _ in found.values())
 
     def do(self, number: int) -> Record:
         """Do a block and mark it."""
@@ -164,11 +182,11 @@ class _Stage:
 
     def measured(self, number: int, *, copy: bool) -> Sample:
         """Do a block and tell what it took; with `copy`, write it to a NetCDF file as well."""
-        before = _sizes(self._folder)
+        before = _files(self._folder)
         wall, busy = time.perf_counter(), time.process_time()
         record = self.do(number)
         wall, busy = time.perf_counter() - wall, time.process_time() - busy
-        new = {path: size for path, size in _sizes(self._folder).items() if path not in before}
+        new = {path: found[0] for path, found in _files(self._folder).items() if found != before.get(path)}
         markers = [size for path, size in new.items() if path.startswith(f"{LEDGER}/")]
         status = marker_of(self._job, record).status
         sample = Sample(
@@ -184,7 +202,7 @@ class _Stage:
     def _copied(self, record: Record) -> tuple[int, float]:
         """Bytes and seconds of a NetCDF file of one block, made as that of the run is."""
         store, file = self._folder / "piece.zarr", self._folder / FILE
-        keys = [field.key for field in self._plan.fields]
+        keys = [field.key for field in self.plan.fields]
         with xr.open_zarr(self._folder / STORE, consolidated=False, chunks=None, decode_cf=False) as whole:
             piece = whole[keys].isel(record.region, missing_dims="ignore").load().drop_vars(list(whole.coords))
         lengths = {}
@@ -294,6 +312,7 @@ def _summed(paths: Sequence[Path], most: int, of: Callable[[Path], float]) -> fl
     return len(paths) / len(some) * math.fsum(map(of, some)) if some else 0.0
 
 
-def _sizes(folder: Path) -> dict[str, int]:
-    """Place of every file below `folder` -> its bytes."""
-    return {path.relative_to(folder).as_posix(): path.stat().st_size for path in folder.rglob("*") if path.is_file()}
+def _files(folder: Path) -> dict[str, tuple[int, int]]:
+    """Place of every file below `folder` -> its bytes, and when it was written (ns)."""
+    found = {path: path.stat() for path in folder.rglob("*") if path.is_file()}
+    return {path.relative_to(folder).as_posix(): (stat.st_size, stat.st_mtime_ns) for path, stat in found.items()}

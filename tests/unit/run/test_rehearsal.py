@@ -146,6 +146,13 @@ def test_neighbours_are_done_where_blocks_share_chunks_of_the_source(rehearsed, 
     assert "2 of them to share chunks with another" in rows(found)["measured"]
 
 
+def test_a_block_may_be_its_neighbours_neighbour(rehearsed, watcher) -> None:
+    found, apart = rehearsed(blocks=18, cells=12), rehearsed(blocks=6, cells=36)
+    assert (len(found.blocks), found.neighbours, found.cells) == (18, 0, 1080)
+    assert (len(watcher.done), watcher.total) == (36 + 6, (6, 1080))
+    assert found.costs.chunk_files > 2.5 * apart.costs.chunk_files  # three times as many, but none of only fill
+
+
 def test_the_report_is_the_plan_and_a_section_more(rehearsed) -> None:
     found = rehearsed(netcdf=True)
     plain, told = found.plan.report(), found.report()

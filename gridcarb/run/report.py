@@ -205,7 +205,8 @@ def _spanned(span: Span, words: Callable[[float], str]) -> str:
 
 def _figures(amount: float) -> str:
     """Three figures, without an exponent where that can be helped: ``12,300``."""
-    return f"{float(f'{amount:.3g}'):,g}"
+    rounded = float(f"{amount:.3g}")
+    return f"{rounded:,.0f}" if rounded >= 1000 else f"{rounded:g}"
 
 
 def _hours(hours: float) -> str:

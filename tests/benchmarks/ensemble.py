@@ -56,11 +56,12 @@ def ocean(folder: Path, rows: int = ROWS, columns: int = COLUMNS, years: tuple[i
         truth = grids.sample(longitude, latitude, depth["lev"], months["year"][:1])
         return dress(truth, depth["lev"], latitude, Clothes())
 
+    fill = float(np.float32(FILL))  # to the bit what a field of single precision holds
     shape, one = (months.sizes["time"], depth.sizes["lev"], rows, columns), dressed(slice(1), slice(1))
     for name, field in one.data_vars.items():
         attributes = {key: value for key, value in field.attrs.items() if key not in ("_FillValue", "missing_value")}
-        group.create_array(str(name), shape=shape, dtype="f4", chunks=CHUNK, fill_value=FILL, dimension_names=field.dims,
-                           attributes={**attributes, "missing_value": FILL})
+        group.create_array(str(name), shape=shape, dtype="f4", chunks=CHUNK, fill_value=fill, dimension_names=field.dims,
+                           attributes={**attributes, "missing_value": fill})
 
     def put(corner: tuple[int, int]) -> None:
         box = tuple(slice(at, at + length) for at, length in zip(corner, CHUNK[2:], strict=True))
@@ -84,12 +85,8 @@ def rehearsed(folder: Path, source: Path, blocks: int) -> dict[str, Any]:
         f"recipe: 1\ninputs: {{files: {source}}}\nreading: {{salinity: practical, density: 1026 kg m-3}}\n"
         f"chemistry: {{fields: [{', '.join(FIELDS)}]}}\noutput: {{folder: result}}\n"
     )
-    command = [str(Path(sys.executable).with_name("gridcarb")), "plan", str(recipe), "--rehearse", str(blocks)]
-    for words in ([], ["--json"]):
-        done = subprocess.run([*command, *words], stdout=subprocess.PIPE, text=True, check=True)
-        if not words:
-            print(done.stdout, flush=True)
-    told: dict[str, Any] = json.loads(done.stdout)
+    command = [str(Path(sys.executable).with_name("gridcarb")), "plan", str(recipe), "--rehearse", str(blocks), "--json"]
+    told: dict[str, Any] = json.loads(subprocess.run(command, stdout=subprocess.PIPE, text=True, check=True).stdout)
     return told
 
 
@@ -110,7 +107,8 @@ def table(told: Mapping[str, Any]) -> str:
              "|---|---|---|"]  # fmt: skip
     lines += [f"| {name} | {_words(each, unit)} | {_words(MEMBERS * each, unit)} |" for name, (unit, each) in rows.items()]
     measured = f"Measured on {len(cost['blocks'])} blocks; {cost['wet_share']:.0%} of their cells were water."
-    return "\n".join([*lines, "", f"{measured} Spent on {shares}.", ""])
+    spent = f"Spent on {shares};\nthe core computed for {cost['busy_share']:.0%} of the time, else it waited."
+    return "\n".join([*lines, "", measured, spent, ""])
 
 
 def _words(amount: float, unit: str) -> str:
@@ -119,7 +117,8 @@ def _words(amount: float, unit: str) -> str:
         return next(f"{amount / size:.3g} {name}" for size, name in ((1e12, "TB"), (1e9, "GB"), (1e6, "MB"), (1, "B"))
                     if amount >= size)
     mantissa, _, exponent = f"{amount:.2e}".partition("e")
-    return f"{mantissa}e{int(exponent)}" if amount >= 1e7 else f"{float(f'{amount:.3g}'):,g}"
+    rounded = float(f"{amount:.3g}")
+    return f"{mantissa}e{int(exponent)}" if amount >= 1e7 else f"{rounded:,.0f}" if amount >= 1000 else f"{rounded:g}"
 
 
 def main() -> None:

@@ -249,6 +249,12 @@ def test_bytes_of_files_and_of_stores(recipe, ocean, ocean_file, tmp_path) -> No
     dataset.assign(unread=unread).to_zarr(store, encoding=encoding, consolidated=False)
     read = [path for name in dataset.data_vars for path in (store / str(name)).rglob("*") if path.is_file()]
     assert bytes_of_inputs(prepare(recipe(store)).collection) == sum(path.stat().st_size for path in read)
+    inner = tmp_path / "groups.zarr"
+    dataset[["so"]].to_zarr(inner, encoding={"so": encoding["so"]}, consolidated=False)
+    rest = {name: words for name, words in encoding.items() if name != "so"}
+    dataset.drop_vars("so").to_zarr(inner, group="model", encoding=rest, consolidated=False)
+    grouped = prepare(recipe(f"{inner}#model")).collection  # which lends the salinity from the group above
+    assert bytes_of_inputs(grouped) == sum(path.stat().st_size for path in read)
 
 
 @pytest.mark.parametrize(("folders", "files"), [(1, 40), (40, 1), (7, 13)])

@@ -17,7 +17,7 @@ Word = Annotated[str, StringConstraints(min_length=1, strip_whitespace=True)]
 
 
 class BlockSettings(Settings):
-    """A stated block size, for those who know better than the planner."""
+    """A stated block size, for those who know better than the planner; rounded up to whole chunks of the store."""
 
     time: Count | None = Field(None, description="time steps of one block; default: chosen by the planner")
     cells: Count | None = Field(None, description="grid columns of one block; default: chosen by the planner")

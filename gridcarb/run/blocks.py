@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
@@ -10,9 +11,16 @@ from gridcarb.axes import Axes
 
 Region = dict[str, slice]
 
-_CHUNK_BYTES = 2 * 2**20
-"""A stored chunk of a field aims at this size: large enough to compress and to read at one seek, small enough that one
-level of one month does not cost a whole water column of a decade."""
+_UNIT_CELLS = 2**19
+"""Cells of the smallest block of a large grid: its chunks are large enough to compress and to read at one seek, and a small
+machine can hold it. It does not depend on the engine, so that every engine leaves the same files."""
+
+_FEWEST_CELLS = 100_000
+"""Cells that are worth a task of their own."""
+
+_CHUNK_BYTES = 2**20
+"""A stored chunk of a field aims at this size: whole water columns are split into a few pieces, so that one level of a map
+does not cost all of them."""
 
 
 @dataclass(frozen=True)
@@ -46,6 +54,16 @@ class Layout:
         """Cells of the largest block."""
         return math.prod(self.block.values())
 
+    def numbers(self, source_chunks: Mapping[str, int]) -> Iterator[int]:
+        """Every block, those that read the same chunks of the source one after the other."""
+        group = [max(1, round(source_chunks.get(dim, 1) / self.block[dim])) for dim in self.sizes]
+        strides = [math.prod(self.counts[place + 1:]) for place in range(len(self.counts))]
+        corners = (range(0, count, step) for count, step in zip(self.counts, group, strict=True))
+        for corner in itertools.product(*corners):
+            parts = (range(at, min(at + step, count)) for at, step, count in zip(corner, group, self.counts, strict=True))
+            for place in itertools.product(*parts):
+                yield sum(at * stride for at, stride in zip(place, strides, strict=True))
+
     def region(self, number: int) -> Region:
         """The part of the grid that block `number` (0-based, the last dimension fastest) covers."""
         found: Region = {}
@@ -66,60 +84,88 @@ class Layout:
 
 def lay_out(
     sizes: Mapping[str, int], axes: Axes, *, cells: int, workers: int, source_chunks: Mapping[str, int],
-    stated: Mapping[str, int], item_bytes: int,
+    block: Mapping[str, int], chunks: Mapping[str, int], item_bytes: int,
 ) -> Layout:
-    """Cut a grid into blocks of at most `cells` cells.
+    """Cut a grid into blocks of at most `cells` cells, or of one unit where that has more.
+
+    A unit is the part of the map and of the time that one chunk of the store covers, with the whole water column. It
+    follows from the grid, the chunks of the input and `chunks` alone; a block is a number of units.
 
     Parameters
     ----------
     sizes : dimension -> length in canonical order.
     cells : most cells of a block.
     workers : there should be some blocks for each of them, if the blocks do not become tiny.
-    source_chunks : dimension -> chunk length of the input; a cut falls on its edges where that is possible.
-    stated : "time" and "cells" (grid columns) where the recipe states them.
+    source_chunks : dimension -> chunk length of the input; units and blocks fill these one after the other.
+    block, chunks : "time" and "cells" (grid columns) where the recipe states them, of chunks also "levels".
     item_bytes : bytes of a stored value.
     """
     levels = sizes[axes.vertical] if axes.vertical else 1
-    columns = math.prod(sizes[dim] for dim in axes.horizontal)
-    steps = sizes[axes.time] if axes.time else 1
-    enough = max(levels, min(cells, _shared(levels * columns * steps, workers)))
-    block = dict(sizes)
-    fewest = stated.get("cells") or min(columns, max(1, enough // levels))
-    block.update(_piece_of_map(sizes, axes, fewest, source_chunks))
-    if axes.time:
-        per_step = levels * math.prod(block[dim] for dim in axes.horizontal)
-        wanted = stated.get("time") or max(1, enough // per_step)
-        block[axes.time] = _on_edges(min(wanted, steps), source_chunks.get(axes.time, 1))
-    return Layout(dict(sizes), block, _chunks(block, axes, item_bytes))
+    total = math.prod(sizes.values())
+    bounds = {dim: min(source_chunks.get(dim, 1), size) for dim, size in sizes.items()}
+    few = max(_FEWEST_CELLS, min(_UNIT_CELLS, math.ceil(total / 16)))
+    unit = _grown(dict.fromkeys(sizes, 1), sizes, axes, bounds, room=max(1, few // levels), stated=chunks)
+    places = _count(unit, sizes, axes)
+    enough = min(cells, max(_FEWEST_CELLS, math.ceil(total / (4 * workers))))
+    lengths = _grown(unit, sizes, axes, bounds, room=max(places, enough // levels), stated=block)
+    if axes.vertical:
+        unit[axes.vertical] = _levels(chunks.get("levels"), levels, places * levels * item_bytes)
+        lengths[axes.vertical] = levels
+    return Layout(dict(sizes), lengths, unit)
 
 
-def _shared(cells: int, workers: int) -> int:
-    """Cells of a block when every worker gets four, but not fewer than are worth a task."""
-    worth_a_task = 100_000
-    return max(worth_a_task, math.ceil(cells / (4 * workers)))
+def _grown(
+    lengths: Mapping[str, int], sizes: Mapping[str, int], axes: Axes, bounds: Mapping[str, int], *, room: int,
+    stated: Mapping[str, int],
+) -> dict[str, int]:
+    """Multiply lengths while the columns times steps they hold stay within `room`, or until those `stated` are reached.
 
-
-def _piece_of_map(sizes: Mapping[str, int], axes: Axes, columns: int, source: Mapping[str, int]) -> dict[str, int]:
-    """Whole rows as long as they fit, then pieces of one row."""
-    found: dict[str, int] = {}
-    room = columns
-    for dim in reversed(axes.horizontal):
-        found[dim] = _on_edges(min(sizes[dim], max(1, room)), source.get(dim, 1), sizes[dim])
-        room //= found[dim]
+    First a chunk of the source is filled, its columns and then its steps; then the map, row by row, and then the time.
+    """
+    found = dict(lengths)
+    if axes.time and "time" in stated:
+        found[axes.time] = _whole(stated["time"], lengths[axes.time], sizes[axes.time])
+    order = [*axes.horizontal[::-1], *([axes.time] if axes.time and "time" not in stated else [])]
+    for limits, dim in itertools.product((bounds, sizes), order):
+        if "cells" in stated and dim != axes.time:
+            space = stated["cells"] / math.prod(found[each] for each in axes.horizontal)
+        else:
+            space = room / _count(found, sizes, axes)
+        count = math.ceil(limits[dim] / found[dim])
+        times = _share(count, space)
+        found[dim] = min(found[dim] * times, sizes[dim])
+        if times < count:
+            break
     return found
 
 
-def _on_edges(length: int, chunk: int, whole: int = 0) -> int:
-    """`length`, shortened to a multiple of the source's chunk where it holds at least one; a whole stays whole."""
-    return length if length < chunk or length == whole else length - length % chunk
+def _count(lengths: Mapping[str, int], sizes: Mapping[str, int], axes: Axes) -> int:
+    """Columns times steps."""
+    return math.prod(lengths[dim] for dim in sizes if dim != axes.vertical)
 
 
-def _chunks(block: Mapping[str, int], axes: Axes, item_bytes: int) -> dict[str, int]:
-    chunks = dict(block)
-    if axes.vertical:
-        layer = math.prod(length for dim, length in block.items() if dim != axes.vertical) * item_bytes
-        chunks[axes.vertical] = min(block[axes.vertical], max(1, round(_CHUNK_BYTES / layer)))
-    return chunks
+def _whole(wanted: int, unit: int, size: int) -> int:
+    """`wanted`, rounded up to whole units."""
+    return min(size, unit * math.ceil(wanted / unit))
+
+
+def _share(count: int, room: float) -> int:
+    """How many of `count` to take together so that they fall into parts of about the same length, none above `room`; one
+    where there is no room. Parts that come out even are preferred, if they are not much shorter."""
+    if count <= room:
+        return count
+    even = math.ceil(count / math.ceil(count / max(1, math.floor(room))))
+    divisor = max(part for part in range(1, even + 1) if count % part == 0)
+    return divisor if 4 * divisor >= 3 * even else even
+
+
+def _levels(stated: int | None, levels: int, unit_bytes: int) -> int:
+    return min(levels, stated or math.ceil(levels / math.ceil(unit_bytes / _CHUNK_BYTES)))
+
+
+def cells_per_unit(layout: Layout, axes: Axes) -> int:
+    """Cells of the smallest block there can be, one chunk of the store with the whole water column."""
+    return math.prod(layout.block[dim] if dim == axes.vertical else layout.chunks[dim] for dim in layout.sizes)
 
 
 def halves(region: Region, axes: Axes) -> tuple[Region, ...]:
@@ -143,3 +189,12 @@ def reads_of_a_chunk(layout: Layout, source_chunks: Mapping[str, int]) -> int:
         starts = range(0, size, chunk)[:10_000]
         most *= max((min(start + chunk, size) - 1) // block - start // block + 1 for start in starts)
     return most
+
+
+def shared_part(layout: Layout, source_chunks: Mapping[str, int]) -> Region | None:
+    """The part of the grid whose chunks of the source are shared by blocks that are done one after the other; None where
+    every block holds whole chunks."""
+    if reads_of_a_chunk(layout, source_chunks) == 1:
+        return None
+    return {dim: slice(0, min(size, max(source_chunks.get(dim, 1), layout.block[dim])))
+            for dim, size in layout.sizes.items()}  # fmt: skip

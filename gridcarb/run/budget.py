@@ -10,6 +10,9 @@ from gridcarb.errors import BudgetError
 DEFAULT_TASK_BYTES = 200_000_000
 """What one task may take when the recipe states no memory."""
 
+DEFAULT_KEPT_BYTES = 128_000_000
+"""What unpacked chunks of the source may take when the recipe states no memory."""
+
 PROGRAM_BYTES = 400_000_000
 """What the process takes before the first block, for libraries and the compiler (measured); it comes on top."""
 
@@ -51,27 +54,44 @@ class Footprint:
         return max(0, (allowed - _SCRATCH_BYTES) // self.bytes_per_cell)
 
 
-def allowed_per_task(memory: int | None, workers: int) -> int:
-    """Bytes one task may take: its share of the memory stated, else the default."""
-    return DEFAULT_TASK_BYTES if memory is None else memory // workers
+def allowed_per_task(memory: int | None, workers: int, kept: int = 0) -> int:
+    """Bytes one task may take: its share of the memory stated without the chunks `kept`, else the default."""
+    return DEFAULT_TASK_BYTES if memory is None else (memory - kept) // workers
 
 
-def refuse_over_budget(footprint: Footprint, cells: int, *, column: int, memory: int | None, workers: int) -> None:
+def kept_per_process(shared: int, memory: int | None, processes: int, tasks: int) -> int:
+    """Bytes of unpacked chunks that each process keeps, so that blocks which share a chunk of the source read it once.
+
+    shared : bytes of the chunks that blocks read one after the other share; 0 where none do.
+    tasks : bytes that the smallest blocks of all workers take, which come first.
+
+    Twice as much is kept where there is room, since workers do not all come to the next chunks at once; nothing where there
+    is too little, since each chunk would be dropped before it is needed again.
+    """
+    room = (DEFAULT_KEPT_BYTES if memory is None else min(memory // 2, memory - tasks)) // processes
+    return min(2 * shared, room) if shared <= room else 0
+
+
+def refuse_over_budget(
+    footprint: Footprint, cells: int, *, column: int, unit: int, memory: int | None, workers: int, kept: int = 0
+) -> None:
     """Raise BudgetError if a block of `cells` cells would not fit, with the size that would.
 
-    column : cells of the smallest block there is, one water column at one time.
+    column : cells of one water column at one time. unit : cells of the smallest block. kept : bytes of unpacked chunks.
     """
-    needed, allowed = footprint.projected(cells), allowed_per_task(memory, workers)
+    needed, allowed = footprint.projected(cells), allowed_per_task(memory, workers, kept)
     if needed <= allowed:
         return
-    ways = [f"write `memory: {math.ceil(needed * workers / 1e8) / 10:.1f} GB`"]
-    if memory and workers > 1 and needed <= memory:
-        ways.append(f"`workers: {memory // needed}`")
+    total = needed * workers + kept
+    ways = [f"write `memory: {math.ceil(total / 1e8) / 10:.1f} GB`"]
+    if memory and workers > 1 and needed + kept <= memory:
+        ways.append(f"`workers: {(memory - kept) // needed}`")
     columns = footprint.cells_within(allowed) // column
-    if columns:
+    if columns and cells > unit:
         ways.append(f"a smaller `block`, of at most {columns:,} columns times steps")
+    more = f"; or smaller chunks of the store: `output: {{chunks: {{time: 1, cells: {columns}}}}}`" if columns else ""
     raise BudgetError(
         f"a block of {cells:,} cells would take {needed / 1e6:,.1f} MB, and each of {workers} workers has "
         f"{allowed / 1e6:,.1f} MB",
-        where="engine", mend=f"{' or '.join(ways)} under `engine` in the recipe",
+        where="engine", mend=f"{' or '.join(ways)} under `engine` in the recipe{more if cells <= unit else ''}",
     )

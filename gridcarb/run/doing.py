@@ -17,6 +17,7 @@ from gridcarb.run.order import placed_order
 from gridcarb.run.resume import Start
 from gridcarb.run.task import Record
 from gridcarb.run.watching import Watcher
+from gridcarb.sources import keep_chunks
 
 _TOLD = 10
 """Failed blocks that are told one by one; the event log and the ledger hold all."""
@@ -37,6 +38,7 @@ def do_blocks(start: Start, watcher: Watcher, add: Callable[[Record], None]) -> 
             spent = time.perf_counter() - begun
             watcher.start(start.blocks_left, start.cells_left)
             work_through(crew, order, start.to_do(), retries=engine.retries, onlooker=book)
+        keep_chunks(0)
         watcher.stop()
         book.tell()
     return spent

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import math
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -16,8 +17,8 @@ from gridcarb.figures import FIGURES
 from gridcarb.harmonise import Understanding
 from gridcarb.recipe import Recipe
 from gridcarb.recipe.text import parse
-from gridcarb.run.blocks import Layout, lay_out, reads_of_a_chunk
-from gridcarb.run.budget import Footprint, allowed_per_task, refuse_over_budget
+from gridcarb.run.blocks import Layout, cells_per_unit, lay_out, reads_of_a_chunk, shared_part
+from gridcarb.run.budget import Footprint, allowed_per_task, kept_per_process, refuse_over_budget
 from gridcarb.run.engines import cores
 from gridcarb.run.findings import Finding, assumptions, stops
 from gridcarb.run.inspection import Inspection, inspect
@@ -43,6 +44,7 @@ class Plan:
 
     fields : what will be written, the status last, as it will be written (per mass or per volume).
     footprint, allowed : memory of a cell, and of a task, in bytes.
+    kept : bytes of unpacked chunks of the source that each process keeps for blocks that share them.
     survey, findings : the whole report of the audit.
     """
 
@@ -54,6 +56,7 @@ class Plan:
     workers: int
     footprint: Footprint
     allowed: int
+    kept: int
     folder: ResultFolder
     survey: Survey
     notices: tuple[Notice, ...] = ()
@@ -71,15 +74,43 @@ class Plan:
         cells = self.layout.cells
         return sum(cells * (1 if field.part == "status" else width) for field in self.fields)
 
+    @property
+    def processes(self) -> int:
+        """How many processes of one machine share its memory."""
+        return 1 if self.recipe.engine.chosen == "threads" else self.workers
+
+    def check_budget(self) -> None:
+        """Raise BudgetError if a block would take more memory than there is."""
+        axes = self.collection.axes
+        refuse_over_budget(
+            self.footprint, self.layout.cells_per_block, column=self.layout.sizes.get(axes.vertical or "", 1),
+            unit=cells_per_unit(self.layout, axes), memory=self.recipe.engine.memory_bytes, workers=self.workers,
+            kept=self.processes * self.kept,
+        )  # fmt: skip
+
     def reads_of_a_chunk(self) -> int:
         """How often a chunk of the source is read, at most."""
+        return 1 if self.kept else self.blocks_of_a_chunk()
+
+    def memory_to_read_once(self) -> int:
+        """Bytes of `memory` with which no chunk of the source would be read twice."""
+        shared = _shared_bytes(self.layout, self.collection)
+        tasks = self.workers * self.footprint.projected(cells_per_unit(self.layout, self.collection.axes))
+        return max(2 * shared * self.processes, shared * self.processes + tasks)
+
+    def blocks_of_a_chunk(self) -> int:
+        """How many blocks need the same chunk of the source, at most."""
         return reads_of_a_chunk(self.layout, source_chunks(self.collection))
+
+    def numbers(self) -> Iterator[int]:
+        """Every block, those that share chunks of the source one after the other."""
+        return self.layout.numbers(source_chunks(self.collection))
 
     def job(self, partial: Path) -> Job:
         """What the blocks have in common, for a store in the folder `partial`."""
         return Job(
             self.collection, self.understanding, self.layout, self.fields, self.recipe.chemistry.constants,
-            self.recipe.output.amounts == "per volume", self.recipe.output.precision, partial / STORE,
+            self.recipe.output.amounts == "per volume", self.recipe.output.precision, partial / STORE, self.kept,
         )
 
     def report(self) -> Report:
@@ -146,11 +177,18 @@ def _plan(
     fields = _fields(recipe, understanding)
     workers = recipe.engine.workers or cores()
     footprint = _footprint(recipe, collection, fields)
-    allowed = allowed_per_task(recipe.engine.memory_bytes, workers)
-    layout = _layout(recipe, collection, footprint, allowed, workers * recipe.engine.machines)
-    column = layout.sizes[collection.axes.vertical] if collection.axes.vertical else 1
-    refuse_over_budget(footprint, layout.cells_per_block, column=column, memory=recipe.engine.memory_bytes, workers=workers)
-    return Plan(recipe, collection, understanding, layout, fields, workers, footprint, allowed, folder, seen.survey)
+    memory, processes = recipe.engine.memory_bytes, 1 if recipe.engine.chosen == "threads" else workers
+    kept, allowed = 0, allowed_per_task(memory, workers)
+    layout = _layout(recipe, collection, footprint, allowed, workers)
+    shared = _shared_bytes(layout, collection)
+    if shared:
+        tasks = workers * footprint.projected(cells_per_unit(layout, collection.axes))
+        kept = kept_per_process(shared, memory, processes, tasks)
+        allowed = allowed_per_task(memory, workers, processes * kept)
+        layout = _layout(recipe, collection, footprint, allowed, workers)
+    plan = Plan(recipe, collection, understanding, layout, fields, workers, footprint, allowed, kept, folder, seen.survey)
+    plan.check_budget()
+    return plan
 
 
 def _check_figures(recipe: Recipe, raw: xr.Dataset, faults: Faults) -> None:
@@ -199,9 +237,19 @@ def _footprint(recipe: Recipe, collection: Collection, fields: Sequence[Field]) 
 
 def _layout(recipe: Recipe, collection: Collection, footprint: Footprint, allowed: int, workers: int) -> Layout:
     axes = collection.axes
-    block = recipe.engine.block
-    stated = {key: value for key, value in (block.model_dump() if block else {}).items() if value}
+    block, chunks = ({key: value for key, value in (each.model_dump() if each else {}).items() if value}
+                     for each in (recipe.engine.block, recipe.output.chunks))  # fmt: skip
     return lay_out(
-        {dim: collection.sizes[dim] for dim in axes.order}, axes, cells=footprint.cells_within(allowed), workers=workers,
-        source_chunks=source_chunks(collection), stated=stated, item_bytes=footprint.item_bytes,
+        {dim: collection.sizes[dim] for dim in axes.order}, axes, cells=footprint.cells_within(allowed),
+        workers=workers * recipe.engine.machines, source_chunks=source_chunks(collection), block=block, chunks=chunks,
+        item_bytes=footprint.item_bytes,
     )  # fmt: skip
+
+
+def _shared_bytes(layout: Layout, collection: Collection) -> int:
+    """Bytes, unpacked, of the chunks of all roles that blocks share which are done one after the other."""
+    part = shared_part(layout, source_chunks(collection))
+    if part is None:
+        return 0
+    sources = [role.array for role in collection.roles.values()]
+    return sum(math.prod(part[dim].stop for dim in source.dims) * np.dtype(source.dtype).itemsize for source in sources)

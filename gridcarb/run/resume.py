@@ -9,7 +9,6 @@ from pathlib import Path
 from typing import Literal
 
 from gridcarb.errors import Notice, OutputError
-from gridcarb.run.budget import refuse_over_budget
 from gridcarb.run.charter import Charter
 from gridcarb.run.frame import make_store
 from gridcarb.run.plan import STORE, Plan
@@ -58,7 +57,7 @@ class Start:
 
     def to_do(self) -> Iterator[int]:
         """The blocks still to be done, in order."""
-        return (block for block in range(len(self.plan.layout)) if block not in self.done)
+        return (block for block in self.plan.numbers() if block not in self.done)
 
     def job(self) -> Job:
         """What the blocks have in common."""
@@ -157,9 +156,7 @@ def _go_on(plan: Plan, ledger: Ledger, old: Charter, now: datetime, notices: tup
             mend=f"take the change back and use --resume, or begin again with --anew (the {ledger.count():,} blocks that "
             "are finished are lost then)",
         )
-    column = layout.sizes.get(plan.collection.axes.vertical or "", 1)
-    memory = plan.recipe.engine.memory_bytes
-    refuse_over_budget(plan.footprint, layout.cells_per_block, column=column, memory=memory, workers=plan.workers)
+    plan.check_budget()
     _refuse_damaged_frame(plan.folder.partial / STORE, old)
     ledger.sweep()
     sweep_store(plan.folder.partial / STORE)

@@ -18,7 +18,7 @@ from gridcarb.fields import Field
 from gridcarb.harmonise import Understanding, clothe, weights
 from gridcarb.products import PRODUCTS, Tally
 from gridcarb.run.blocks import Layout, Region, halves
-from gridcarb.sources import Collection, open_collection
+from gridcarb.sources import Collection, keep_chunks, open_collection
 from gridcarb.sources.storage import stamp
 from gridcarb.write.amounts import per_volume
 from gridcarb.write.encoding import Precision, dims_of, dtype_of, stored
@@ -29,6 +29,7 @@ from gridcarb.write.store import Written, write_block
 class Job:
     """What every block of a run has in common; plain data that travels to the workers once.
 
+    kept : bytes of unpacked chunks of the source a process keeps for the blocks that share them.
     recipe, inputs : digests of what the run is made of, for the marks of its blocks.
     """
 
@@ -40,6 +41,7 @@ class Job:
     volumes: bool
     precision: Precision
     store: Path
+    kept: int = 0
     recipe: str = ""
     inputs: str = ""
 
@@ -110,6 +112,7 @@ def _mend(error: Exception) -> str:
 
 
 def _run_block(job: Job, number: int, parts: int) -> Record:
+    keep_chunks(job.kept)
     clock = _Clock()
     region = job.layout.region(number)
     share = _solve(job, region, clock) if parts == 1 else _solve_halves(job, region, clock)

@@ -12,7 +12,7 @@ from xarray.backends import BackendArray
 from xarray.core.indexing import ExplicitIndexer, IndexingSupport, LazilyIndexedArray, explicit_indexing_adapter
 
 from gridcarb.sources.collection import ArraySource, Collection, Segment
-from gridcarb.sources.handles import read
+from gridcarb.sources.kept_chunks import read
 
 
 class SegmentedArray(BackendArray):

@@ -14,7 +14,7 @@ import numpy.typing as npt
 
 from gridcarb.errors import InputError
 from gridcarb.sources.places import is_url, reached, split
-from gridcarb.sources.stored import Head, Key, choose_group, no_group
+from gridcarb.sources.stored import Head, Key, Lengths, choose_group, no_group
 
 MOST_COPIED = 4 * 2**30
 """Bytes of the largest NetCDF file that is fetched from behind a URL; HDF5 cannot read parts of one there."""
@@ -52,6 +52,10 @@ class NetcdfFile:
 
     def heads(self) -> dict[str, Head]:
         return {name: _head(name, variable) for name, variable in self._variables.items()}
+
+    def layout(self, name: str) -> Lengths:
+        head = _head(name, self._variables[name])
+        return head.shape, head.dtype, head.chunks
 
     def read(self, name: str, key: Key) -> npt.NDArray[Any]:
         return np.asarray(self._variables[name][key if key else ...])

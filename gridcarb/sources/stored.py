@@ -15,6 +15,8 @@ Key = tuple[Any, ...]
 """One integer, slice with a positive step or sorted 1-D integer array for each dimension; arrays select each dimension
 by itself."""
 
+Lengths = tuple[tuple[int, ...], "np.dtype[Any]", tuple[int, ...] | None]
+
 POINTERS = ("coordinates", "bounds", "climatology")
 
 
@@ -44,6 +46,10 @@ class Stored(Protocol):
 
     def read(self, name: str, key: Key) -> npt.NDArray[Any]:
         """Part of a variable; KeyError if there is no such variable."""
+        ...
+
+    def layout(self, name: str) -> Lengths:
+        """Shape, type and chunks of a variable, None where it is contiguous; KeyError if there is no such variable."""
         ...
 
     def close(self) -> None:

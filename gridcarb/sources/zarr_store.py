@@ -11,7 +11,7 @@ import xarray as xr
 import zarr
 
 from gridcarb.sources.places import split
-from gridcarb.sources.stored import Head, Key, choose_group, no_group
+from gridcarb.sources.stored import Head, Key, Lengths, choose_group, no_group
 
 _AS_STORED: dict[str, Any] = {
     "engine": "zarr", "consolidated": False, "chunks": None, "decode_cf": False, "mask_and_scale": False,
@@ -53,6 +53,10 @@ class ZarrStore:
 
     def read(self, name: str, key: Key) -> npt.NDArray[Any]:
         return np.asarray(self._variables[name][key].values)
+
+    def layout(self, name: str) -> Lengths:
+        head = heads_of({name: self._variables[name]})[name]
+        return head.shape, head.dtype, head.chunks
 
     def close(self) -> None:
         for dataset in self._open:

@@ -2,11 +2,21 @@
 
 from __future__ import annotations
 
-from typing import Literal
+from typing import Annotated, Literal
 
 from pydantic import Field
 
 from gridcarb.settings import Settings
+
+Count = Annotated[int, Field(ge=1, strict=True)]
+
+
+class ChunkSettings(Settings):
+    """How long the chunks of the stored fields are; a block of a run is made of whole ones."""
+
+    time: Count | None = Field(None, description="time steps of one chunk; default: chosen by the planner")
+    cells: Count | None = Field(None, description="grid columns of one chunk; default: chosen by the planner")
+    levels: Count | None = Field(None, description="levels of one chunk; default: chosen by the planner")
 
 
 class OutputSettings(Settings):
@@ -16,6 +26,7 @@ class OutputSettings(Settings):
     replace: bool = Field(False, description="true: a result of this name is replaced once the new one is complete")
     zarr: bool = Field(True, description="keep the Zarr store")
     zarr_format: Literal[2, 3] = Field(3, description="Zarr format of the store")
+    chunks: ChunkSettings | None = Field(None, description="stated chunks of the store; default: chosen by the planner")
     netcdf: bool = Field(True, description="export a NetCDF-4 file")
     precision: Literal["float32", "float64"] = Field("float32", description="how fields are stored")
     amounts: Literal["per mass", "per volume"] = Field(

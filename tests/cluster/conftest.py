@@ -100,11 +100,12 @@ def write_recipe(ocean_file: Path) -> Callable[..., Path]:
     """Write a recipe whose result is `folder`; by default a run of 72 blocks."""
 
     def write(folder: Path, **engine: Any) -> Path:
+        block = {"time": 1, "cells": 24}
         base = {
             "recipe": 1, "inputs": {"files": str(ocean_file)}, "reading": {"density": "1026 kg m-3"},
             "chemistry": {"fields": ["ph_total_scale", "aragonite_saturation"]},
-            "engine": {"workers": 2, "block": {"time": 1, "cells": 24}, **engine},
-            "output": {"folder": str(folder), "netcdf": False},
+            "engine": {"workers": 2, "block": block, **engine},
+            "output": {"folder": str(folder), "netcdf": False, "chunks": block},
         }
         path = folder.with_suffix(".yaml")
         path.write_text(json.dumps(base))

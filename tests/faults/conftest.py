@@ -97,6 +97,8 @@ def place(tmp_path: Path, ocean_file: Path) -> Iterator[Callable[..., Place]]:
         }
         for section, words in sections.items():
             base[section] = base[section] | words
+        if base["engine"].get("block"):  # of such a small grid the planner would make one chunk
+            base["output"].setdefault("chunks", base["engine"]["block"])
         recipe = tmp_path / f"recipe{len(made)}.yaml"
         recipe.write_text(json.dumps(base))
         made.append(Place(folder, recipe))

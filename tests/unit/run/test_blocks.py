@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import itertools
 import math
+from itertools import pairwise
+from typing import Any
 
 import numpy as np
 import pytest
@@ -10,7 +13,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from gridcarb.axes import Axes
-from gridcarb.run.blocks import Layout, lay_out, reads_of_a_chunk
+from gridcarb.run.blocks import Layout, cells_per_unit, lay_out, reads_of_a_chunk
 
 MAP, CELLS, COLUMN = ("y", "x"), ("cell",), ()
 
@@ -20,16 +23,16 @@ def axes_of(time: bool, vertical: bool, horizontal: tuple[str, ...]) -> Axes:
 
 
 @st.composite
-def layouts(draw: st.DrawFn) -> tuple[Layout, Axes, dict[str, int], int, dict[str, int]]:
-    """A grid of any kind, cut under any limit: the layout, its axes, chunks of the source, the limit, what was stated."""
+def layouts(draw: st.DrawFn) -> tuple[Layout, Axes, dict[str, int], dict[str, Any]]:
+    """A grid of any kind, cut under any limit: the layout, its axes, chunks of the source, and how it was asked for."""
     axes = axes_of(draw(st.booleans()), draw(st.booleans()), draw(st.sampled_from((MAP, CELLS, COLUMN))))
     sizes = {dim: draw(st.integers(1, 9)) for dim in axes.order}
     source = {dim: draw(st.integers(1, size)) for dim, size in sizes.items() if draw(st.booleans())}
-    stated = {key: draw(st.integers(1, 12)) for key in ("time", "cells") if draw(st.booleans())}
-    cells = draw(st.integers(0, 400))
-    layout = lay_out(sizes, axes, cells=cells, workers=draw(st.integers(1, 4)), source_chunks=source, stated=stated,
-                     item_bytes=draw(st.sampled_from((4, 8, 300_000))))
-    return layout, axes, source, cells, stated
+    block = {key: draw(st.integers(1, 12)) for key in ("time", "cells") if draw(st.booleans())}
+    chunks = {key: draw(st.integers(1, 12)) for key in ("time", "cells", "levels") if draw(st.booleans())}
+    asked = {"cells": draw(st.integers(0, 400)), "workers": draw(st.integers(1, 4)), "block": block, "chunks": chunks,
+             "item_bytes": draw(st.sampled_from((4, 8, 300_000)))}
+    return lay_out(sizes, axes, source_chunks=source, **asked), axes, source, asked
 
 
 @given(layouts())
@@ -55,29 +58,53 @@ def test_blocks_are_whole_columns_and_whole_chunks(drawn) -> None:
 
 
 @given(layouts())
-def test_a_block_keeps_the_limit_unless_one_column_is_more(drawn) -> None:
-    layout, axes, _, cells, stated = drawn
-    levels = layout.sizes[axes.vertical] if axes.vertical else 1
+def test_a_block_keeps_the_limit_unless_one_unit_is_more(drawn) -> None:
+    layout, axes, _, asked = drawn
+    unit = cells_per_unit(layout, axes)
     columns = math.prod(layout.block[dim] for dim in axes.horizontal)
     steps = layout.block[axes.time] if axes.time else 1
-    assert columns <= stated.get("cells", columns)
-    assert steps <= stated.get("time", steps)
-    if not stated:
-        assert layout.cells_per_block <= max(cells, levels)
-    assert layout.cells_per_block == levels * columns * steps <= layout.cells
+    least = (math.prod(layout.chunks[dim] for dim in axes.horizontal), layout.chunks[axes.time] if axes.time else 1)
+    assert columns <= max(asked["block"].get("cells", columns), least[0])
+    if "time" in asked["block"]:
+        assert least[1] > steps - asked["block"]["time"] or steps == least[1]
+    if not asked["block"]:
+        assert layout.cells_per_block <= max(asked["cells"], unit)
+    assert unit <= layout.cells_per_block <= layout.cells
+
+
+@given(layouts(), st.integers(0, 400), st.integers(1, 9), st.integers(1, 9), st.integers(1, 9))
+def test_chunks_of_the_store_do_not_know_the_engine(drawn, cells, workers, time, columns) -> None:
+    layout, axes, source, asked = drawn
+    other = {**asked, "cells": cells, "workers": workers, "block": {"time": time, "cells": columns}}
+    assert lay_out(layout.sizes, axes, source_chunks=source, **other).chunks == layout.chunks
 
 
 @given(layouts())
-def test_cuts_fall_on_edges_of_source_chunks_where_a_block_holds_one(drawn) -> None:
-    layout, _, source, *_ = drawn
-    for dim, chunk in source.items():
-        block = layout.block[dim]
-        assert block < chunk or block == layout.sizes[dim] or block % chunk == 0
+def test_stated_chunks_are_at_most_as_long_as_stated(drawn) -> None:
+    layout, axes, _, asked = drawn
+    stated = asked["chunks"]
+    columns = math.prod(layout.chunks[dim] for dim in axes.horizontal)
+    assert columns <= stated.get("cells", columns)
+    for key, dim in (("time", axes.time), ("levels", axes.vertical)):
+        if dim and key in stated:
+            assert layout.chunks[dim] == min(stated[key], layout.sizes[dim])
+
+
+@given(layouts())
+def test_every_block_is_numbered_once_and_those_that_share_chunks_follow_each_other(drawn) -> None:
+    layout, _, source, _ = drawn
+    numbers = list(layout.numbers(source))
+    assert sorted(numbers) == list(range(len(layout)))
+    if all(source.get(dim, 1) % layout.block[dim] == 0 for dim in layout.sizes):
+        corners = [{dim: part.start for dim, part in layout.region(number).items()} for number in numbers]
+        seen = [tuple(start // source.get(dim, 1) for dim, start in corner.items()) for corner in corners]
+        changes = sum(one != other for one, other in pairwise(seen))
+        assert changes == len(set(seen)) - 1
 
 
 @given(layouts())
 def test_reads_of_a_chunk_are_counted_right(drawn) -> None:
-    layout, _, source, *_ = drawn
+    layout, _, source, _ = drawn
     reads: dict[tuple[int, ...], int] = {}
     for region in layout.regions():
         touched = [range(part.start // source.get(dim, 1), (part.stop - 1) // source.get(dim, 1) + 1)
@@ -88,29 +115,60 @@ def test_reads_of_a_chunk_are_counted_right(drawn) -> None:
     assert reads_of_a_chunk(layout, source) == max(reads.values())
 
 
+def cut(sizes: dict[str, int], source: dict[str, int], horizontal: tuple[str, ...] = MAP, **asked: Any) -> Layout:
+    axes = axes_of("time" in sizes, "lev" in sizes, horizontal)
+    asked = {"cells": 700_000, "workers": 2, "block": {}, "chunks": {}, "item_bytes": 4, **asked}
+    return lay_out(sizes, axes, source_chunks=source, **asked)
+
+
 def test_a_single_cell_is_one_block_of_no_dimension() -> None:
-    layout = lay_out({}, axes_of(False, False, COLUMN), cells=10**6, workers=2, source_chunks={}, stated={}, item_bytes=4)
+    layout = cut({}, {}, COLUMN)
     assert (len(layout), layout.cells, layout.cells_per_block, list(layout.regions())) == (1, 1, 1, [{}])
+    assert list(layout.numbers({})) == [0]
 
 
 @pytest.mark.parametrize(("horizontal", "sizes", "stated", "block"), [
     (MAP, {"time": 12, "lev": 10, "y": 100, "x": 200}, {"time": 1, "cells": 400}, {"time": 1, "y": 2, "x": 200}),
-    (MAP, {"time": 12, "lev": 10, "y": 100, "x": 200}, {"time": 5, "cells": 30}, {"time": 5, "y": 1, "x": 30}),
-    (CELLS, {"time": 12, "lev": 10, "cell": 20_000}, {"time": 12, "cells": 7_000}, {"time": 12, "cell": 7_000}),
+    (MAP, {"time": 12, "lev": 10, "y": 100, "x": 200}, {"time": 5, "cells": 50}, {"time": 5, "y": 1, "x": 50}),
+    (CELLS, {"time": 12, "lev": 10, "cell": 21_000}, {"time": 12, "cells": 7_000}, {"time": 12, "cell": 7_000}),
 ])
-def test_a_stated_block_is_taken(horizontal, sizes, stated, block) -> None:
-    axes = axes_of(True, True, horizontal)
-    layout = lay_out(sizes, axes, cells=10**6, workers=2, source_chunks={}, stated=stated, item_bytes=4)
+def test_stated_chunks_and_blocks_are_taken(horizontal, sizes, stated, block) -> None:
+    layout = cut(sizes, {}, horizontal, block=stated, chunks=stated)
     assert layout.block == {"lev": 10, **block}
+    assert {**layout.chunks, "lev": 10} == layout.block
+
+
+def test_a_block_smaller_than_a_chunk_is_one_chunk() -> None:
+    sizes = {"time": 12, "lev": 10, "y": 100, "x": 200}
+    layout = cut(sizes, {}, chunks={"time": 4, "cells": 1000}, block={"time": 5, "cells": 1})
+    assert layout.block == {"time": 8, "lev": 10, "y": 5, "x": 200}
 
 
 def test_every_worker_gets_some_blocks_of_a_large_grid() -> None:
-    sizes = {"time": 120, "lev": 50, "y": 180, "x": 360}
-    layout = lay_out(sizes, axes_of(True, True, MAP), cells=10**9, workers=8, source_chunks={}, stated={}, item_bytes=4)
+    layout = cut({"time": 120, "lev": 50, "y": 180, "x": 360}, {}, cells=10**9, workers=8)
     assert len(layout) >= 4 * 8
 
 
 def test_stored_chunks_are_neither_the_whole_column_nor_crumbs() -> None:
-    sizes = {"time": 120, "lev": 50, "y": 330, "x": 360}
-    layout = lay_out(sizes, axes_of(True, True, MAP), cells=10**7, workers=2, source_chunks={}, stated={}, item_bytes=4)
-    assert 2**20 <= math.prod(layout.chunks.values()) * 4 <= 2**23
+    layout = cut({"time": 120, "lev": 50, "y": 330, "x": 360}, {}, cells=10**7)
+    assert 2**19 <= math.prod(layout.chunks.values()) * 4 <= 2**21
+    assert layout.chunks["lev"] == 25
+
+
+@pytest.mark.parametrize(("source", "unit"), [
+    ({"time": 1, "lev": 75, "y": 135, "x": 180}, {"time": 1, "y": 27, "x": 180}),  # five units fill a chunk
+    ({"time": 1, "lev": 1, "y": 1080, "x": 1440}, {"time": 1, "y": 4, "x": 1440}),  # whole maps
+    ({}, {"time": 1, "y": 4, "x": 1440}),  # contiguous
+    ({"time": 12, "lev": 75, "y": 10, "x": 10}, {"time": 12, "y": 10, "x": 40}),  # series
+])
+def test_units_of_a_large_grid_follow_the_chunks_of_the_source(source, unit) -> None:
+    layout = cut({"time": 1800, "lev": 75, "y": 1080, "x": 1440}, source)
+    assert {dim: layout.chunks[dim] for dim in unit} == unit
+    assert layout.block == {**unit, "lev": 75}
+
+
+def test_numbers_of_a_million_blocks_begin_at_once() -> None:
+    source = {"time": 1, "lev": 75, "y": 135, "x": 180}
+    layout = cut({"time": 4000, "lev": 75, "y": 1080, "x": 1440}, source)
+    assert len(layout) > 10**6
+    assert list(itertools.islice(layout.numbers(source), 6)) == [0, 8, 16, 24, 32, 1]

@@ -87,11 +87,23 @@ def test_source_chunks_are_those_of_the_file_and_blocks_follow_them(recipe) -> N
     plan = prepare(recipe(engine={"block": {"time": 1, "cells": 50}}))
     assert source_chunks(plan.collection) == {"time": 1, "lev": 5, "lat": 3, "lon": 12}
     assert plan.layout.block == {"time": 1, "lev": 5, "lat": 3, "lon": 12}
-    assert plan.reads_of_a_chunk() == 1
+    assert (plan.blocks_of_a_chunk(), plan.reads_of_a_chunk(), plan.kept) == (1, 1, 0)
     small = prepare(recipe(engine={"block": {"time": 1, "cells": 4}}))
-    assert small.reads_of_a_chunk() == 9
+    assert (small.blocks_of_a_chunk(), small.reads_of_a_chunk()) == (9, 1)
+    assert small.kept == 2 * 4 * 6 * 5 * 3 * 12  # twice the chunks of six roles in single precision
     rows = {label: value for section in small.report().sections for label, value in section.rows}
-    assert "read up to 9 times" in rows["reading"]
+    assert rows["reading"].startswith("a chunk of the source is read once and kept for the 9 blocks that need it")
+
+
+def test_chunks_that_cannot_be_kept_are_told(recipe, ocean, save_ocean, tmp_path) -> None:
+    path = save_ocean(ocean(60, 120, 1), tmp_path / "ocean.nc", time=1, lat=60)
+    words = {"engine": {"workers": 2, "memory": "8.5 MB", "block": {"cells": 40}}, "output": {"chunks": {"cells": 40}}}
+    plan = prepare(recipe(path, **words))
+    assert (plan.kept, plan.reads_of_a_chunk()) == (0, 180)
+    rows = {label: value for section in plan.report().sections for label, value in section.rows}
+    assert "read up to 180 times: blocks are smaller than its chunks; to keep these would take" in rows["reading"]
+    words["engine"]["memory"] = f"{plan.memory_to_read_once() / 1e6:.3f} MB"
+    assert prepare(recipe(path, **words)).reads_of_a_chunk() == 1
 
 
 def test_a_job_travels(recipe, tmp_path) -> None:

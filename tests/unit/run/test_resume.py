@@ -79,7 +79,8 @@ def test_a_resumed_run_does_the_rest_and_leaves_the_same_bytes(
 def test_other_workers_memory_and_figures_may_go_on_and_the_blocks_stay(recipe, watcher, interrupt, tmp_path):
     reference = whole(recipe, type(watcher)(), tmp_path)
     interrupt(4)
-    other = recipe(engine={"workers": 2, "block": None, "memory": "1 GB"}, output={"netcdf": True},
+    other = recipe(engine={"workers": 2, "block": None, "memory": "1 GB"},
+                   output={"netcdf": True, "chunks": BLOCK["block"]},
                    figures=[{"kind": "map", "field": "ph_total_scale", "depth": 0}])
     outcome = conduct(prepare(other), watcher, "resume")
     assert len(outcome.plan.layout) == 9

@@ -37,7 +37,7 @@ def _recipe(place: Path, **output):
         "recipe": 1, "inputs": {"files": str(place / "ocean.nc")}, "reading": {"density": "1026 kg m-3"},
         "chemistry": {"fields": ["ph_total_scale", "aragonite_saturation"]},
         "engine": {"workers": 1, "block": {"time": 1, "cells": 24}},
-        "output": {"folder": str(place / "result"), **output},
+        "output": {"folder": str(place / "result"), "chunks": {"time": 1, "cells": 24}, **output},
         "figures": [{"kind": "map", "field": "ph_total_scale", "depth": 0}],
     }))
 

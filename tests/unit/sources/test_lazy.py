@@ -163,7 +163,8 @@ def test_netcdf_is_read_under_the_lock_of_the_process(ocean, save, gathered, tmp
         assert waiting.result(timeout=20).shape == (3, 3, 4, 5)
 
 
-def test_a_file_written_anew_is_opened_anew(ocean, save, gathered, tmp_path: Path) -> None:
+def test_a_file_written_anew_is_opened_anew(ocean, save, gathered, tmp_path: Path, monkeypatch) -> None:
+    monkeypatch.setattr(handles, "LOOK_AGAIN", 0.0)
     path = save(ocean(), tmp_path / "a.nc")
     ds = open_collection(gathered(tmp_path, files="a.nc"))
     before = ds.dic.isel(time=0).values

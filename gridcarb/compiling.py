@@ -33,8 +33,8 @@ def cache_folder(room: str) -> Path | None:
     The path holds the host name, the Python and numba versions and a digest of the sources of the room.
     """
     digest = hashlib.sha256(f"{room} {platform.python_version()} {numba.__version__}".encode())
-    here = Path(__file__)
-    for source in (here, *sorted((here.parent / room).rglob("*.py"))):
+    house = Path(__file__).parent
+    for source in (house / "compiling.py", house / "elementary.py", *sorted((house / room).rglob("*.py"))):
         digest.update(source.read_bytes())
     root = Path(os.environ.get("XDG_CACHE_HOME") or Path.home() / ".cache")
     folder = root / "gridcarb" / (platform.node() or "host") / digest.hexdigest()[:16]

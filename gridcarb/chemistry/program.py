@@ -16,7 +16,7 @@ from gridcarb.chemistry import solver
 from gridcarb.chemistry.compiled import TILE, arguments, tile_function, tile_loop
 from gridcarb.chemistry.constants_set import CONSTANTS, ConstantsSet
 from gridcarb.chemistry.declare import COLUMNS, DERIVED, Formula
-from gridcarb.chemistry.elementary import exp, log
+from gridcarb.elementary import exp, log
 from gridcarb.chemistry.formulas.pressure import ln_pressure_factor
 from gridcarb.chemistry.passage import solve_cells_with
 from gridcarb.chemistry.reuse import assign_rows

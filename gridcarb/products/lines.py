@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 import numpy.typing as npt
 
 from gridcarb.compiling import compile_function
+from gridcarb.elementary import exp
 
 Line = npt.NDArray[np.float64]
 
+_LN10 = math.log(10.0)
 _LARGEST = float(np.finfo(np.float64).max)
 
 
@@ -25,6 +29,15 @@ def weigh_line(values: Line, weights: Line) -> tuple[float, float]:
     return weight, total
 
 
+def weigh_powers_line(values: Line, weights: Line) -> float:
+    """Sum of weights times ten to the power of minus the values, of the cells that have a finite value."""
+    total = 0.0
+    for i in range(values.size):
+        there = abs(values[i]) <= _LARGEST
+        total += exp(-_LN10 * values[i]) * weights[i] if there else 0.0
+    return total
+
+
 def count_flags_of(flags: npt.NDArray[np.int8], counts: npt.NDArray[np.int64]) -> None:
     """Add to `counts` how often each value occurs, at the place 128 higher than the value."""
     for i in range(flags.size):
@@ -38,6 +51,7 @@ def weigh_flags_of(flags: npt.NDArray[np.int8], weights: Line, sums: Line) -> No
 
 
 weigh = compile_function(weigh_line)
+weigh_powers = compile_function(weigh_powers_line)
 _count_flags = compile_function(count_flags_of)
 _weigh_flags = compile_function(weigh_flags_of)
 

@@ -17,11 +17,10 @@ from numpy.typing import NDArray
 
 from gridcarb.fields import Field
 from gridcarb.products.exact import ExactSum
-from gridcarb.products.lines import weigh, weigh_flags
+from gridcarb.products.lines import weigh, weigh_flags, weigh_powers
 from gridcarb.products.shelf import PRODUCTS, Product
 
 Numbers = NDArray[np.float64]
-_LN10 = math.log(10.0)
 
 
 @dataclass
@@ -39,7 +38,7 @@ class Mean:
         self.weight.add(weight)
         self.total.add(total)
         if self.is_ph:
-            self.hydrogen.add(weigh(np.exp(-_LN10 * values), weights)[1])
+            self.hydrogen.add(weigh_powers(values, weights))
 
     def merge(self, other: Mean) -> None:
         """Count in another share of the same field."""
@@ -103,16 +102,15 @@ class Means:
         top = block["top_level"]
         vertical = next((dim for dim in block["sea"].dims if dim not in top.dims), None)
         surface = fields if vertical is None else fields.isel({vertical: np.maximum(top.variable, 0)})
-        self._count("surface", surface, area.where(top >= 0, 0.0))
+        self._count("surface", surface, area, top >= 0)
         if "cell_thickness" in block.coords:
-            volume = area * block["cell_thickness"]
-            self._count("volume", fields, volume.where(block["sea"] & (volume > 0), 0.0))
+            self._count("volume", fields, area * block["cell_thickness"], block["sea"])
 
-    def _count(self, extent: str, fields: xr.Dataset, weights: xr.DataArray) -> None:
+    def _count(self, extent: str, fields: xr.Dataset, weights: xr.DataArray, sea: xr.DataArray) -> None:
         self.known.add(extent)
         dims = next(iter(fields.data_vars.values())).dims
-        flat = weights.transpose(*dims).values.ravel()
-        flat = np.where(flat > 0, flat, 0.0)
+        every = weights.broadcast_like(sea).transpose(*dims).values
+        flat = np.where((every > 0) & sea.transpose(*dims).values, every, 0.0).ravel()
         self.sizes[extent].add(float(flat.sum()))
         for key, share in self.shares[extent].items():
             values = fields[key].transpose(*dims).values.ravel()

@@ -7,7 +7,7 @@ import numba
 import numpy as np
 import pytest
 
-from gridcarb.chemistry.elementary import exp, log
+from gridcarb.elementary import exp, log
 
 
 def units_of_last_place(value: float, exact: mpmath.mpf) -> float:

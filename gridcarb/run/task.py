@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 import math
 import time
 from collections import Counter
@@ -131,7 +132,7 @@ class _Share:
 
 
 def _solve(job: Job, region: Region, clock: _Clock) -> _Share:
-    raw = open_collection(job.collection).isel(region, missing_dims="ignore").load()
+    raw = _opened(job.collection).isel(region, missing_dims="ignore").load()
     clock.lap("read")
     clothed = clothe(raw, job.understanding)
     clock.lap("harmonise")
@@ -143,6 +144,12 @@ def _solve(job: Job, region: Region, clock: _Clock) -> _Share:
     tallies = _tallies(job.fields, bare.assign_coords(weights(raw, clothed, job.understanding, region)))
     clock.lap("summarise")
     return _Share(solved, tallies, clothed.attrs["masked_cells"])
+
+
+@functools.lru_cache(maxsize=1)
+def _opened(collection: Collection) -> xr.Dataset:
+    """The inputs of the job at hand; each block takes its slice of them."""
+    return open_collection(collection)
 
 
 def _solve_halves(job: Job, region: Region, clock: _Clock) -> _Share:

@@ -16,12 +16,12 @@ from gridcarb.chemistry import solver
 from gridcarb.chemistry.compiled import TILE, arguments, tile_function, tile_loop
 from gridcarb.chemistry.constants_set import CONSTANTS, ConstantsSet
 from gridcarb.chemistry.declare import COLUMNS, DERIVED, Formula
-from gridcarb.elementary import exp, log
 from gridcarb.chemistry.formulas.pressure import ln_pressure_factor
 from gridcarb.chemistry.passage import solve_cells_with
 from gridcarb.chemistry.reuse import assign_rows
 from gridcarb.chemistry.status import seal
 from gridcarb.compiling import COMPILE_LOCK, plain
+from gridcarb.elementary import exp, log
 from gridcarb.fields import FIELDS
 
 INPUTS = ("t", "s", "p_bar", "dic", "alk", "pt", "sit")

@@ -12,6 +12,7 @@ from gridcarb.errors import BlockError, GridcarbError, OutputError
 from gridcarb.run.engines import open_crew
 from gridcarb.run.engines.crew import Answer, Strength
 from gridcarb.run.events import EVENTS, EventLog
+from gridcarb.run.held_memory import give_back_memory
 from gridcarb.run.loop import HOPELESS, failure, work_through
 from gridcarb.run.order import placed_order
 from gridcarb.run.resume import Start
@@ -32,16 +33,25 @@ def do_blocks(start: Start, watcher: Watcher, add: Callable[[Record], None]) -> 
     OutputError, EngineError : what ended the run at once.
     """
     plan, engine = start.plan, start.plan.recipe.engine
-    with placed_order(start.job(), plan.folder.partial) as order, _book(start, watcher, add) as book:
+    with placed_order(start.job(), plan.folder.partial) as order, _book(start, watcher, add) as book, _tidied():
         begun = time.perf_counter()
         with open_crew(engine, plan.workers, order, watcher.message) as crew:
             spent = time.perf_counter() - begun
             watcher.start(start.blocks_left, start.cells_left)
             work_through(crew, order, start.to_do(), retries=engine.retries, onlooker=book)
-        keep_chunks(0)
         watcher.stop()
         book.tell()
     return spent
+
+
+@contextmanager
+def _tidied() -> Iterator[None]:
+    """Afterwards this process keeps nothing of the blocks it has done."""
+    try:
+        yield
+    finally:
+        keep_chunks(0)
+        give_back_memory()
 
 
 @contextmanager

@@ -14,6 +14,7 @@ from pathlib import Path
 from gridcarb.chemistry.program import program
 from gridcarb.errors import EngineError
 from gridcarb.run.charter import numeric_versions
+from gridcarb.run.held_memory import hold_memory
 from gridcarb.run.marking import do_block
 from gridcarb.run.task import Job, Record
 from gridcarb.write.disk import room_for
@@ -34,7 +35,8 @@ class BlockOrder:
     digest: str
 
     def ready(self) -> None:
-        """Read the job and compile its chemistry."""
+        """Read the job and compile its chemistry; from here on this process holds the memory of its blocks."""
+        hold_memory()
         job = self._job()
         program(job.constants, tuple(entry.key for entry in job.fields if entry.part == "derived"))
 

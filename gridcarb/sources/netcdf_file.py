@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import contextlib
+import math
 import os
 import tempfile
 from collections.abc import Iterator, Mapping
@@ -16,6 +17,8 @@ from gridcarb.errors import InputError
 from gridcarb.sources.places import is_url, reached, split
 from gridcarb.sources.stored import Head, Key, Lengths, choose_group, no_group
 
+_MOST_KEPT = 32 * 2**20
+
 MOST_COPIED = 4 * 2**30
 """Bytes of the largest NetCDF file that is fetched from behind a URL; HDF5 cannot read parts of one there."""
 
@@ -27,6 +30,7 @@ class NetcdfFile:
         store, group = split(path)
         with _on_disk(store) as place:
             self._file = netCDF4.Dataset(place)
+        self._lean: set[str] = set()
         try:
             self._file.set_auto_maskandscale(False)
             self._file.set_auto_chartostring(False)
@@ -58,11 +62,22 @@ class NetcdfFile:
         return head.shape, head.dtype, head.chunks
 
     def read(self, name: str, key: Key) -> npt.NDArray[Any]:
-        return np.asarray(self._variables[name][key if key else ...])
+        variable = self._variables[name]
+        if name not in self._lean:
+            _make_lean(variable)
+            self._lean.add(name)
+        return np.asarray(variable[key if key else ...])
 
     def close(self) -> None:
         if self._file.isopen():
             self._file.close()
+
+
+def _make_lean(variable: Any) -> None:
+    """The library would keep 64 MB of unpacked chunks for every variable that was ever read: one chunk is enough."""
+    chunks = variable.chunking()
+    if isinstance(chunks, list):
+        variable.set_var_chunk_cache(min(_MOST_KEPT, math.prod(chunks) * np.dtype(variable.dtype).itemsize), 1, 1.0)
 
 
 def _walk(node: Any, above: str = "") -> Iterator[tuple[str, Any]]:

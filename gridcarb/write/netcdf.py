@@ -124,6 +124,8 @@ def _declare(file: netCDF4.Dataset, name: str, variable: xr.Variable, time: str 
     made = file.createVariable(name, str if text else variable.dtype.newbyteorder("="), [str(dim) for dim in variable.dims],
                                fill_value=fill if text or fill is not None else False, **options)
     made.set_auto_maskandscale(False)
+    if "chunksizes" in options:  # the library would keep 64 MB of chunks a field until the file is closed
+        made.set_var_chunk_cache(int(np.prod(options["chunksizes"])) * variable.dtype.itemsize, 1, 1.0)
     made.setncatts(_typed({key: value for key, value in variable.attrs.items() if key != "_FillValue"}, variable.dtype))
 
 

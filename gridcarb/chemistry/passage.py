@@ -6,6 +6,7 @@ up to the full length, so that every cell of every grid goes through the same in
 
 from __future__ import annotations
 
+import types
 from typing import Any
 
 import numpy as np
@@ -69,30 +70,33 @@ _take = compile_function(take)
 _give = compile_function(give)
 
 
-def solve_cells_with(tile: Any) -> Any:
-    """The compiled function ``solve_cells(inputs, results, status, wet, everywhere, scratch, flags, outputs, ranges)`` that
-    solves all cells with the tile function of a program.
+def solve_cells(
+    inputs: tuple[Numbers, ...], results: Numbers, status: Flags, wet: Places, everywhere: bool, scratch: Numbers,
+    flags: Flags, outputs: Places, ranges: tuple[float, float, float, float],
+) -> None:  # fmt: skip
+    """Solve all cells with the tile function that is called `_tile` where this runs (see `solve_cells_with`).
 
     inputs : seven float64 lines, each of one number or of all cells. results : fields x cells. status : cells, int8.
     wet : places of the cells to solve, unless `everywhere`. scratch : rows x TILE. outputs : row of each field.
     ranges : lowest and highest temperature and salinity in which the constants were measured.
     """
+    total = status.size if everywhere else wet.size
+    for start in range(0, total, TILE):
+        count = min(TILE, total - start)
+        _take(scratch, inputs, wet, everywhere, start, count)
+        judge(
+            flags, scratch[0], scratch[1], scratch[2], scratch[3], scratch[4], scratch[5], scratch[6],
+            ranges[0], ranges[1], ranges[2], ranges[3],
+        )  # fmt: skip
+        worst = _tile(scratch, flags)  # type: ignore[name-defined]  # noqa: F821
+        _give(results, status, scratch, flags, outputs, wet, everywhere, start, count, worst)
 
-    def solve_cells(
-        inputs: tuple[Numbers, ...], results: Numbers, status: Flags, wet: Places, everywhere: bool, scratch: Numbers,
-        flags: Flags, outputs: Places, ranges: tuple[float, float, float, float],
-    ) -> None:  # fmt: skip
-        total = status.size if everywhere else wet.size
-        for start in range(0, total, TILE):
-            count = min(TILE, total - start)
-            _take(scratch, inputs, wet, everywhere, start, count)
-            judge(
-                flags, scratch[0], scratch[1], scratch[2], scratch[3], scratch[4], scratch[5], scratch[6],
-                ranges[0], ranges[1], ranges[2], ranges[3],
-            )  # fmt: skip
-            worst = tile(scratch, flags)
-            _give(results, status, scratch, flags, outputs, wet, everywhere, start, count, worst)
 
-    # The name is the tile's, since compiled code is kept on disk under it.
-    solve_cells.__name__ = solve_cells.__qualname__ = f"cells_of_{plain(tile).__name__}"
-    return compile_function(solve_cells)
+def solve_cells_with(tile: Any) -> Any:
+    """`solve_cells`, compiled with the tile function of a program.
+
+    It finds that function among its globals, not in a closure: compiled code that depends on a closure is never found again
+    on disk. Its name is the tile's, since it is kept under it.
+    """
+    name = f"cells_of_{plain(tile).__name__}"
+    return compile_function(types.FunctionType(solve_cells.__code__, {**globals(), "_tile": tile}, name))

@@ -9,6 +9,7 @@ from gridcarb.cli.listings import fields, keys
 from gridcarb.cli.results import status, verify
 from gridcarb.cli.terminal import Door, debug_option, exit_codes
 from gridcarb.cli.work import plan, run
+from gridcarb.held_memory import share_one_heap
 
 _SETTINGS = {"help_option_names": ["-h", "--help"], "max_content_width": 100}
 
@@ -30,6 +31,7 @@ def main() -> None:
     gridcarb fields                           what can be computed
     gridcarb keys                             what a recipe may say
     """
+    share_one_heap()
 
 
 for command in (run, plan, audit, status, verify, fields, keys):

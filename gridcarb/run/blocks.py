@@ -18,7 +18,7 @@ machine can hold it. It does not depend on the engine, so that every engine leav
 _FEWEST_CELLS = 100_000
 """Cells that are worth a task of their own."""
 
-_CHUNK_BYTES = 2**20
+_CHUNK_BYTES = 2 * 2**20
 """A stored chunk of a field aims at this size: whole water columns are split into a few pieces, so that one level of a map
 does not cost all of them."""
 

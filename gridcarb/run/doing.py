@@ -9,10 +9,10 @@ from collections.abc import Callable, Iterator
 from contextlib import contextmanager, suppress
 
 from gridcarb.errors import BlockError, GridcarbError, OutputError
+from gridcarb.held_memory import give_back_memory
 from gridcarb.run.engines import open_crew
 from gridcarb.run.engines.crew import Answer, Strength
 from gridcarb.run.events import EVENTS, EventLog
-from gridcarb.run.held_memory import give_back_memory
 from gridcarb.run.loop import HOPELESS, failure, work_through
 from gridcarb.run.order import placed_order
 from gridcarb.run.resume import Start

@@ -13,8 +13,8 @@ from pathlib import Path
 
 from gridcarb.chemistry.program import program
 from gridcarb.errors import EngineError
+from gridcarb.held_memory import hold_memory
 from gridcarb.run.charter import numeric_versions
-from gridcarb.run.held_memory import hold_memory
 from gridcarb.run.marking import do_block
 from gridcarb.run.task import Job, Record
 from gridcarb.write.disk import room_for

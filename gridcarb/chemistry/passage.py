@@ -96,7 +96,8 @@ def solve_cells_with(tile: Any) -> Any:
     """`solve_cells`, compiled with the tile function of a program.
 
     It finds that function among its globals, not in a closure: compiled code that depends on a closure is never found again
-    on disk. Its name is the tile's, since it is kept under it.
+    on disk. Its names are the tile's, since it is kept under them: under one name another tile's code would be found.
     """
-    name = f"cells_of_{plain(tile).__name__}"
-    return compile_function(types.FunctionType(solve_cells.__code__, {**globals(), "_tile": tile}, name))
+    function = types.FunctionType(solve_cells.__code__, {**globals(), "_tile": tile})
+    function.__name__ = function.__qualname__ = f"cells_of_{plain(tile).__name__}"
+    return compile_function(function)

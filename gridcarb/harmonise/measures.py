@@ -103,7 +103,7 @@ def cell_areas(raw: xr.Dataset, axes: Axes, reading: MeasuresReading, region: Ma
 
 def weights(
     raw: xr.Dataset, clothed: xr.Dataset, understanding: Understanding, region: Mapping[str, slice]
-) -> dict[str, xr.DataArray]:
+) -> dict[str, xr.Variable]:
     """What a summary needs to weigh the cells of a loaded slice: raw, and as `clothe` made it.
 
     region : where the slice lies in the grid; a dimension not named is whole.
@@ -121,23 +121,23 @@ def weights(
     axes, reading = understanding.axes, understanding.measures
     if reading is None or reading.kind == "unknown":
         return {}
-    sea = clothed["temperature"].notnull() & clothed["salinity"].notnull()
-    dims = [dim for dim in axes.order if dim in raw.dims]
-    whole = xr.DataArray(np.ones([raw.sizes[dim] for dim in dims], dtype=bool), dims=dims)
-    sea = (sea & whole).transpose(*dims)
+    # Variables without coordinates: nothing has to be aligned, which would cost more than the arithmetic.
+    dims = {dim: raw.sizes[dim] for dim in axes.order if dim in raw.dims}
+    sea = clothed["temperature"].variable.notnull() & clothed["salinity"].variable.notnull()
+    sea = sea.set_dims(dims)
     found = {
-        "cell_area": cell_areas(raw, axes, reading, region), "sea": sea,
-        "top_level": _top_level(sea, clothed["sea_pressure"], axes.vertical),
+        "cell_area": cell_areas(raw, axes, reading, region).variable, "sea": sea,
+        "top_level": _top_level(sea, clothed["sea_pressure"].variable, axes.vertical),
     }
     if reading.time is not None:
         shares = reading.time_shares[region.get(reading.time, slice(None))]
-        found["time_share"] = xr.DataArray(shares, dims=reading.time)
+        found["time_share"] = xr.Variable(reading.time, shares)
     if "cell_thickness" in clothed:
-        found["cell_thickness"] = clothed["cell_thickness"]
-    return {name: values.reset_coords(drop=True) for name, values in found.items()}
+        found["cell_thickness"] = clothed["cell_thickness"].variable
+    return found
 
 
-def _top_level(sea: xr.DataArray, pressure: xr.DataArray, vertical: str | None) -> xr.DataArray:
+def _top_level(sea: xr.Variable, pressure: xr.Variable, vertical: str | None) -> xr.Variable:
     if vertical is None or vertical not in sea.dims:
         return sea.astype(np.int64) - 1
     downward = True
@@ -145,9 +145,11 @@ def _top_level(sea: xr.DataArray, pressure: xr.DataArray, vertical: str | None) 
         first, last = pressure.isel({vertical: 0}), pressure.isel({vertical: -1})
         downward = bool((last > first).any())
     ordered = sea if downward else sea.isel({vertical: slice(None, None, -1)})
-    top = ordered.argmax(vertical)
+    axis = sea.get_axis_num(vertical)
+    top = ordered.values.argmax(axis)
     top = top if downward else sea.sizes[vertical] - 1 - top
-    return top.where(sea.any(vertical), -1)
+    dims = [dim for dim in sea.dims if dim != vertical]
+    return xr.Variable(dims, np.where(sea.values.any(axis), top, -1))
 
 
 def _boxes(

@@ -7,7 +7,7 @@ are those of the mean time. Sums within a block are float64, blocks are added ex
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -97,23 +97,27 @@ class Means:
         """
         if "cell_area" not in block.coords:
             return
-        area = block["cell_area"] * block.coords.get("time_share", 1.0)
-        fields = xr.Dataset({key: block[key].variable for key in self.shares["surface"]})
-        top = block["top_level"]
-        vertical = next((dim for dim in block["sea"].dims if dim not in top.dims), None)
-        surface = fields if vertical is None else fields.isel({vertical: np.maximum(top.variable, 0)})
-        self._count("surface", surface, area, top >= 0)
-        if "cell_thickness" in block.coords:
-            self._count("volume", fields, area * block["cell_thickness"], block["sea"])
+        fields = {key: block[key].variable for key in self.shares["surface"]}
+        told = block.variables
+        area, top, sea = told["cell_area"], told["top_level"], told["sea"]
+        if "time_share" in told:
+            area = area * told["time_share"]
+        vertical = next((dim for dim in sea.dims if dim not in top.dims), None)
+        self._count("surface", fields if vertical is None else _at_level(fields, top, vertical), area, top >= 0)
+        if "cell_thickness" in told:
+            self._count("volume", fields, area * told["cell_thickness"], sea)
 
-    def _count(self, extent: str, fields: xr.Dataset, weights: xr.DataArray, sea: xr.DataArray) -> None:
+    def _count(self, extent: str, fields: Mapping[str, xr.Variable], weights: xr.Variable, sea: xr.Variable) -> None:
         self.known.add(extent)
-        dims = next(iter(fields.data_vars.values())).dims
-        every = weights.broadcast_like(sea).transpose(*dims).values
-        flat = np.where((every > 0) & sea.transpose(*dims).values, every, 0.0).ravel()
+        sizes = next(iter(fields.values())).sizes
+        every, wet = (
+            each.set_dims(dict(sizes)).transpose(*sizes).values  # type: ignore[no-untyped-call]
+            for each in (weights, sea)
+        )
+        flat = np.where((every > 0) & wet, every, 0.0).ravel()
         self.sizes[extent].add(float(flat.sum()))
         for key, share in self.shares[extent].items():
-            values = fields[key].transpose(*dims).values.ravel()
+            values = fields[key].transpose(*sizes).values.ravel()
             share.add(values if isinstance(share, Extents) else values.astype(np.float64, copy=False), flat)
 
     def merge(self, other: Means) -> None:
@@ -133,6 +137,17 @@ class Means:
             } if extent in self.known else None
             for (extent, size), units in zip(self.sizes.items(), ("m2", "m3"), strict=True)
         }  # fmt: skip
+
+
+def _at_level(fields: Mapping[str, xr.Variable], top: xr.Variable, vertical: Any) -> dict[str, xr.Variable]:
+    """Each field at the level that `top` tells for each column; where it tells none, at the first."""
+    found = {}
+    for key, field_ in fields.items():
+        rest = [dim for dim in field_.dims if dim != vertical]
+        place = np.maximum(top.transpose(*rest).values, 0)[..., np.newaxis]
+        values = np.take_along_axis(field_.transpose(*rest, vertical).values, place, axis=-1)
+        found[key] = xr.Variable(rest, values[..., 0])
+    return found
 
 
 def _empty(entry: Field) -> Mean | Extents:

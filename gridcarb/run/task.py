@@ -132,7 +132,7 @@ class _Share:
 
 
 def _solve(job: Job, region: Region, clock: _Clock) -> _Share:
-    raw = _opened(job.collection).isel(region, missing_dims="ignore").load()
+    raw = _read(job.collection, region)
     clock.lap("read")
     clothed = clothe(raw, job.understanding)
     clock.lap("harmonise")
@@ -144,6 +144,18 @@ def _solve(job: Job, region: Region, clock: _Clock) -> _Share:
     tallies = _tallies(job.fields, bare.assign_coords(weights(raw, clothed, job.understanding, region)))
     clock.lap("summarise")
     return _Share(solved, tallies, clothed.attrs["masked_cells"])
+
+
+def _read(collection: Collection, region: Region) -> xr.Dataset:
+    """A region of the inputs. Workers that begin together on neighbours begin with different variables: where they share
+    chunks, each then reads its own part of them instead of waiting for the other."""
+    raw = _opened(collection).isel(region, missing_dims="ignore")
+    names = list(raw.data_vars)
+    number = sum(part.start // max(1, part.stop - part.start) for part in region.values())
+    first = len(names) * (0, 2, 1, 3)[number % 4] // 4
+    for name in names[first:] + names[:first]:
+        raw.variables[name].load()
+    return raw.load()
 
 
 @functools.lru_cache(maxsize=1)

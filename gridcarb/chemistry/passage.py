@@ -17,6 +17,7 @@ from gridcarb.chemistry.status import MISSING, Flags, judge
 from gridcarb.compiling import compile_function, plain
 
 Numbers = npt.NDArray[np.float64]
+Results = npt.NDArray[np.floating[Any]]
 Places = npt.NDArray[np.intp]
 
 TO_CANONICAL = (1.0, 1.0, 0.1, 1e-6, 1e-6, 1e-6, 1e-6)
@@ -45,10 +46,10 @@ def take(scratch: Numbers, inputs: tuple[Numbers, ...], wet: Places, everywhere:
 
 
 def give(
-    results: Numbers, status: Flags, scratch: Numbers, flags: Flags, outputs: Places, wet: Places, everywhere: bool,
+    results: Results, status: Flags, scratch: Numbers, flags: Flags, outputs: Places, wet: Places, everywhere: bool,
     start: int, count: int, worst: int,
 ) -> None:  # fmt: skip
-    """Put the fields of a tile into the results, NaN where a cell was not solved."""
+    """Put the fields of a tile into the results, NaN where a cell was not solved or is left out before the next one."""
     for field in range(outputs.size):
         filled = scratch[outputs[field]]
         line = results[field]
@@ -60,6 +61,9 @@ def give(
             for i in range(count):
                 line[start + i] = filled[i]
         else:
+            first = wet[start - 1] + 1 if start else 0
+            last = line.size if start + count == wet.size else wet[start + count - 1] + 1
+            line[first:last] = np.nan
             for i in range(count):
                 line[wet[start + i]] = filled[i]
     for i in range(count):
@@ -71,13 +75,14 @@ _give = compile_function(give)
 
 
 def solve_cells(
-    inputs: tuple[Numbers, ...], results: Numbers, status: Flags, wet: Places, everywhere: bool, scratch: Numbers,
+    inputs: tuple[Numbers, ...], results: Results, status: Flags, wet: Places, everywhere: bool, scratch: Numbers,
     flags: Flags, outputs: Places, ranges: tuple[float, float, float, float],
 ) -> None:  # fmt: skip
     """Solve all cells with the tile function that is called `_tile` where this runs (see `solve_cells_with`).
 
-    inputs : seven float64 lines, each of one number or of all cells. results : fields x cells. status : cells, int8.
-    wet : places of the cells to solve, unless `everywhere`. scratch : rows x TILE. outputs : row of each field.
+    inputs : seven float64 lines, each of one number or of all cells. results : fields x cells, of either precision.
+    status : cells, int8. wet : places of the cells to solve, at least one, unless `everywhere`. scratch : rows x TILE.
+    outputs : row of each field.
     ranges : lowest and highest temperature and salinity in which the constants were measured.
     """
     total = status.size if everywhere else wet.size

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import functools
 from dataclasses import asdict, dataclass, replace
-from typing import Any
+from typing import Any, Literal
 
 import numpy as np
 
@@ -23,6 +23,8 @@ from gridcarb.chemistry.status import seal
 from gridcarb.compiling import COMPILE_LOCK, plain
 from gridcarb.elementary import exp, log
 from gridcarb.fields import FIELDS
+
+Precision = Literal["float32", "float64"]
 
 INPUTS = ("t", "s", "p_bar", "dic", "alk", "pt", "sit")
 """The rows a caller fills: degC, practical salinity, bar, and four amounts in mol/kg."""
@@ -183,8 +185,9 @@ def _plain_loop(cell: Any) -> Any:
 
 
 @functools.cache
-def program(constants: str, fields: tuple[str, ...]) -> tuple[Program, Any]:
-    """The program for a set and a selection of derived fields (both by key), and its compiled function.
+def program(constants: str, fields: tuple[str, ...], precision: Precision = "float64") -> tuple[Program, Any]:
+    """The program for a set and a selection of derived fields (both by key), and its compiled function for results of a
+    precision; the chemistry itself is in double precision always.
 
     Raises
     ------
@@ -196,17 +199,17 @@ def program(constants: str, fields: tuple[str, ...]) -> tuple[Program, Any]:
     with COMPILE_LOCK:
         made = _build(chosen, fields)
         solve_cells = made.compiled(constants)
-        _solve_one(made, solve_cells)
+        _solve_one(made, solve_cells, precision)
     return made, solve_cells
 
 
-def _solve_one(made: Program, solve_cells: Any) -> None:
+def _solve_one(made: Program, solve_cells: Any, precision: Precision) -> None:
     """Solve one ordinary cell, so that all compiling is over before threads enter."""
     water = (15.0, 35.0, 0.0, 2100.0, 2300.0, 0.0, 0.0)
     solve_cells(
-        tuple(np.array([value]) for value in water), np.empty((len(made.outputs), 1)), np.empty(1, dtype=np.int8),
-        np.empty(0, dtype=np.intp), True, np.empty((made.rows, TILE)), np.empty(TILE, dtype=np.int8),
-        np.array(made.outputs, dtype=np.intp), (2.0, 35.0, 19.0, 43.0),
+        tuple(np.array([value]) for value in water), np.empty((len(made.outputs), 1), dtype=precision),
+        np.empty(1, dtype=np.int8), np.empty(0, dtype=np.intp), True, np.empty((made.rows, TILE)),
+        np.empty(TILE, dtype=np.int8), np.array(made.outputs, dtype=np.intp), (2.0, 35.0, 19.0, 43.0),
     )  # fmt: skip
 
 

@@ -9,14 +9,17 @@ import numpy.typing as npt
 import xarray as xr
 
 from gridcarb.chemistry.constants_set import CONSTANTS
-from gridcarb.chemistry.tile import speciate
+from gridcarb.chemistry.program import Precision
+from gridcarb.chemistry.tile import solve_arrays
 from gridcarb.fields import FIELDS, ROLES
 
 _ARGUMENTS = {**{role: role for role in ROLES}, "sea_pressure": "pressure"}
 """What a clothed block calls it -> what `speciate` calls it: blocks may have an axis named pressure."""
 
 
-def solve(clothed: xr.Dataset, fields: Sequence[str], constants: str) -> xr.Dataset:
+def solve(
+    clothed: xr.Dataset, fields: Sequence[str], constants: str, precision: Precision = "float64"
+) -> xr.Dataset:
     """Solve the carbonate system of a block once, for all fields wanted.
 
     Parameters
@@ -25,11 +28,12 @@ def solve(clothed: xr.Dataset, fields: Sequence[str], constants: str) -> xr.Data
         (umol/kg), broadcasting by dimension name; in memory. Dimensions come out in the order of the alkalinity.
     fields : catalogue keys: derived fields, "solution_status", or inputs (passed through as they were understood).
     constants : key of a set of constants.
+    precision : of the results; all is computed in double precision and rounded once.
 
     Returns
     -------
-    One variable a field (float64; the status int8) with the attributes of the catalogue, on the coordinates of the
-    input.
+    One variable a field (of that precision; the status int8) with the attributes of the catalogue, on the coordinates of
+    the input.
 
     Raises
     ------
@@ -39,12 +43,13 @@ def solve(clothed: xr.Dataset, fields: Sequence[str], constants: str) -> xr.Data
     order = _dimension_order(clothed)
     arrays = {name: _aligned(clothed[name].variable, order) for name in _ARGUMENTS}
     state = {argument: arrays[name] for name, argument in _ARGUMENTS.items()}
-    computed = [field.key for field in wanted if field.part != "input"]
-    results = speciate(**state, fields=computed, constants=constants) if computed else {}
+    computed = tuple(field.key for field in wanted if field.part != "input")
+    results = solve_arrays(state, computed, constants, precision) if computed else {}
     shape = np.broadcast_shapes(*(array.shape for array in arrays.values()))
     solved = xr.Dataset(coords=clothed.coords)
     for field in wanted:
-        data = np.broadcast_to(arrays[field.key], shape).copy() if field.part == "input" else results[field.key]
+        given = field.part == "input"
+        data = np.broadcast_to(arrays[field.key], shape).astype(precision) if given else results[field.key]
         solved[field.key] = (order, data, {**field.attributes(), **_provenance(field.part, constants)})
     return solved
 

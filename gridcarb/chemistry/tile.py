@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 import numpy as np
@@ -11,11 +11,14 @@ import numpy.typing as npt
 from gridcarb.chemistry.compiled import TILE
 from gridcarb.chemistry.constants_set import CONSTANTS
 from gridcarb.chemistry.declare import DERIVED
-from gridcarb.chemistry.program import program
+from gridcarb.chemistry.program import Precision, program
 from gridcarb.chemistry.status import MISSING, SOLUTION_STATUS, Flags
 from gridcarb.errors import InputError, UnknownWordError, did_you_mean
 
 Array = npt.NDArray[np.float64]
+
+_INPUTS = ("temperature", "salinity", "pressure", "dic", "alkalinity", "phosphate", "silicate")
+"""In the order in which compiled code takes them."""
 
 _FEW = 0.85
 _NO_PLACES = np.empty(0, dtype=np.intp)
@@ -59,14 +62,22 @@ def speciate(
     UnknownWordError : an unknown field or set, with the nearest known words.
     InputError : inputs that are not numbers or do not broadcast.
     """
-    keys = tuple(DERIVED) if fields is None else _checked(fields)
-    given = _broadcast(
-        temperature=temperature, salinity=salinity, pressure=pressure, dic=dic, alkalinity=alkalinity,
-        phosphate=phosphate, silicate=silicate,
-    )  # fmt: skip
-    shape = np.broadcast_shapes(*(array.shape for array in given))
+    given = {
+        "temperature": temperature, "salinity": salinity, "pressure": pressure, "dic": dic, "alkalinity": alkalinity,
+        "phosphate": phosphate, "silicate": silicate,
+    }  # fmt: skip
+    return solve_arrays(given, tuple(DERIVED) if fields is None else _checked(fields), constants, "float64")
+
+
+def solve_arrays(
+    given: Mapping[str, npt.ArrayLike], keys: tuple[str, ...], constants: str, precision: Precision
+) -> dict[str, npt.NDArray[np.generic]]:
+    """As `speciate`, for all of its inputs by name and known keys; results are rounded to `precision` at the very end."""
+    arrays = _broadcast(given)
+    shape = np.broadcast_shapes(*(array.shape for array in arrays))
     wanted = tuple(key for key in keys if key != SOLUTION_STATUS.key)
-    results, status = _solve([_flat(array, shape) for array in given], int(np.prod(shape)), wanted, constants)
+    lines = [_flat(array, shape) for array in arrays]
+    results, status = _solve(lines, int(np.prod(shape)), wanted, constants, precision)
     every: dict[str, npt.NDArray[np.generic]] = dict(zip(wanted, results, strict=True))
     every[SOLUTION_STATUS.key] = status
     return {key: every[key].reshape(shape) for key in keys}
@@ -81,9 +92,10 @@ def _checked(fields: Sequence[str]) -> tuple[str, ...]:
     return tuple(dict.fromkeys(keys))
 
 
-def _broadcast(**inputs: npt.ArrayLike) -> list[npt.NDArray[np.generic]]:
+def _broadcast(inputs: Mapping[str, npt.ArrayLike]) -> list[npt.NDArray[np.generic]]:
     arrays: dict[str, npt.NDArray[np.generic]] = {}
-    for name, value in inputs.items():
+    for name in _INPUTS:
+        value = inputs[name]
         array = np.asarray(_unmasked(value) if isinstance(value, np.ma.MaskedArray) else value)
         if array.dtype.kind not in "fiu":
             raise InputError(f"{name} is not made of real numbers (dtype {array.dtype})", where=f"speciate: {name}")
@@ -114,13 +126,18 @@ def _flat(array: npt.NDArray[np.generic], shape: tuple[int, ...]) -> Array:
     return line if line.flags.writeable else line.copy()
 
 
-def _solve(inputs: list[Array], size: int, fields: tuple[str, ...], constants: str) -> tuple[Array, Flags]:
+def _solve(
+    inputs: list[Array], size: int, fields: tuple[str, ...], constants: str, precision: Precision
+) -> tuple[npt.NDArray[np.generic], Flags]:
     """Results (fields x cells) and status of all cells."""
-    made, solve_cells = program(constants, fields)
+    made, solve_cells = program(constants, fields, precision)
     chosen = CONSTANTS[constants]
     wet = _wet(inputs, size)
-    results = np.empty((len(fields), size)) if wet is None else np.full((len(fields), size), np.nan)
+    results = np.empty((len(fields), size), dtype=precision)
     status = np.full(size, MISSING, dtype=np.int8)
+    if wet is not None and not wet.size:
+        results[...] = np.nan
+        return results, status
     solve_cells(
         tuple(inputs), results, status, _NO_PLACES if wet is None else wet, wet is None, np.empty((made.rows, TILE)),
         np.empty(TILE, dtype=np.int8), np.array(made.outputs, dtype=np.intp),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -11,12 +12,13 @@ from gridcarb.compiling import compile_function
 from gridcarb.elementary import exp
 
 Line = npt.NDArray[np.float64]
+Values = npt.NDArray[np.floating[Any]]
 
 _LN10 = math.log(10.0)
 _LARGEST = float(np.finfo(np.float64).max)
 
 
-def weigh_line(values: Line, weights: Line) -> tuple[float, float]:
+def weigh_line(values: Values, weights: Line) -> tuple[float, float]:
     """Sum of the weights, and of weights times values, of the cells that have a finite value.
 
     weights : of the same length, finite; 0 for a cell that does not count.
@@ -29,7 +31,7 @@ def weigh_line(values: Line, weights: Line) -> tuple[float, float]:
     return weight, total
 
 
-def weigh_powers_line(values: Line, weights: Line) -> float:
+def weigh_powers_line(values: Values, weights: Line) -> float:
     """Sum of weights times ten to the power of minus the values, of the cells that have a finite value."""
     total = 0.0
     for i in range(values.size):

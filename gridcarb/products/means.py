@@ -32,7 +32,7 @@ class Mean:
     total: ExactSum = field(default_factory=ExactSum)
     hydrogen: ExactSum = field(default_factory=ExactSum)
 
-    def add(self, values: Numbers, weights: Numbers) -> None:
+    def add(self, values: NDArray[np.floating[Any]], weights: Numbers) -> None:
         """Count in values with their weights, 0 for a cell that does not count; NaN has none."""
         weight, total = weigh(values, weights)
         self.weight.add(weight)
@@ -117,8 +117,7 @@ class Means:
         flat = np.where((every > 0) & wet, every, 0.0).ravel()
         self.sizes[extent].add(float(flat.sum()))
         for key, share in self.shares[extent].items():
-            values = fields[key].transpose(*sizes).values.ravel()
-            share.add(values if isinstance(share, Extents) else values.astype(np.float64, copy=False), flat)
+            share.add(fields[key].transpose(*sizes).values.ravel(), flat)
 
     def merge(self, other: Means) -> None:
         """Count in the shares of another tally of the same fields."""

@@ -33,7 +33,7 @@ class Range:
     below: int = 0
     above: int = 0
 
-    def add(self, values: NDArray[np.float64]) -> None:
+    def add(self, values: NDArray[np.floating[Any]]) -> None:
         """Count in `values`; NaN or infinity is a cell without a value."""
         self.cells += values.size
         there = int(np.count_nonzero(np.isfinite(values)))
@@ -45,8 +45,8 @@ class Range:
             values = values[np.isfinite(values)]
             low, high = float(values.min()), float(values.max())
         self.minimum, self.maximum = min(self.minimum, low), max(self.maximum, high)
-        self.below += int(np.count_nonzero(values < self.low)) if low < self.low else 0
-        self.above += int(np.count_nonzero(values > self.high)) if high > self.high else 0
+        self.below += int(np.count_nonzero(values < np.float64(self.low))) if low < self.low else 0
+        self.above += int(np.count_nonzero(values > np.float64(self.high))) if high > self.high else 0
 
     def merge(self, other: Range) -> None:
         """Count in another share of the same field."""
@@ -102,8 +102,7 @@ class Ranges:
     def add(self, block: xr.Dataset) -> None:
         """Count in the fields of a block; every field must be there."""
         for key, share in self.shares.items():
-            values = block[key].values
-            share.add(values if isinstance(share, Flags) else values.astype(np.float64, copy=False))
+            share.add(block[key].values)
 
     def merge(self, other: Ranges) -> None:
         """Count in the shares of another tally of the same fields."""

@@ -18,9 +18,10 @@ from gridcarb.harmonise import Understanding, weigh
 from gridcarb.harmonise.settings import ReadingSettings
 from gridcarb.harmonise.stage import Examination, examine
 from gridcarb.run import findings
+from gridcarb.run.budget import DEFAULT_KEPT_BYTES
 from gridcarb.run.findings import Finding
 from gridcarb.run.layout_in_files import chunk_findings
-from gridcarb.sources import Collection, InputsSettings, open_collection
+from gridcarb.sources import Collection, InputsSettings, chunks_kept, open_collection
 from gridcarb.sources.dates import Units
 from gridcarb.sources.survey import Survey, survey
 
@@ -75,10 +76,11 @@ def inspect(inputs: InputsSettings, base: Path, reading: ReadingSettings) -> Ins
 def _examine(raw: xr.Dataset, reading: ReadingSettings, faults: Faults, collection: Collection | None) -> Examination:
     """The examination of all roles there are, with the weights of cells where it came to an understanding."""
     absent = [role for role in REQUIRED_ROLES if role not in raw.data_vars]
-    found = examine(raw, reading, faults, absent=absent)
-    if found.understanding is None:
-        return found
-    weighed = faults.attempt(weigh, raw, found.understanding, reading, collection.measures if collection else None)
+    with chunks_kept(DEFAULT_KEPT_BYTES):  # the samples lie close to each other
+        found = examine(raw, reading, faults, absent=absent)
+        if found.understanding is None:
+            return found
+        weighed = faults.attempt(weigh, raw, found.understanding, reading, collection.measures if collection else None)
     return replace(found, decisions=weighed.decisions, notices=weighed.notices, understanding=weighed) if weighed else found
 
 

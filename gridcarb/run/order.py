@@ -38,7 +38,7 @@ class BlockOrder:
         """Read the job and compile its chemistry; from here on this process holds the memory of its blocks."""
         hold_memory()
         job = self._job()
-        program(job.constants, tuple(entry.key for entry in job.fields if entry.part == "derived"))
+        program(job.constants, tuple(entry.key for entry in job.fields if entry.part == "derived"), job.solved_in)
 
     def __call__(self, number: int, parts: int) -> Record:
         """Do block `number` and mark it."""

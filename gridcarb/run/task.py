@@ -51,6 +51,11 @@ class Job:
         """The catalogue keys to solve for."""
         return tuple(entry.key for entry in self.fields)
 
+    @property
+    def solved_in(self) -> Precision:
+        """The precision results leave the chemistry in: that of the store, unless they are divided by volumes first."""
+        return "float64" if self.volumes else self.precision
+
     def name(self, number: int) -> str:
         """What a block is called, counted from one."""
         return f"block {number + 1} of {len(self.layout)}"
@@ -136,9 +141,13 @@ def _solve(job: Job, region: Region, clock: _Clock) -> _Share:
     clock.lap("read")
     clothed = clothe(raw, job.understanding)
     clock.lap("harmonise")
-    solved = solve(clothed, job.keys, job.constants)
+    solved = solve(clothed, job.keys, job.constants, job.solved_in)
     if job.volumes:
         solved = per_volume(solved, clothed.get("density"))
+        solved = solved.assign({
+            field.key: solved[field.key].copy(data=stored(solved[field.key].values, dtype_of(field, job.precision)))
+            for field in job.fields
+        })
     clock.lap("solve")
     bare = solved.drop_vars(list(solved.coords))  # the coordinates of the grid may bear any name
     tallies = _tallies(job.fields, bare.assign_coords(weights(raw, clothed, job.understanding, region)))

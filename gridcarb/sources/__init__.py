@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from gridcarb.sources.collection import ArraySource, Collection, FileRecord, RoleSource, Segment
 from gridcarb.sources.gather import gather
-from gridcarb.sources.kept_chunks import close_all, keep_chunks
+from gridcarb.sources.kept_chunks import chunks_kept, close_all, keep_chunks
 from gridcarb.sources.lazy import open_collection
 from gridcarb.sources.roles import find_roles
 from gridcarb.sources.settings import InputsSettings, RoleInput
@@ -17,6 +17,6 @@ from gridcarb.sources.survey import Chance, FileSurvey, Survey, VariableSurvey, 
 
 __all__ = [
     "ArraySource", "Chance", "Collection", "FileRecord", "FileSurvey", "InputsSettings", "RoleInput", "RoleSource",
-    "Segment", "Survey", "VariableSurvey", "close_all", "find_roles", "gather", "keep_chunks", "open_collection",
-    "survey",
+    "Segment", "Survey", "VariableSurvey", "chunks_kept", "close_all", "find_roles", "gather", "keep_chunks",
+    "open_collection", "survey",
 ]

@@ -13,6 +13,7 @@ import threading
 from collections import OrderedDict
 from collections.abc import Iterator
 from concurrent.futures import Future
+from contextlib import contextmanager
 from typing import Any
 
 import numpy as np
@@ -129,6 +130,16 @@ def keep_chunks(limit: int) -> None:
     if limit != _KEPT.limit:
         _KEPT.limit = limit
         _KEPT.clear()
+
+
+@contextmanager
+def chunks_kept(limit: int) -> Iterator[None]:
+    """Meanwhile at most so many bytes of unpacked chunks are kept; afterwards none."""
+    keep_chunks(limit)
+    try:
+        yield
+    finally:
+        keep_chunks(0)
 
 
 def close_all() -> None:

@@ -197,10 +197,10 @@ def test_one_task_a_block_each_solved_once(recipe, watcher, monkeypatch) -> None
     solved, lock = [], threading.Lock()
     solve = tasks.solve
 
-    def counting(clothed, keys, constants):
+    def counting(clothed, *words):
         with lock:
             solved.append(dict(clothed.sizes))
-        return solve(clothed, keys, constants)
+        return solve(clothed, *words)
 
     monkeypatch.setattr(tasks, "solve", counting)
     plan = prepare(recipe(engine={"block": {"time": 1, "cells": 24}}, chemistry={"fields": "all"}))

@@ -25,7 +25,8 @@ def folded(tmp_path_factory: pytest.TempPathFactory) -> Path:
 
 def means(recipe, watcher, folder, file, **engine):
     outcome = conduct(prepare(recipe(
-        files=file, engine={"workers": 1, **engine}, output={"folder": str(folder)}, reading={"coverage": "global"},
+        files=file, engine={"workers": 1, **engine}, output={"folder": str(folder), "precision": "float64"},
+        reading={"coverage": "global"},
         chemistry={"fields": ["ph_total_scale", "temperature"]},
     )), watcher)  # fmt: skip
     return outcome

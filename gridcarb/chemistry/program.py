@@ -83,7 +83,22 @@ class Program:
             f"tile_of_{constants}", ("scratch", "flags"), lines,
             {**uses, "sweep": solver.sweep, "settle": solver.settle, "seal": seal},
         )  # fmt: skip
+        self._load_parts()
         return solve_cells_with(tile)
+
+    def _load_parts(self) -> None:
+        """Run every part by itself once, so that its own machine code is there before that of the tile.
+
+        The tile brings copies of its parts along, compiled in its context, which may differ in the last bit. Whichever
+        is loaded first is used: without this, code that was compiled just now and code from disk gave different bits.
+        """
+        scratch, flags = np.ones((self.rows, TILE)), np.zeros(TILE, dtype=np.int8)
+        for step in (*self.before, *self.after):
+            step.run(scratch, step.out, *step.reads)
+        rows = [scratch[row] for row in (self.hydrogen, self.step, *self.unknowns)]
+        solver.sweep(*rows)
+        solver.settle(*rows)
+        seal(flags, scratch[self.hydrogen], scratch[self.step], solver.SWEPT)
 
 
 def _calls(steps: tuple[Step, ...]) -> list[str]:

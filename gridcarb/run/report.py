@@ -101,6 +101,7 @@ def plan_data(plan: Plan, notices: Sequence[Notice]) -> dict[str, object]:
         "memory": {
             "workers": plan.workers, "allowed_per_task": plan.allowed,
             "program": PROGRAM_BYTES, "projected_per_task": plan.footprint.projected(plan.layout.cells_per_block),
+            "kept_per_process": plan.kept,
         },
         "result": str(plan.folder.target),
     }  # fmt: skip

@@ -15,6 +15,7 @@ from gridcarb.sources.collection import Collection, FileRecord, RoleSource, Time
 from gridcarb.sources.conventions import MEASURES
 from gridcarb.sources.dates import Units, stamps
 from gridcarb.sources.describing import coordinates_of, names_kept
+from gridcarb.sources.handles import look_again
 from gridcarb.sources.headers import Header, read_header
 from gridcarb.sources.lending import Lender, borrowed
 from gridcarb.sources.locate import locate
@@ -73,6 +74,7 @@ def gather(settings: InputsSettings, base: Path) -> Collection:
 
 def explore(settings: InputsSettings, base: Path, faults: Faults) -> Explored:
     """As `gather`, with every error put by in `faults`."""
+    look_again()
     looked = _look(settings, base, faults)
     if not any(looked.groups[role] for role in ROLES):
         return Explored(looked, {}, Measures(), None)

@@ -6,6 +6,7 @@ Nothing here is ever pickled: arrays carry paths, and a worker process fills its
 from __future__ import annotations
 
 import contextlib
+import math
 import os
 import threading
 import time
@@ -91,6 +92,12 @@ class Handles:
             self._open[path] = held
             return held
 
+    def look_again(self) -> None:
+        """Look at every open file, whether it has changed, before it is read the next time."""
+        with self.lock:
+            for held in self._open.values():
+                held.looked_at = -math.inf
+
     def close(self) -> None:
         """Close everything."""
         with self.lock:
@@ -140,6 +147,12 @@ def _of(path: str, variable: str, ask: Callable[[Handles], T]) -> T:
         ) from None
     except (OSError, RuntimeError, ValueError) as error:
         raise unreadable(f"{path}: {variable}", error) from error
+
+
+def look_again() -> None:
+    """Files may have changed since they were read last: notice it at the next reading, however soon that is."""
+    NETCDF_HANDLES.look_again()
+    ZARR_HANDLES.look_again()
 
 
 def close_all() -> None:

@@ -165,20 +165,21 @@ class Measured:
     """What a run took.
 
     peak : most bytes its largest process had resident.
-    blocks, projected, program, workers : of its plan; bytes of one block and of the program.
+    blocks, projected, program, kept, workers : of its plan; bytes of one block, of the program, of chunks that are kept.
     """
 
     peak: int
     blocks: int
     projected: int
     program: int
+    kept: int
     workers: int
     seconds: float
 
     @property
     def bound(self) -> int:
         """The most bytes the plan allows one process."""
-        return self.program + self.workers * self.projected
+        return self.program + self.kept + self.workers * self.projected
 
 
 def measured(source: Path, folder: Path, *words: str, **sections: Mapping[str, Any]) -> Measured:
@@ -197,7 +198,7 @@ def measured(source: Path, folder: Path, *words: str, **sections: Mapping[str, A
     memory = plan["memory"]
     alone = "processes" in words
     return Measured(peak, plan["blocks"]["count"], memory["projected_per_task"], memory["program"],
-                    1 if alone else memory["workers"], seconds)  # fmt: skip
+                    memory["kept_per_process"], 1 if alone else memory["workers"], seconds)  # fmt: skip
 
 
 def peak_of(command: list[str]) -> int:

@@ -16,7 +16,8 @@ import pytest
 from gridcarb.run.status import status
 
 BLOCKS = 60
-SMALL = {"engine": {"workers": 2, "block": {"time": 1, "cells": 20}}}
+BLOCK = {"time": 1, "cells": 20}
+SMALL = {"engine": {"workers": 2, "block": BLOCK}}
 
 
 @pytest.fixture(autouse=True, scope="module")
@@ -34,7 +35,8 @@ def undisturbed(ocean_file, tmp_path_factory) -> dict[str, bytes]:
     recipe = folder / "recipe.yaml"
     recipe.write_text(json.dumps({
         "recipe": 1, "inputs": {"files": str(ocean_file)}, "reading": {"density": "1026 kg m-3"},
-        "chemistry": {"fields": ["ph_total_scale"]}, "output": {"folder": str(folder / "result"), "netcdf": False}, **SMALL,
+        "chemistry": {"fields": ["ph_total_scale"]}, **SMALL,
+        "output": {"folder": str(folder / "result"), "netcdf": False, "chunks": BLOCK},
     }))
     command = [sys.executable, "-c", "from gridcarb.cli.main import main; main()", "run", str(recipe), "--quiet"]
     subprocess.run(command, check=True, timeout=90)

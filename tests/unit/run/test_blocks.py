@@ -152,7 +152,8 @@ def test_every_worker_gets_some_blocks_of_a_large_grid() -> None:
 def test_stored_chunks_are_neither_the_whole_column_nor_crumbs() -> None:
     layout = cut({"time": 120, "lev": 50, "y": 330, "x": 360}, {}, cells=10**7)
     assert 2**19 <= math.prod(layout.chunks.values()) * 4 <= 2**21
-    assert layout.chunks["lev"] == 25
+    assert layout.chunks["lev"] == 50
+    assert cut({"time": 120, "lev": 50, "y": 330, "x": 360}, {}, item_bytes=8).chunks["lev"] == 25
 
 
 @pytest.mark.parametrize(("source", "unit"), [

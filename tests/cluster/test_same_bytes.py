@@ -36,7 +36,7 @@ def test_a_scheduler_told_in_the_recipe(gridcarb, cluster, write_recipe, on_thre
 
 def test_blocks_of_another_size(cluster, write_recipe, on_threads, tmp_path) -> None:
     run_here(write_recipe(tmp_path / "result", block={"time": 4, "cells": 100}, address=cluster.address))
-    assert len(events_of(tmp_path / "result", "done")) == 15
+    assert len(events_of(tmp_path / "result", "done")) == 6
     assert store_files(tmp_path / "result") == on_threads
 
 

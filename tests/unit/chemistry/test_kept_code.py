@@ -48,6 +48,7 @@ print(hashlib.sha256(found["ph_total_scale"].tobytes()).hexdigest())
 """
 
 
+@pytest.mark.scale
 @pytest.mark.skipif(bool(numba.config.DISABLE_JIT), reason="nothing is compiled")
 def test_code_from_disk_gives_the_bits_of_code_compiled_just_now(tmp_path) -> None:
     environment = {**os.environ, "XDG_CACHE_HOME": str(tmp_path)}

@@ -23,6 +23,8 @@ from gridcarb.write.validate import check_grid
 from synthetic_grids.clothes import MODEL_NAMES
 from synthetic_grids.kinds import scene_of
 
+pytestmark = pytest.mark.kinds
+
 KINDS = (
     "grid_raster_southward", "grid_tripolar_edge_fold", "grid_tripolar_centre_fold", "grid_tripolar_land_masked",
     "grid_tripolar_land_zero", "grid_rotated_pole", "grid_triangles_from_1", "grid_polygons_from_0", "grid_polygons_from_1",

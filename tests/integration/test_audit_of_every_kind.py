@@ -18,6 +18,8 @@ from gridcarb.run import conduct, prepare
 from synthetic_grids.kinds import KINDS, scene_of
 from tests.integration.conftest import RecipeFor
 
+pytestmark = pytest.mark.kinds
+
 STOPPED = {
     "mask_lacking_10_percent": "missing in different places",
     "time_months_since": "no fixed length",

@@ -13,6 +13,8 @@ import pytest
 
 from synthetic_grids import kinds
 
+pytestmark = pytest.mark.kinds
+
 NAMES = (
     "grid_raster_westward", "grid_tripolar_edge_fold", "grid_rotated_pole", "grid_triangles_from_1", "grid_polygons_from_0",
     "grid_cells_in_degrees", "grid_single_column", "grid_stations", "grid_casts", "vertical_height", "vertical_kilometres",

@@ -41,22 +41,22 @@ def solve(
     """
     wanted = [FIELDS[key] for key in fields]
     order = _dimension_order(clothed)
-    arrays = {name: _aligned(clothed[name].variable, order) for name in _ARGUMENTS}
+    arrays = {name: _aligned(clothed.variables[name], order) for name in _ARGUMENTS}
     state = {argument: arrays[name] for name, argument in _ARGUMENTS.items()}
     computed = tuple(field.key for field in wanted if field.part != "input")
     results = solve_arrays(state, computed, constants, precision) if computed else {}
     shape = np.broadcast_shapes(*(array.shape for array in arrays.values()))
-    solved = xr.Dataset(coords=clothed.coords)
+    solved = {}
     for field in wanted:
         given = field.part == "input"
         data = np.broadcast_to(arrays[field.key], shape).astype(precision) if given else results[field.key]
-        solved[field.key] = (order, data, {**field.attributes(), **_provenance(field.part, constants)})
-    return solved
+        solved[field.key] = xr.Variable(order, data, {**field.attributes(), **_provenance(field.part, constants)})
+    return xr.Dataset(solved, coords=clothed.coords)
 
 
 def _dimension_order(clothed: xr.Dataset) -> tuple[str, ...]:
     """The dimensions of the variable that has most of them, which the harmonised inputs keep in canonical order."""
-    widest = max((clothed[name] for name in _ARGUMENTS), key=lambda value: value.ndim)
+    widest = max((clothed.variables[name] for name in _ARGUMENTS), key=lambda value: value.ndim)
     return tuple(str(dim) for dim in widest.dims)
 
 

@@ -123,17 +123,17 @@ def weights(
         return {}
     # Variables without coordinates: nothing has to be aligned, which would cost more than the arithmetic.
     dims = {dim: raw.sizes[dim] for dim in axes.order if dim in raw.dims}
-    sea = clothed["temperature"].variable.notnull() & clothed["salinity"].variable.notnull()
-    sea = sea.set_dims(dims)
+    told = clothed.variables
+    sea = (told["temperature"].notnull() & told["salinity"].notnull()).set_dims(dims)
     found = {
         "cell_area": cell_areas(raw, axes, reading, region).variable, "sea": sea,
-        "top_level": _top_level(sea, clothed["sea_pressure"].variable, axes.vertical),
+        "top_level": _top_level(sea, told["sea_pressure"], axes.vertical),
     }
     if reading.time is not None:
         shares = reading.time_shares[region.get(reading.time, slice(None))]
         found["time_share"] = xr.Variable(reading.time, shares)
-    if "cell_thickness" in clothed:
-        found["cell_thickness"] = clothed["cell_thickness"].variable
+    if "cell_thickness" in told:
+        found["cell_thickness"] = told["cell_thickness"]
     return found
 
 
@@ -146,10 +146,10 @@ def _top_level(sea: xr.Variable, pressure: xr.Variable, vertical: str | None) ->
         downward = bool((last > first).any())
     ordered = sea if downward else sea.isel({vertical: slice(None, None, -1)})
     axis = sea.get_axis_num(vertical)
-    top = ordered.values.argmax(axis)
-    top = top if downward else sea.sizes[vertical] - 1 - top
-    dims = [dim for dim in sea.dims if dim != vertical]
-    return xr.Variable(dims, np.where(sea.values.any(axis), top, -1))
+    first = ordered.values.argmax(axis)
+    there = np.take_along_axis(ordered.values, np.expand_dims(first, axis), axis).squeeze(axis)
+    top = first if downward else sea.sizes[vertical] - 1 - first
+    return xr.Variable([dim for dim in sea.dims if dim != vertical], np.where(there, top, -1))
 
 
 def _boxes(

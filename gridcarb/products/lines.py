@@ -18,6 +18,15 @@ _LN10 = math.log(10.0)
 _LARGEST = float(np.finfo(np.float64).max)
 
 
+def keep_weights_of(weights: Line, sea: npt.NDArray[np.bool_]) -> float:
+    """Set to 0 what is no positive weight of a cell of the sea; gives the sum of the rest."""
+    total = 0.0
+    for i in range(weights.size):
+        weights[i] = weights[i] if weights[i] > 0.0 and sea[i] else 0.0
+        total += weights[i]
+    return total
+
+
 def weigh_line(values: Values, weights: Line) -> tuple[float, float]:
     """Sum of the weights, and of weights times values, of the cells that have a finite value.
 
@@ -25,9 +34,11 @@ def weigh_line(values: Values, weights: Line) -> tuple[float, float]:
     """
     weight = total = 0.0
     for i in range(values.size):
-        there = abs(values[i]) <= _LARGEST
-        weight += weights[i] if there else 0.0
-        total += values[i] * weights[i] if there else 0.0
+        value = np.float64(values[i])
+        there = abs(value) <= _LARGEST
+        mine = weights[i] if there else 0.0
+        weight += mine
+        total += mine * (value if there else 0.0)
     return weight, total
 
 
@@ -41,17 +52,21 @@ def weigh_powers_line(values: Values, weights: Line) -> float:
 
 
 def count_flags_of(flags: npt.NDArray[np.int8], counts: npt.NDArray[np.int64]) -> None:
-    """Add to `counts` how often each value occurs, at the place 128 higher than the value."""
+    """Add to `counts` how often each value occurs, at the place 128 higher than the value.
+
+    counts : 4 x 256, to be added up: neighbours are mostly alike, and counting all in one place would wait for itself.
+    """
     for i in range(flags.size):
-        counts[int(flags[i]) + 128] += 1
+        counts[i % 4, int(flags[i]) + 128] += 1
 
 
-def weigh_flags_of(flags: npt.NDArray[np.int8], weights: Line, sums: Line) -> None:
-    """Add to `sums` the weights of the cells of each value, at the place 128 higher than the value."""
+def weigh_flags_of(flags: npt.NDArray[np.int8], weights: Line, sums: npt.NDArray[np.float64]) -> None:
+    """Add to `sums`, laid out as those counts, the weights of the cells of each value."""
     for i in range(flags.size):
-        sums[int(flags[i]) + 128] += weights[i]
+        sums[i % 4, int(flags[i]) + 128] += weights[i]
 
 
+keep_weights = compile_function(keep_weights_of)
 weigh = compile_function(weigh_line)
 weigh_powers = compile_function(weigh_powers_line)
 _count_flags = compile_function(count_flags_of)
@@ -60,13 +75,15 @@ _weigh_flags = compile_function(weigh_flags_of)
 
 def count_flags(flags: npt.NDArray[np.int8]) -> dict[int, int]:
     """Value -> how often it occurs."""
-    counts = np.zeros(256, dtype=np.int64)
-    _count_flags(flags, counts)
+    table = np.zeros((4, 256), dtype=np.int64)
+    _count_flags(flags, table)
+    counts = table.sum(axis=0)
     return {int(place) - 128: int(counts[place]) for place in np.flatnonzero(counts)}
 
 
 def weigh_flags(flags: npt.NDArray[np.int8], weights: Line) -> dict[int, float]:
     """Value -> sum of the weights of its cells, where that is not zero."""
-    sums = np.zeros(256)
-    _weigh_flags(flags, weights, sums)
+    table = np.zeros((4, 256))
+    _weigh_flags(flags, weights, table)
+    sums = table.sum(axis=0)
     return {int(place) - 128: float(sums[place]) for place in np.flatnonzero(sums)}

@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 
 from gridcarb.fields import Field
 from gridcarb.products.exact import ExactSum
-from gridcarb.products.lines import weigh, weigh_flags, weigh_powers
+from gridcarb.products.lines import keep_weights, weigh, weigh_flags, weigh_powers
 from gridcarb.products.shelf import PRODUCTS, Product
 
 Numbers = NDArray[np.float64]
@@ -97,27 +97,28 @@ class Means:
         """
         if "cell_area" not in block.coords:
             return
-        fields = {key: block[key].variable for key in self.shares["surface"]}
         told = block.variables
-        area, top, sea = told["cell_area"], told["top_level"], told["sea"]
-        if "time_share" in told:
-            area = area * told["time_share"]
+        fields = {key: told[key] for key in self.shares["surface"]}
+        top, sea = told["top_level"], told["sea"]
+        area = [told[name] for name in ("cell_area", "time_share") if name in told]
         vertical = next((dim for dim in sea.dims if dim not in top.dims), None)
         self._count("surface", fields if vertical is None else _at_level(fields, top, vertical), area, top >= 0)
         if "cell_thickness" in told:
-            self._count("volume", fields, area * told["cell_thickness"], sea)
+            self._count("volume", fields, [*area, told["cell_thickness"]], sea)
 
-    def _count(self, extent: str, fields: Mapping[str, xr.Variable], weights: xr.Variable, sea: xr.Variable) -> None:
+    def _count(
+        self, extent: str, fields: Mapping[str, xr.Variable], factors: Sequence[xr.Variable], sea: xr.Variable
+    ) -> None:
+        """Count in fields whose cells weigh the product of the factors, where they are sea."""
         self.known.add(extent)
-        sizes = next(iter(fields.values())).sizes
-        every, wet = (
-            each.set_dims(dict(sizes)).transpose(*sizes).values  # type: ignore[no-untyped-call]
-            for each in (weights, sea)
-        )
-        flat = np.where((every > 0) & wet, every, 0.0).ravel()
-        self.sizes[extent].add(float(flat.sum()))
+        sizes = dict(next(iter(fields.values())).sizes)
+        weights = np.ones(tuple(sizes.values()))
+        for factor in factors:
+            weights *= _spread(factor, sizes)
+        flat = weights.ravel()
+        self.sizes[extent].add(keep_weights(flat, np.ascontiguousarray(_spread(sea, sizes)).ravel()))
         for key, share in self.shares[extent].items():
-            share.add(fields[key].transpose(*sizes).values.ravel(), flat)
+            share.add(_spread(fields[key], sizes).ravel(), flat)
 
     def merge(self, other: Means) -> None:
         """Count in the shares of another tally of the same fields."""
@@ -138,8 +139,18 @@ class Means:
         }  # fmt: skip
 
 
+def _spread(variable: xr.Variable, sizes: Mapping[Any, int]) -> NDArray[Any]:
+    """The numbers over all of `sizes`, in its order of dimensions."""
+    if variable.dims == tuple(sizes):
+        return variable.values
+    spread = variable.set_dims(dict(sizes)).transpose(*sizes)  # type: ignore[no-untyped-call]
+    return np.asarray(spread.values)
+
+
 def _at_level(fields: Mapping[str, xr.Variable], top: xr.Variable, vertical: Any) -> dict[str, xr.Variable]:
     """Each field at the level that `top` tells for each column; where it tells none, at the first."""
+    if not (top.values > 0).any():
+        return {key: field_.isel({vertical: 0}) for key, field_ in fields.items()}
     found = {}
     for key, field_ in fields.items():
         rest = [dim for dim in field_.dims if dim != vertical]

@@ -102,7 +102,7 @@ class Ranges:
     def add(self, block: xr.Dataset) -> None:
         """Count in the fields of a block; every field must be there."""
         for key, share in self.shares.items():
-            share.add(block[key].values)
+            share.add(block.variables[key].values)
 
     def merge(self, other: Ranges) -> None:
         """Count in the shares of another tally of the same fields."""

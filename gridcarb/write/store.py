@@ -93,8 +93,8 @@ def write_block(path: Path, region: Mapping[str, slice], block: xr.Dataset) -> d
         is written. Writing the same block twice leaves the same bytes.
     """
     work = []
-    for key, variable in block.data_vars.items():
-        field = chunked_field(path, str(key))
+    for key in block.data_vars:
+        field, variable = chunked_field(path, str(key)), block.variables[key]
         if set(field.dims) != set(variable.dims):
             raise BlockError(f"'{key}' has dimensions {tuple(variable.dims)}, the store has {field.dims}", where=str(path))
         selection = field.selection(region)

@@ -10,7 +10,8 @@ import numpy.typing as npt
 import xarray as xr
 import zarr
 
-from gridcarb.sources.places import split
+from gridcarb.sources.in_thread import read_in_thread
+from gridcarb.sources.places import is_url, split
 from gridcarb.sources.stored import Head, Key, Lengths, choose_group, no_group
 
 _AS_STORED: dict[str, Any] = {
@@ -44,15 +45,26 @@ class ZarrStore:
         ]
         self._variables: dict[str, xr.Variable] = {}
         self.attrs: Mapping[str, Any] = {}
-        for dataset in self._open:
+        self._store, self._arrays, self._homes = store, dict[str, "zarr.Array[Any]"](), dict[str, str]()
+        for depth, dataset in enumerate(self._open):
             self._variables |= {str(name): variable for name, variable in dataset.variables.items()}
+            self._homes |= {str(name): "/".join([*parts[:depth], str(name)]) for name in dataset.variables}
             self.attrs = {**self.attrs, **dataset.attrs}
 
     def heads(self) -> dict[str, Head]:
         return heads_of(self._variables)
 
     def read(self, name: str, key: Key) -> npt.NDArray[Any]:
-        return np.asarray(self._variables[name][key].values)
+        variable = self._variables[name]
+        plain = variable.dtype.kind in "fiu" and all(isinstance(part, slice) for part in key) and variable.ndim > 0
+        if plain and not is_url(self._store):
+            return read_in_thread(self._array(name), key)
+        return np.asarray(variable[key].values)
+
+    def _array(self, name: str) -> zarr.Array[Any]:
+        if name not in self._arrays:
+            self._arrays[name] = zarr.open_array(self._store, path=self._homes[name], mode="r")
+        return self._arrays[name]
 
     def layout(self, name: str) -> Lengths:
         head = heads_of({name: self._variables[name]})[name]

@@ -32,7 +32,6 @@ def share_one_heap() -> None:
 
 def hold_memory() -> None:
     """From now on, freed memory stays with this process, and what is there now is not searched for rubbish."""
-    gc.collect()
     gc.freeze()
     share_one_heap()
     library = _c_library()

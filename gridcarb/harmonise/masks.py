@@ -7,7 +7,7 @@ Rules, in the order they are applied to a value (the first that fits counts it):
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -16,6 +16,7 @@ import numpy.typing as npt
 import xarray as xr
 
 from gridcarb.errors import InputError
+from gridcarb.harmonise.sifting import Marks, Numbers, sift
 
 RULES = ("nan", "fill_value", "missing_value", "default_fill", "usual_fill", "valid_range", "beyond_physics", "land")
 """The rules by which a value or a cell is masked, in order."""
@@ -27,15 +28,15 @@ DEFAULT_FILLS = {
 """NetCDF default fill values by type; bytes have none."""
 
 _RANGE_KEYS = ("valid_range", "valid_min", "valid_max")
-_USUAL = (-999.0, -9999.0)
+_USUAL = np.array([-999.0, -9999.0])
 _BEYOND = 1e15
 
 MARKS = {rule: np.uint8(1 << place) for place, rule in enumerate(RULES)}
 """The mark of each rule: one bit of a byte, so that marks of several variables can be laid over each other."""
 
-Numbers = npt.NDArray[np.float64]
-Marks = npt.NDArray[np.uint8]
 Flags = npt.NDArray[np.bool_]
+
+_OWN_MARKS = np.array([MARKS[rule] for rule in ("nan", "usual_fill", "valid_range", "beyond_physics")], dtype=np.uint8)
 
 
 @dataclass(frozen=True)
@@ -96,18 +97,56 @@ def unmask(raw: npt.NDArray[Any], reading: MaskReading) -> tuple[Numbers, Marks]
     """
     if reading.unsigned:
         raw = raw.view(raw.dtype.str.replace("i", "u"))
-    numbers = raw.astype(np.float64)
-    if (reading.scale, reading.offset) != (1.0, 0.0):
+    packed = (reading.scale, reading.offset) != (1.0, 0.0)
+    line = np.ascontiguousarray(raw, _known_type(raw.dtype)).reshape(-1)
+    with np.errstate(over="ignore"):
+        numbers = line * np.float64(reading.scale) + reading.offset if packed else np.empty(line.size)
+    marks = np.empty(line.size, np.uint8)
+    floats = raw.dtype.kind == "f"
+    fills, fill_marks = _fills(reading, raw.dtype)
+    low, high = -np.inf if reading.low is None else reading.low, np.inf if reading.high is None else reading.high
+    sift(line, numbers, marks, packed, *_sound(reading, fills), fills, fill_marks, floats, _USUAL if floats else _USUAL[:0],
+         low, high, reading.range_unpacked, _BEYOND, _OWN_MARKS)  # fmt: skip
+    return numbers.reshape(raw.shape), marks.reshape(raw.shape)
+
+
+def _known_type(dtype: np.dtype[Any]) -> np.dtype[Any]:
+    """A type of this machine's that compiled code knows and that loses nothing."""
+    return np.dtype(np.float32) if dtype == np.float16 else dtype.newbyteorder("=")
+
+
+def _fills(reading: MaskReading, dtype: np.dtype[Any]) -> tuple[Numbers, Marks]:
+    """Fill values of packed numbers and their marks. Numbers and fill of a float type are compared rounded to single
+    precision: 1e20 is not the same number in single and double precision, and files mix the two."""
+    found = np.array([value for _, value in reading.fills], dtype=np.float64)
+    if dtype.kind == "f":
         with np.errstate(over="ignore"):
-            numbers = numbers * reading.scale + reading.offset
-    marks = np.isnan(raw).view(np.uint8) * MARKS["nan"] if raw.dtype.kind == "f" else np.zeros(raw.shape, np.uint8)
-    more = False
-    for rule, hit in _hits(raw, numbers, reading):
-        marks |= (hit & (marks == 0)).view(np.uint8) * MARKS[rule]
-        more = True
-    if more:
-        np.copyto(numbers, np.nan, where=marks != 0)
-    return numbers, marks
+            rounded = found.astype(np.float32).astype(np.float64)
+        found = np.where(found != 0, rounded, found)
+    elif dtype.kind == "u":
+        found = np.where(found < 0, found + 2.0 ** (8 * dtype.itemsize), found)  # a signed fill on numbers taken as unsigned
+    return found, np.array([MARKS[rule] for rule, _ in reading.fills], dtype=np.uint8)
+
+
+def _sound(reading: MaskReading, fills: Numbers) -> tuple[float, float]:
+    """Between these packed numbers, both left out, no rule applies: most numbers lie there, and are looked at no further.
+
+    It need not be all that is sound; where the range is given in unpacked numbers it is nothing.
+    """
+    if reading.range_unpacked and (reading.low is not None or reading.high is not None):
+        return np.inf, -np.inf
+    most = (_BEYOND - abs(reading.offset)) / max(1.0, abs(reading.scale))
+    floor, ceiling = max(-most, float(_USUAL.max())), most
+    if reading.low is not None:
+        floor = max(floor, np.nextafter(reading.low, -np.inf))
+    if reading.high is not None:
+        ceiling = min(ceiling, np.nextafter(reading.high, np.inf))
+    for fill in fills[(fills > floor) & (fills < ceiling)]:
+        if fill <= 0:
+            floor = max(floor, fill * (1 - 1e-6))
+        else:
+            ceiling = min(ceiling, fill * (1 - 1e-6))
+    return float(floor), float(ceiling)
 
 
 def rules_met(marks: Marks) -> tuple[str, ...]:
@@ -144,51 +183,6 @@ def unmask_roles(
         }
     met = rules_met(marked.values)
     return clean, {rule: int(np.count_nonzero(marked.values & MARKS[rule])) if rule in met else 0 for rule in RULES}
-
-
-def _hits(raw: npt.NDArray[Any], numbers: Numbers, reading: MaskReading) -> Iterator[tuple[str, Flags]]:
-    """Rule by rule after `nan`, where it applies; rules that cannot apply to any of the numbers cost nothing."""
-    lowest, highest = (float(edge) for edge in _edges(raw))
-    for rule, value in reading.fills:
-        if reading.unsigned or lowest - abs(value) * 1e-6 <= value <= highest + abs(value) * 1e-6:
-            yield rule, _equal(raw, value)
-    for value in _USUAL:
-        if raw.dtype.kind == "f" and lowest <= value:
-            yield "usual_fill", raw == value
-    # Both sides in double precision: a limit must not be rounded to the type of the numbers.
-    judged = numbers if reading.range_unpacked else raw
-    if reading.low is not None:
-        yield "valid_range", judged < np.float64(reading.low)
-    if reading.high is not None:
-        yield "valid_range", judged > np.float64(reading.high)
-    packed = (reading.scale, reading.offset) != (1.0, 0.0)
-    if packed or max(highest, -lowest) >= _BEYOND:
-        yield "beyond_physics", np.abs(numbers if packed else raw) >= _BEYOND
-
-
-def _edges(raw: npt.NDArray[Any]) -> tuple[Any, Any]:
-    """Lowest and highest number, NaN left aside; a range of nothing if there are none."""
-    if not raw.size:
-        return np.inf, -np.inf
-    return np.fmin.reduce(raw, axis=None), np.fmax.reduce(raw, axis=None)
-
-
-def _equal(raw: npt.NDArray[Any], fill: float) -> Flags:
-    """Where packed numbers are the fill value, in their own type or as both round to single precision.
-
-    1e20 is not the same number in single and double precision, and files mix the two.
-    """
-    if raw.dtype.kind in "iu":
-        if not float(fill).is_integer():
-            return np.zeros(raw.shape, dtype=bool)
-        information = np.iinfo(raw.dtype)
-        whole = int(fill)
-        if whole < 0 and raw.dtype.kind == "u":
-            whole += 2 ** (8 * raw.dtype.itemsize)  # a signed fill on numbers taken as unsigned
-        inside = information.min <= whole <= information.max
-        return np.asarray(raw == whole) if inside else np.zeros(raw.shape, dtype=bool)
-    with np.errstate(over="ignore"):
-        return np.asarray(raw.astype(np.float32, copy=False) == np.float32(fill)) if fill else np.asarray(raw == 0)
 
 
 def _numbers(attrs: Mapping[Any, Any], key: str, where: str) -> list[float]:

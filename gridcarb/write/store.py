@@ -13,6 +13,7 @@ from typing import Any, Literal, NamedTuple
 import numpy as np
 import xarray as xr
 import zarr
+from zarr.core.chunk_key_encodings import ChunkKeyEncodingParams
 from zarr.errors import ZarrUserWarning
 
 from gridcarb.axes import Axes
@@ -34,6 +35,11 @@ from gridcarb.write.encoding import (
     split_chunks,
     stored,
 )  # fmt: skip
+
+_KEYS: dict[Literal[2, 3], ChunkKeyEncodingParams] = {
+    2: {"name": "v2", "separator": "."}, 3: {"name": "default", "separator": "."},
+}
+"""How chunk files are called: ``c.0.3.1``, all of a field in one folder. With a slash each would lie in a folder alone."""
 
 
 def create(
@@ -132,7 +138,7 @@ def _make(
     third = group.metadata.zarr_format == 3
     return group.create_array(
         name, shape=tuple(shape.values()), dtype=str if dtype.kind == "O" else dtype, chunks=chunks,
-        fill_value=fill,
+        fill_value=fill, chunk_key_encoding=_KEYS[group.metadata.zarr_format],
         compressors=compressor(group.metadata.zarr_format), dimension_names=dims if third else None,
         attributes=_plain(attributes if third else {**attributes, DIMS_V2: dims}),
     )

@@ -32,18 +32,21 @@ class Footprint:
     """What the cells of a run cost in memory.
 
     raw_bytes : bytes of all input roles of one cell as stored in the files.
-    fields : number of float64 fields solved.
+    fields : number of fields solved.
     item_bytes : bytes of a stored value.
+    per_volume : whether results are solved in float64 and kept until they are divided by a volume.
     """
 
     raw_bytes: int
     fields: int
     item_bytes: int
+    per_volume: bool = False
 
     @property
     def bytes_per_cell(self) -> int:
         """Peak bytes of one cell on its way through a task."""
-        return self.raw_bytes + 8 * (_CLOTHED_ROWS + _WORKING_ROWS) + self.fields * (8 + self.item_bytes)
+        result = self.item_bytes + (8 if self.per_volume else 0)
+        return self.raw_bytes + 8 * (_CLOTHED_ROWS + _WORKING_ROWS) + self.fields * result
 
     def projected(self, cells: int) -> int:
         """Peak bytes of a task of `cells` cells."""

@@ -232,7 +232,7 @@ def _fields(recipe: Recipe, understanding: Understanding) -> tuple[Field, ...]:
 
 def _footprint(recipe: Recipe, collection: Collection, fields: Sequence[Field]) -> Footprint:
     raw = sum(np.dtype(source.array.dtype).itemsize for source in collection.roles.values())
-    return Footprint(raw, len(fields), np.dtype(recipe.output.precision).itemsize)
+    return Footprint(raw, len(fields), np.dtype(recipe.output.precision).itemsize, recipe.output.amounts != "per mass")
 
 
 def _layout(recipe: Recipe, collection: Collection, footprint: Footprint, allowed: int, workers: int) -> Layout:

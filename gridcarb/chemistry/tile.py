@@ -20,6 +20,7 @@ Array = npt.NDArray[np.float64]
 _INPUTS = ("temperature", "salinity", "pressure", "dic", "alkalinity", "phosphate", "silicate")
 """In the order in which compiled code takes them."""
 
+_SCARCE = slice(3, 5)
 _FEW = 0.85
 _NO_PLACES = np.empty(0, dtype=np.intp)
 
@@ -147,10 +148,13 @@ def _solve(
 
 
 def _wet(inputs: list[Array], size: int) -> npt.NDArray[np.intp] | None:
-    """The places of the cells that miss no input; None where there are so many that picking them out would cost more
-    than solving the rest with them. Land and sea floor are often half of a grid."""
+    """The places of the cells to solve: land and sea floor, often half of a grid, are left out. None where there are so
+    many that picking them out would cost more than solving the rest with them.
+
+    Land misses everything, and what else is not known mostly DIC or alkalinity: only these are looked at. A cell that
+    misses another input is found out when it is judged.
+    """
     missing = np.zeros(size, dtype=bool)
-    for array in inputs:
-        if array.size > 1:
-            missing |= np.isnan(array)
+    for array in (line for line in inputs[_SCARCE] if line.size > 1):
+        missing |= np.isnan(array)
     return np.flatnonzero(~missing) if np.count_nonzero(missing) > (1.0 - _FEW) * size else None

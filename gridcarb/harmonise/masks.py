@@ -124,7 +124,7 @@ def _fills(reading: MaskReading, dtype: np.dtype[Any]) -> tuple[Numbers, Marks]:
             rounded = found.astype(np.float32).astype(np.float64)
         found = np.where(found != 0, rounded, found)
     elif dtype.kind == "u":
-        found = np.where(found < 0, found + 2.0 ** (8 * dtype.itemsize), found)  # a signed fill on numbers taken as unsigned
+        found = np.where(found < 0, found + 2.0 ** (8 * dtype.itemsize), found)  # signed fill, unsigned numbers
     return found, np.array([MARKS[rule] for rule, _ in reading.fills], dtype=np.uint8)
 
 

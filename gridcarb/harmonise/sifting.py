@@ -1,4 +1,4 @@
-"""Raw numbers sifted in one compiled passage: widened to double precision, marked by the rule that applies, NaN where any does."""
+"""Raw numbers sifted in one compiled passage: widened, marked by the rule that applies, and NaN where one does."""
 
 from __future__ import annotations
 

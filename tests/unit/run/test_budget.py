@@ -28,7 +28,8 @@ from gridcarb.write.store import create
 FOOTPRINT = Footprint(raw_bytes=24, fields=3, item_bytes=4)
 
 
-@given(st.builds(Footprint, st.integers(4, 96), st.integers(1, 40), st.sampled_from((4, 8)), st.booleans()), st.integers(0, 10**10))
+@given(st.builds(Footprint, st.integers(4, 96), st.integers(1, 40), st.sampled_from((4, 8)), st.booleans()),
+       st.integers(0, 10**10))
 def test_the_most_cells_that_fit_are_the_most(footprint: Footprint, allowed: int) -> None:
     cells = footprint.cells_within(allowed)
     assert footprint.projected(cells + 1) > allowed

@@ -54,15 +54,27 @@ class Layout:
         """Cells of the largest block."""
         return math.prod(self.block.values())
 
-    def numbers(self, source_chunks: Mapping[str, int]) -> Iterator[int]:
-        """Every block, those that read the same chunks of the source one after the other."""
+    def numbers(self, source_chunks: Mapping[str, int], abreast: int = 1) -> Iterator[int]:
+        """Every block, those that read the same chunks of the source one after the other.
+
+        abreast : how many processes read for themselves: the blocks of so many groups come in turn, one of each, so that
+            each process is mostly given blocks of its own group.
+        """
+        groups = self._groups(source_chunks)
+        while some := list(itertools.islice(groups, abreast)):
+            yield from (number for row in itertools.zip_longest(*some) for number in row if number is not None)
+
+    def _groups(self, source_chunks: Mapping[str, int]) -> Iterator[Iterator[int]]:
+        """The blocks that lie in the same chunks of the source, chunk by chunk."""
         group = [max(1, round(source_chunks.get(dim, 1) / self.block[dim])) for dim in self.sizes]
-        strides = [math.prod(self.counts[place + 1:]) for place in range(len(self.counts))]
         corners = (range(0, count, step) for count, step in zip(self.counts, group, strict=True))
-        for corner in itertools.product(*corners):
-            parts = (range(at, min(at + step, count)) for at, step, count in zip(corner, group, self.counts, strict=True))
-            for place in itertools.product(*parts):
-                yield sum(at * stride for at, stride in zip(place, strides, strict=True))
+        return (self._within(corner, group) for corner in itertools.product(*corners))
+
+    def _within(self, corner: Sequence[int], group: Sequence[int]) -> Iterator[int]:
+        strides = [math.prod(self.counts[place + 1:]) for place in range(len(self.counts))]
+        parts = (range(at, min(at + step, count)) for at, step, count in zip(corner, group, self.counts, strict=True))
+        for place in itertools.product(*parts):
+            yield sum(at * stride for at, stride in zip(place, strides, strict=True))
 
     def region(self, number: int) -> Region:
         """The part of the grid that block `number` (0-based, the last dimension fastest) covers."""

@@ -103,8 +103,8 @@ class Plan:
         return reads_of_a_chunk(self.layout, source_chunks(self.collection))
 
     def numbers(self) -> Iterator[int]:
-        """Every block, those that share chunks of the source one after the other."""
-        return self.layout.numbers(source_chunks(self.collection))
+        """Every block, those that share chunks of the source one after the other in each process."""
+        return self.layout.numbers(source_chunks(self.collection), self.processes)
 
     def job(self, partial: Path) -> Job:
         """What the blocks have in common, for a store in the folder `partial`."""

@@ -19,7 +19,7 @@ def test_a_byte_in_the_store_and_one_in_the_file(place) -> None:
     assert call("run", here.recipe, "--quiet").exit_code == 0
     wanted = {path: path.read_bytes() for path in here.result.rglob("*") if path.is_file()}
     assert call("verify", here.result, "--quiet").exit_code == 0
-    chunk = sorted(path for path in (here.result / "fields.zarr" / "ph_total_scale" / "c").rglob("*") if path.is_file())[2]
+    chunk = sorted((here.result / "fields.zarr" / "ph_total_scale").glob("c.*"))[2]
     turn_over(chunk)
     turn_over(here.result / "fields.nc")
 

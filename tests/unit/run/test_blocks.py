@@ -102,6 +102,20 @@ def test_every_block_is_numbered_once_and_those_that_share_chunks_follow_each_ot
         assert changes == len(set(seen)) - 1
 
 
+@given(layouts(), st.integers(1, 5))
+def test_processes_abreast_are_given_blocks_of_their_own_chunks(drawn, abreast: int) -> None:
+    layout, _, source, _ = drawn
+    numbers = list(layout.numbers(source, abreast))
+    assert sorted(numbers) == list(range(len(layout)))
+    if all(source.get(dim, 1) % layout.block[dim] == layout.sizes[dim] % source.get(dim, 1) == 0 for dim in layout.sizes):
+        groups = math.prod(layout.sizes[dim] // source.get(dim, 1) for dim in layout.sizes)
+        blocks_each, full = len(layout) // groups, groups // abreast * abreast
+        for process in range(abreast):
+            mine = [layout.region(number) for number in numbers[process:full * blocks_each:abreast]]
+            seen = [tuple(part.start // source.get(dim, 1) for dim, part in region.items()) for region in mine]
+            assert sum(one != other for one, other in pairwise(seen)) == max(0, len(set(seen)) - 1)
+
+
 @given(layouts())
 def test_reads_of_a_chunk_are_counted_right(drawn) -> None:
     layout, _, source, _ = drawn

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import math
 import pickle
 from pathlib import Path
 
@@ -102,7 +103,7 @@ def test_chunks_that_cannot_be_kept_are_told(recipe, ocean, save_ocean, tmp_path
     assert (plan.kept, plan.reads_of_a_chunk()) == (0, 180)
     rows = {label: value for section in plan.report().sections for label, value in section.rows}
     assert "read up to 180 times: blocks are smaller than its chunks; to keep these would take" in rows["reading"]
-    words["engine"]["memory"] = f"{plan.memory_to_read_once() / 1e6:.3f} MB"
+    words["engine"]["memory"] = f"{math.ceil(plan.memory_to_read_once() / 1e3) / 1e3:.3f} MB"
     assert prepare(recipe(path, **words)).reads_of_a_chunk() == 1
 
 

@@ -11,7 +11,7 @@ DEFAULT_TASK_BYTES = 200_000_000
 """What one task may take when the recipe states no memory."""
 
 DEFAULT_KEPT_BYTES = 128_000_000
-"""What unpacked chunks of the source may take when the recipe states no memory."""
+"""What unpacked chunks of the source may take in each process when the recipe states no memory."""
 
 PROGRAM_BYTES = 400_000_000
 """What the process takes before the first block, for libraries and the compiler (measured); it comes on top."""
@@ -71,7 +71,7 @@ def kept_per_process(shared: int, memory: int | None, processes: int, tasks: int
     Twice as much is kept where there is room, since workers do not all come to the next chunks at once; nothing where there
     is too little, since each chunk would be dropped before it is needed again.
     """
-    room = (DEFAULT_KEPT_BYTES if memory is None else min(memory // 2, memory - tasks)) // processes
+    room = DEFAULT_KEPT_BYTES if memory is None else min(memory // 2, memory - tasks) // processes
     return min(2 * shared, room) if shared <= room else 0
 
 

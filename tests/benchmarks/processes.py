@@ -51,7 +51,7 @@ inputs: {{files: {source}}}
 reading: {{temperature: in situ, salinity: practical}}
 chemistry: {{fields: [{", ".join(FIELDS)}]}}
 output: {{folder: {folder / "result"}, netcdf: false}}
-engine: {{kind: processes, workers: {workers}, block: {{time: 1, cells: 16200}}}}
+engine: {{kind: processes, workers: {workers}}}
 """)
     watch = Stopwatch()
     conduct(prepare(recipe), watch)
@@ -61,7 +61,7 @@ engine: {{kind: processes, workers: {workers}, block: {{time: 1, cells: 16200}}}
 
 def main() -> None:
     """Print seconds and the ratio."""
-    steps = int(sys.argv[1]) if len(sys.argv) > 1 else 12
+    steps = int(sys.argv[1]) if len(sys.argv) > 1 else 24
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
         clothes = Clothes(temperature="in situ", salinity="practical", tracer_units="umol kg-1")

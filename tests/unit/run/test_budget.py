@@ -49,7 +49,8 @@ def test_what_blocks_share_is_kept_twice_once_or_not_at_all() -> None:
     assert kept_per_process(10**8, 8 * 10**8, 4, 10**8) == 10**8
     assert kept_per_process(10**8, 3 * 10**8, 1, 25 * 10**7) == 0
     assert kept_per_process(DEFAULT_KEPT_BYTES, None, 1, 10**8) == DEFAULT_KEPT_BYTES
-    assert kept_per_process(DEFAULT_KEPT_BYTES, None, 2, 10**8) == 0
+    assert kept_per_process(DEFAULT_KEPT_BYTES, None, 2, 10**8) == DEFAULT_KEPT_BYTES
+    assert kept_per_process(DEFAULT_KEPT_BYTES + 1, None, 1, 10**8) == 0
 
 
 def test_where_the_smallest_block_does_not_fit_smaller_chunks_are_advised() -> None:

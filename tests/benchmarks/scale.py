@@ -96,11 +96,11 @@ def sparse_ocean(folder: Path, steps: int) -> Path:
 
 def planner(blocks: int, folder: Path) -> tuple[int, float]:
     """Blocks planned, and the seconds that took."""
-    path = sparse_ocean(folder, max(1, blocks // BANDS))
+    path, band = sparse_ocean(folder, max(1, blocks // BANDS)), {"time": 1, "cells": ROWS * COLUMNS // BANDS}
     text = {
         "recipe": 1, "inputs": {"files": str(path)}, "reading": {"depth": "surface", "temperature": "conservative"},
-        "chemistry": {"fields": ["ph_total_scale"]}, "output": {"folder": str(folder / "result"), "netcdf": False},
-        "engine": {"workers": 2, "block": {"time": 1, "cells": ROWS * COLUMNS // BANDS}},
+        "chemistry": {"fields": ["ph_total_scale"]},
+        "output": {"folder": str(folder / "result"), "netcdf": False, "chunks": band}, "engine": {"workers": 2, "block": band},
     }  # fmt: skip
     begun = time.perf_counter()
     plan = prepare(check(json.dumps(text)))

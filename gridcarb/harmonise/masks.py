@@ -57,6 +57,11 @@ class MaskReading:
     offset: float = 0.0
     unsigned: bool = False
 
+    @property
+    def packed(self) -> bool:
+        """Whether there is anything to unpack."""
+        return (self.scale, self.offset) != (1.0, 0.0)
+
 
 def read_mask(variable: xr.DataArray, where: str) -> MaskReading:
     """The mask and packing of a raw variable, from its type and attributes.
@@ -97,16 +102,16 @@ def unmask(raw: npt.NDArray[Any], reading: MaskReading) -> tuple[Numbers, Marks]
     """
     if reading.unsigned:
         raw = raw.view(raw.dtype.str.replace("i", "u"))
-    packed = (reading.scale, reading.offset) != (1.0, 0.0)
     line = np.ascontiguousarray(raw, _known_type(raw.dtype)).reshape(-1)
     with np.errstate(over="ignore"):
-        numbers = line * np.float64(reading.scale) + reading.offset if packed else np.empty(line.size)
+        numbers = line * np.float64(reading.scale) + reading.offset if reading.packed else np.empty(line.size)
     marks = np.empty(line.size, np.uint8)
     floats = raw.dtype.kind == "f"
     fills, fill_marks = _fills(reading, raw.dtype)
     low, high = -np.inf if reading.low is None else reading.low, np.inf if reading.high is None else reading.high
-    sift(line, numbers, marks, packed, *_sound(reading, fills), fills, fill_marks, floats, _USUAL if floats else _USUAL[:0],
-         low, high, reading.range_unpacked, _BEYOND, _OWN_MARKS)  # fmt: skip
+    usual = _USUAL if floats else _USUAL[:0]
+    sift(line, numbers, marks, reading.packed, *_sound(reading, fills), fills, fill_marks, floats, usual, low, high,
+         reading.range_unpacked, _BEYOND, _OWN_MARKS)  # fmt: skip
     return numbers.reshape(raw.shape), marks.reshape(raw.shape)
 
 
@@ -131,9 +136,10 @@ def _fills(reading: MaskReading, dtype: np.dtype[Any]) -> tuple[Numbers, Marks]:
 def _sound(reading: MaskReading, fills: Numbers) -> tuple[float, float]:
     """Between these packed numbers, both left out, no rule applies: most numbers lie there, and are looked at no further.
 
-    It need not be all that is sound; where the range is given in unpacked numbers it is nothing.
+    It need not be all that is sound; where packed numbers have their range in unpacked ones it is nothing.
     """
-    if reading.range_unpacked and (reading.low is not None or reading.high is not None):
+    ranged = reading.low is not None or reading.high is not None
+    if ranged and reading.range_unpacked and reading.packed:
         return np.inf, -np.inf
     most = (_BEYOND - abs(reading.offset)) / max(1.0, abs(reading.scale))
     floor, ceiling = max(-most, float(_USUAL.max())), most

@@ -100,7 +100,8 @@ def planner(blocks: int, folder: Path) -> tuple[int, float]:
     text = {
         "recipe": 1, "inputs": {"files": str(path)}, "reading": {"depth": "surface", "temperature": "conservative"},
         "chemistry": {"fields": ["ph_total_scale"]},
-        "output": {"folder": str(folder / "result"), "netcdf": False, "chunks": band}, "engine": {"workers": 2, "block": band},
+        "output": {"folder": str(folder / "result"), "netcdf": False, "chunks": band},
+        "engine": {"workers": 2, "block": band},
     }  # fmt: skip
     begun = time.perf_counter()
     plan = prepare(check(json.dumps(text)))

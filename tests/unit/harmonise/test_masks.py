@@ -87,6 +87,37 @@ def test_valid_range_of_numbers_unpacked_by_the_reader() -> None:
     same(unmask(raw.values, read_mask(raw, ""))[0].tolist(), [5.0, np.nan])
 
 
+@settings(deadline=None)
+@given(
+    st.sampled_from(["f4", "f8", ">f4", "i2", "i4", "u1"]), st.lists(st.sampled_from(
+        [0.0, 1.0, 7.0, 98.0, 99.0, 100.0, 200.0, -1.0, -98.0, -99.0, -100.0, -999.0, -9999.0, 1e15, 1e20, np.inf,
+         np.nan]), min_size=1, max_size=20),
+    st.sampled_from([None, 0.0, 99.0, -99.0, 1e20]), st.sampled_from([None, 0.0, -99.0]),
+    st.sampled_from([None, 7.0, 150.0]), st.sampled_from([(1.0, 0.0), (0.5, 10.0), (-2.0, 3.0)]),
+)  # fmt: skip
+def test_every_number_is_judged_as_the_rules_say(dtype, values, fill, low, high, packing) -> None:
+    """The rules one by one in plain words, number by number."""
+    if np.dtype(dtype).kind != "f":
+        bounds = np.iinfo(dtype)
+        values = [value for value in values if np.isfinite(value) and bounds.min <= value <= bounds.max]
+    raw = np.array(values, dtype=dtype)
+    attrs = {"_FillValue": fill, "valid_min": low, "valid_max": high, "scale_factor": packing[0], "add_offset": packing[1]}
+    attrs = {key: value for key, value in attrs.items() if value is not None}
+    numbers, marks = unmask(raw, read_mask(xr.DataArray(raw, attrs=attrs), ""))
+    for given_, number, mark in zip(raw.astype("f8"), numbers, marks, strict=True):
+        unpacked = given_ * packing[0] + packing[1]
+        alike = np.float32(given_) == np.float32(fill) if np.dtype(dtype).kind == "f" and fill else given_ == fill
+        rules = {
+            "nan": np.isnan(given_), "fill_value": fill is not None and alike,
+            "usual_fill": np.dtype(dtype).kind == "f" and given_ in (-999.0, -9999.0),
+            "valid_range": (low is not None and unpacked < low) or (high is not None and unpacked > high),
+            "beyond_physics": abs(unpacked) >= 1e15,
+        }
+        first = next((rule for rule, hit in rules.items() if hit), None)
+        assert rules_met(np.array([mark])) == ((first,) if first else ())
+        same([number], [np.nan if first else unpacked])
+
+
 def test_attributes_that_are_no_numbers_are_refused() -> None:
     with pytest.raises(InputError, match="_FillValue = 'none' is not a number") as caught:
         decode([1.0], "f8", _FillValue="none")

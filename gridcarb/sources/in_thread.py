@@ -8,6 +8,7 @@ chunk is given as it was unpacked, without another copy.
 from __future__ import annotations
 
 import asyncio
+import itertools
 from collections.abc import Callable
 from concurrent.futures import Future, ThreadPoolExecutor
 from typing import Any, TypeVar
@@ -34,26 +35,31 @@ def read_in_thread(array: zarr.Array[Any], key: Key) -> npt.NDArray[Any]:
 
 
 async def _read(array: zarr.Array[Any], key: Key) -> Any:
-    place = _only_chunk(array, key)
-    whole = None if place is None else await _unpacked(array, place)
-    if place is None or whole is None:
+    """Chunk by chunk, so that never more than one is in memory beside what is asked for."""
+    asked = [part.indices(size) for part, size in zip(key, array.shape, strict=True)]
+    plain = array.shards is None and array.order == "C" and all(step == 1 and stop > start for start, stop, step in asked)
+    if not plain:  # chunks that lie together in larger files, columns first, every other number, nothing
         return await array.async_array.getitem(key)
-    there = tuple(slice(size - at * chunk) for at, size, chunk in zip(place, array.shape, array.chunks, strict=True))
-    return whole[there].astype(array.dtype, copy=False)
+    found = np.empty([stop - start for start, stop, _ in asked], array.dtype)
+    cut = list(zip(asked, array.chunks, strict=True))
+    for place in itertools.product(*(range(start // chunk, -(-stop // chunk)) for (start, stop, _), chunk in cut)):
+        here = tuple(slice(max(start, at * chunk), min(stop, at * chunk + chunk))
+                     for at, ((start, stop, _), chunk) in zip(place, cut, strict=True))  # fmt: skip
+        part = await _part(array, place, here)
+        if part.shape == found.shape == array.chunks:
+            return part.astype(array.dtype, copy=False)
+        inside = (slice(each.start - start, each.stop - start) for each, (start, *_) in zip(here, asked, strict=True))
+        found[tuple(inside)] = part
+    return found
 
 
-def _only_chunk(array: zarr.Array[Any], key: Key) -> tuple[int, ...] | None:
-    """The chunk that is all of what is asked for; None if it is another part, or if chunks lie together in larger files, or
-    columns first."""
-    if array.shards is not None or array.order != "C":
-        return None
-    places = []
-    for part, size, chunk in zip(key, array.shape, array.chunks, strict=True):
-        start, stop, step = part.indices(size)
-        if step != 1 or start % chunk or stop != min(start + chunk, size):
-            return None
-        places.append(start // chunk)
-    return tuple(places)
+async def _part(array: zarr.Array[Any], place: tuple[int, ...], here: Key) -> Any:
+    """What one chunk holds of an array there; what was never written is filled by the library."""
+    whole = await _unpacked(array, place)
+    if whole is None:
+        return await array.async_array.getitem(here)
+    corner = [at * chunk for at, chunk in zip(place, array.chunks, strict=True)]
+    return whole[tuple(slice(each.start - at, each.stop - at) for each, at in zip(here, corner, strict=True))]
 
 
 async def _unpacked(array: zarr.Array[Any], place: tuple[int, ...]) -> npt.NDArray[Any] | None:

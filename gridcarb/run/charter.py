@@ -24,7 +24,7 @@ _NUMERIC = ("gridcarb", "numpy", "numba", "gsw", "zarr", "numcodecs")
 """What decides the last bit of a number, and the bytes it is stored in."""
 
 _ROOMS = ("sources", "harmonise", "chemistry", "write")
-_FREE = {"engine": True, "figures": True, "output": {"folder", "replace", "zarr", "netcdf"}}
+_FREE = {"engine": True, "figures": True, "output": {"folder", "replace", "zarr", "netcdf", "netcdf_files"}}
 """What a recipe may change between a run and its resumption: how fast, where to, and what is made of the finished store."""
 
 

@@ -13,7 +13,7 @@ from typing import Any
 
 from gridcarb.errors import GridcarbError, InputError, Notice
 from gridcarb.products import PRODUCTS
-from gridcarb.run.derived import draw_figures, make_file
+from gridcarb.run.derived import draw_figures, make_files
 from gridcarb.run.doing import do_blocks
 from gridcarb.run.frame import date_of_writing
 from gridcarb.run.journal import journal_head, journal_tail
@@ -162,7 +162,7 @@ def _derive_files(plan: Plan, watcher: Watcher, sums: _Sums) -> dict[str, str]:
         written["Zarr store"] = STORE
     if output.netcdf:
         with sums.timed("netcdf"):
-            written["NetCDF file"] = make_file(partial, watcher)
+            written |= make_files(plan.recipe, partial, watcher)
     if plan.recipe.figures:
         with sums.timed("figures"):
             written |= draw_figures(plan.recipe, partial, watcher)

@@ -1,4 +1,4 @@
-"""What is made of a finished store: the NetCDF file and the figures."""
+"""What is made of a finished store: NetCDF files and figures."""
 
 from __future__ import annotations
 
@@ -8,16 +8,20 @@ import xarray as xr
 
 from gridcarb.figures import FIGURES
 from gridcarb.recipe import Recipe
-from gridcarb.run.plan import FIGURE_FOLDER, FILE, STORE
+from gridcarb.run.plan import FIGURE_FOLDER, FILE, FILES, STORE
 from gridcarb.run.watching import Watcher
-from gridcarb.write.netcdf import export
+from gridcarb.write.netcdf import export, export_parts
 
 
-def make_file(folder: Path, watcher: Watcher) -> str:
-    """The NetCDF file from the store in `folder`; its place inside."""
-    watcher.message(f"exporting {FILE}")
-    export(folder / STORE, folder / FILE)
-    return FILE
+def make_files(recipe: Recipe, folder: Path, watcher: Watcher) -> dict[str, str]:
+    """The NetCDF file or files of a recipe from the store in `folder`; what -> place inside."""
+    if recipe.output.netcdf_files == "one":
+        watcher.message(f"exporting {FILE}")
+        export(folder / STORE, folder / FILE)
+        return {"NetCDF file": FILE}
+    watcher.message(f"exporting NetCDF files {recipe.output.netcdf_files}")
+    export_parts(folder / STORE, folder / FILES, recipe.output.netcdf_files)
+    return {"NetCDF files": FILES}
 
 
 def draw_figures(recipe: Recipe, folder: Path, watcher: Watcher) -> dict[str, str]:

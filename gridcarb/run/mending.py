@@ -8,8 +8,8 @@ from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
 
-from gridcarb.run.derived import draw_figures, make_file
-from gridcarb.run.plan import FILE, STORE
+from gridcarb.run.derived import draw_figures, make_files
+from gridcarb.run.plan import STORE
 from gridcarb.run.verify import Damage, Inspector, Verdict
 from gridcarb.run.watching import Watcher
 from gridcarb.run.workshop import Workshop, planned, workshop
@@ -97,9 +97,10 @@ class _Mender:
 
     def _mend_files(self, stale: set[str]) -> None:
         charter, watcher = self._at.charter, self._watcher
-        if FILE in stale:
-            make_file(self._result, watcher)
-        if stale - {FILE}:
+        files = {name for name in stale if name.endswith(".nc")}
+        if files:
+            make_files(charter.recipe(), self._result, watcher)
+        if stale - files:
             draw_figures(planned(charter, self._shop.store.parent / "result", figures=True).recipe, self._result, watcher)
         derived = {name: file_checksum(self._result / name) for name in charter.derived}
         self._at.charter = replace(charter, derived=derived)

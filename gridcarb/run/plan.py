@@ -27,6 +27,7 @@ from gridcarb.sources import Collection
 from gridcarb.sources.survey import Survey
 from gridcarb.write.amounts import per_volume, per_volume_field
 from gridcarb.write.folder import ResultFolder
+from gridcarb.write.parts import parts_of
 from gridcarb.write.validate import check_grid
 
 if TYPE_CHECKING:
@@ -34,6 +35,7 @@ if TYPE_CHECKING:
 
 STORE = "fields.zarr"
 FILE = "fields.nc"
+FILES = "netcdf"
 FIGURE_FOLDER = "figures"
 STATUS = "solution_status"
 
@@ -158,6 +160,8 @@ def draft(recipe: Recipe) -> Draft:
         _check_figures(recipe, seen.raw, figures)
         if seen.understanding:
             notices += result.attempt(check_grid, seen.raw, seen.collection.axes) or ()
+            if recipe.output.netcdf:  # times that make no periods are better told now than after the last block
+                result.attempt(parts_of, seen.raw, (), seen.collection.axes.time, recipe.output.netcdf_files)
             plan = engine.attempt(_plan, recipe, seen, seen.collection, seen.understanding, folder)
     found = (
         *(finding for finding in seen.findings if finding.level == "fine"), *assumptions(notices),

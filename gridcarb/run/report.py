@@ -12,6 +12,7 @@ from gridcarb.fields import Field
 from gridcarb.run.budget import PROGRAM_BYTES
 from gridcarb.run.costs import Span
 from gridcarb.write.disk import free_bytes, sized
+from gridcarb.write.settings import OutputSettings
 
 if TYPE_CHECKING:
     from gridcarb.run.conduct import Outcome
@@ -224,13 +225,17 @@ def lasting(seconds: float) -> str:
 
 def _place_rows(plan: Plan) -> Rows:
     output = plan.recipe.output
-    kept = [("Zarr store" + f" (format {output.zarr_format})") * output.zarr, "NetCDF-4 file" * output.netcdf]
+    kept = [("Zarr store" + f" (format {output.zarr_format})") * output.zarr, _netcdf_words(output) * output.netcdf]
     figures = len(plan.recipe.figures)
     kept.append(f"{figures} figure{'s' * (figures != 1)}" * bool(figures))
     return [
         ("result", str(plan.folder.target)), ("holding", ", ".join([*filter(None, kept), "journal"])),
         ("room there", f"{sized(free_bytes(plan.folder.target))} free"),
     ]
+
+
+def _netcdf_words(output: OutputSettings) -> str:
+    return "NetCDF-4 file" if output.netcdf_files == "one" else f"NetCDF-4 files {output.netcdf_files}"
 
 
 def _status_rows(outcome: Outcome) -> Rows:

@@ -72,7 +72,10 @@ class Start:
 
     def note_derived(self, names: Iterable[str]) -> None:
         """Note the checksums of what was made of the finished store."""
-        found = {name: file_checksum(self.plan.folder.partial / name) for name in sorted(names) if name != STORE}
+        partial = self.plan.folder.partial
+        places = [partial / name for name in names if name != STORE]
+        files = [file for place in places for file in (place.iterdir() if place.is_dir() else (place,))]
+        found = {file.relative_to(partial).as_posix(): file_checksum(file) for file in sorted(files)}
         self.charter = replace(self.charter, derived=found)
         self.ledger.open(self.charter.as_dict())
 

@@ -36,8 +36,12 @@ def geospatial(template: xr.Dataset, axes: Axes) -> dict[str, object]:
 
 def time_coverage(template: xr.Dataset, axes: Axes) -> dict[str, object]:
     """The attributes ``time_coverage_*``, in the calendar of the input; none where its times cannot be dated."""
-    name = axes.time_coordinate
-    if name is None or name not in template.coords:
+    return {} if axes.time_coordinate is None else coverage_of(template, axes.time_coordinate)
+
+
+def coverage_of(template: xr.Dataset, name: str) -> dict[str, object]:
+    """The same of the coordinate of that name, decoded or not."""
+    if name not in template.coords:
         return {}
     attrs = template[name].attrs
     units, calendar = str(attrs.get("units", "")), str(attrs.get("calendar", "standard")).lower()

@@ -1,4 +1,4 @@
-"""One NetCDF-4 file from a finished store, streamed chunk by chunk.
+"""NetCDF-4 files from a finished store, streamed chunk by chunk.
 
 A NetCDF file has one writer: it is filled under a temporary name in the folder of its target and renamed when it is
 whole. The lock of the HDF5 library is held for each piece written, not while the store is read.
@@ -17,9 +17,12 @@ import numpy as np
 import xarray as xr
 
 from gridcarb.netcdf_lock import NETCDF_LOCK
+from gridcarb.write.coverage import coverage_of
 from gridcarb.write.disk import room_for, settle
 from gridcarb.write.encoding import pieces
+from gridcarb.write.parts import Part, parts_of
 from gridcarb.write.pointers import pointed_at
+from gridcarb.write.settings import Files
 
 _CHUNK_BYTES = 2 * 2**20
 _DEFLATE_LEVEL = 4
@@ -31,7 +34,7 @@ _TYPED = frozenset({
 
 def export(
     store: Path, target: Path, *, attributes: Mapping[str, object] | None = None,
-    progress: Callable[[int, int], None] | None = None,
+    progress: Callable[[int, int], None] | None = None, part: Part | None = None,
 ) -> None:
     """Write the finished Zarr `store` as the NetCDF-4 file `target`, replacing one that is there only when whole.
 
@@ -42,10 +45,12 @@ def export(
     ----------
     attributes : global attributes that win over those of the store.
     progress : called with the bytes copied and the bytes in all, after each piece.
+    part : what of the store goes into the file; None: all.
     """
     temporary = target.with_name(f".{target.name}.{os.getpid()}")
-    source = xr.open_dataset(store, engine="zarr", consolidated=False, decode_cf=False, chunks=None, cache=False)
+    whole = _opened(store)
     try:
+        source = whole if part is None else _only(whole, part)
         with room_for(target, sum(file.stat().st_size for file in store.rglob("*") if file.is_file())):
             _copy(source, temporary, source.attrs | dict(attributes or {}), progress)
             settle(temporary, target)
@@ -56,7 +61,37 @@ def export(
             temporary.unlink()
         raise
     finally:
-        source.close()
+        whole.close()
+
+
+def export_parts(store: Path, folder: Path, files: Files) -> list[Path]:
+    """Write the finished `store` as several files in `folder`, which are given back; see `parts_of`.
+
+    Each appears whole or not at all. A file of a period tells the time it covers.
+    """
+    with _opened(store) as source:
+        parts = parts_of(source, _fields(source), _time_dimension(source), files)
+        times = {part.name: _covered(source, part) for part in parts}
+    folder.mkdir(exist_ok=True)
+    targets = [folder / f"{part.name}.nc" for part in parts]
+    for part, target in zip(parts, targets, strict=True):
+        export(store, target, attributes=times[part.name], part=part)
+    return targets
+
+
+def _opened(store: Path) -> xr.Dataset:
+    return xr.open_dataset(store, engine="zarr", consolidated=False, decode_cf=False, chunks=None, cache=False)
+
+
+def _only(source: xr.Dataset, part: Part) -> xr.Dataset:
+    if part.fields is not None:
+        source = source.drop_vars([name for name in _fields(source) if name not in part.fields])
+    return source if part.steps is None else source.isel({str(_time_dimension(source)): part.steps})
+
+
+def _covered(source: xr.Dataset, part: Part) -> dict[str, object]:
+    time = _time_dimension(source)
+    return {} if part.steps is None or time is None else coverage_of(source.isel({time: part.steps}), time)
 
 
 def _copy(

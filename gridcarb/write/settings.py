@@ -8,6 +8,7 @@ from pydantic import Field
 
 from gridcarb.settings import Settings
 
+Files = Literal["one", "by field", "by year", "by month"]
 Count = Annotated[int, Field(ge=1, strict=True)]
 
 
@@ -28,6 +29,8 @@ class OutputSettings(Settings):
     zarr_format: Literal[2, 3] = Field(3, description="Zarr format of the store")
     chunks: ChunkSettings | None = Field(None, description="stated chunks of the store; default: chosen by the planner")
     netcdf: bool = Field(True, description="export a NetCDF-4 file")
+    netcdf_files: Files = Field("one", description="one NetCDF file (fields.nc), or several in the folder netcdf: "
+                                "by field, by year, by month")
     precision: Literal["float32", "float64"] = Field("float32", description="how fields are stored")
     amounts: Literal["per mass", "per volume"] = Field(
         "per mass", description="'per volume': amounts in mol m-3, with the density of the input"

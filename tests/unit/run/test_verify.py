@@ -9,8 +9,9 @@ from dataclasses import replace
 from pathlib import Path
 
 import pytest
+import xarray as xr
 
-from gridcarb.errors import OutputError
+from gridcarb.errors import GridcarbError, OutputError
 from gridcarb.recipe import check
 from gridcarb.run import charter as charters
 from gridcarb.run import conduct, prepare
@@ -242,3 +243,33 @@ def test_a_damaged_charter_is_said(result):
     flip(result / "ledger" / "charter.json")
     with pytest.raises(OutputError, match="its ledger cannot be read"):
         verify(result, Quiet())
+
+
+def test_one_of_several_files_is_named_and_made_again(tmp_path, original):
+    shutil.copyfile(original / "ocean.nc", tmp_path / "ocean.nc")
+    written = conduct(prepare(_recipe(tmp_path, netcdf_files="by month")), Quiet()).written
+    result = tmp_path / "result"
+    assert written["NetCDF files"] == result / "netcdf"
+    names = sorted(path.name for path in (result / "netcdf").iterdir())
+    assert names == ["fields_2010-01.nc", "fields_2010-02.nc", "fields_2010-03.nc"]
+    assert not (result / "fields.nc").exists()
+    before = contents(result / "netcdf")
+    assert verify(result, Quiet(), sample=0).damages == []
+    flip(result / "netcdf" / names[1], 0.9)
+    (result / "netcdf" / names[2]).unlink()
+    assert [each.place for each in verify(result, Quiet(), sample=0).damages] == [f"netcdf/{name}" for name in names[1:]]
+    assert verify(result, Quiet(), sample=0, repair=True).damages == []
+    assert contents(result / "netcdf").keys() == before.keys()
+    assert verify(result, Quiet(), sample=0).damages == []
+
+
+def test_files_by_period_want_times_that_can_be_dated(tmp_path, original):
+    with xr.open_dataset(original / "ocean.nc", decode_cf=False) as dataset:
+        dataset.load()
+    dataset["time"].attrs = {"axis": "T", "standard_name": "time", "units": "years gone by"}
+    dataset.to_netcdf(tmp_path / "ocean.nc")
+    with pytest.raises(GridcarbError) as caught:
+        prepare(_recipe(tmp_path, netcdf_files="by year"))
+    told = " ".join(map(str, (caught.value, *caught.value.others)))
+    assert "output.netcdf_files" in told
+    assert "`netcdf_files: one`" in told

@@ -104,6 +104,14 @@ def test_amounts_per_volume_from_a_store_of_format_2_conform_as_well(tmp_path, c
     assert complaints(write(rectilinear_with_time(), tmp_path, amounts="per volume", zarr_format=2)) == []
 
 
+@pytest.mark.parametrize("way", ["by field", "by year", "by month"])
+def test_each_of_several_files_conforms(way, tmp_path, complaints):
+    write(rectilinear_with_time(), tmp_path, amounts="per mass", zarr_format=3)
+    targets = netcdf.export_parts(tmp_path / "r.zarr", tmp_path / "several", way)
+    assert len(targets) == {"by field": 12, "by year": 1, "by month": 3}[way]
+    assert [complaints(target) for target in targets[:3]] == [[]] * min(3, len(targets))
+
+
 def test_the_checker_would_notice(tmp_path, complaints):
     path = write(without_time(), tmp_path, amounts="per mass", zarr_format=3)
     with netCDF4.Dataset(path, "a") as file:
